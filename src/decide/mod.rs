@@ -1,0 +1,3 @@
+//! Decisions, apart from estimation.
+
+pub(crate) mod reset;

@@ -1,0 +1,174 @@
+//! Level and drift by recursive least squares.
+
+use crate::math;
+
+/// How far level and rate may have walked over a step: the process noise, as variances.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub struct Walk {
+    /// Variance added to the level, counts^2.
+    pub level: f32,
+    /// Covariance added between level and rate, counts^2/s.
+    pub cross: f32,
+    /// Variance added to the rate, (counts/s)^2.
+    pub rate: f32,
+}
+
+impl Walk {
+    /// The walk over `dt_s` seconds of a level driven by white noise (`level_walk`, counts^2/s) and of a rate driven by
+    /// white noise (`rate_walk`, (counts/s)^2/s), which the level integrates:
+    /// `[q_w t + q_d t^3/3, q_d t^2/2, q_d t]`.
+    pub fn over(dt_s: f32, level_walk: f32, rate_walk: f32) -> Self {
+        let rate = rate_walk * dt_s;
+        let half = rate * dt_s * 0.5;
+        Self { level: level_walk * dt_s + half * dt_s * (2.0 / 3.0), cross: half, rate }
+    }
+}
+
+/// What one sample told a [`Trend`]: how far it fell from the prediction and how it was weighed.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Innovation {
+    /// Sample minus prediction, counts.
+    pub residual: f32,
+    /// One over the variance that `residual` was expected to have, 1/counts^2.
+    pub precision: f32,
+    /// Share of `residual` given to the level.
+    pub level_gain: f32,
+    /// Share of `residual` given to the rate, 1/s.
+    pub rate_gain: f32,
+}
+
+/// Residuals this far from the anchor move the anchor: `f32` then resolves 2^-14 count.
+const ANCHOR_REACH: f32 = 1024.0;
+
+/// A level in counts and its rate in counts per second, with their covariance.
+///
+/// The level is an integer anchor plus a small `f32` residual, so that a 24-bit level loses nothing. The covariance is
+/// kept as the factors of `U D U^T` with `U = [1, s; 0, 1]`: the variance of the level *if the rate were known*, the
+/// coupling `s` and the variance of the rate. Every step multiplies, divides and adds positive numbers only, so the
+/// matrix cannot lose positive definiteness. Method: Bierman 1977, Factorization Methods for Discrete Sequential
+/// Estimation (from memory), worked out by hand for two states.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Trend {
+    anchor: i32,
+    level: f32,
+    rate: f32,
+    /// Variance of the level given the rate.
+    level_given_rate: f32,
+    /// Change of the level's estimate per change of the rate's, s.
+    coupling: f32,
+    rate_variance: f32,
+}
+
+impl Trend {
+    /// Starts at a level known with `level_variance` (counts^2, above 0) and a rate known with `rate_variance`
+    /// ((counts/s)^2; 0 holds the rate for good unless it walks).
+    pub const fn new(counts: i32, level_variance: f32, rate: f32, rate_variance: f32) -> Self {
+        Self { anchor: counts, level: 0.0, rate, level_given_rate: level_variance, coupling: 0.0, rate_variance }
+    }
+
+    /// Forgets the level, keeps the rate and its variance: after a reset, or when the input was connected.
+    /// The new level is `counts + residual`.
+    pub const fn restart(&mut self, counts: i32, residual: f32, level_variance: f32) {
+        self.anchor = counts;
+        self.level = residual;
+        self.level_given_rate = level_variance;
+        self.coupling = 0.0;
+    }
+
+    /// Lets `dt_s` seconds pass: the level moves by `rate dt_s`, and both walk. Exact for a step of any length.
+    pub fn advance(&mut self, dt_s: f32, walk: Walk) {
+        self.level += self.rate * dt_s;
+        self.recentre();
+        let coupling = self.coupling + dt_s;
+        if walk.rate <= 0.0 {
+            self.coupling = coupling;
+            self.level_given_rate += walk.level;
+            return;
+        }
+        let share = 1.0 / (self.rate_variance + walk.rate);
+        // (s^2 q_rr - 2 s q_lr + q_ll) and (q_ll q_rr - q_lr^2) are not negative for any covariance q.
+        let spread = walk.level + coupling * (coupling * walk.rate - 2.0 * walk.cross);
+        let determinant = walk.level * walk.rate - walk.cross * walk.cross;
+        let gained = (self.rate_variance * spread + determinant) * share;
+        self.level_given_rate += if gained > 0.0 { gained } else { 0.0 };
+        self.coupling = (coupling * self.rate_variance + walk.cross) * share;
+        self.rate_variance += walk.rate;
+    }
+
+    /// Lets the rate alone walk by `rate_walk`, (counts/s)^2, while the level is held: the switch is closed or the
+    /// input open.
+    pub fn rest(&mut self, rate_walk: f32) {
+        let walked = self.rate_variance + rate_walk;
+        if walked > 0.0 {
+            self.coupling *= self.rate_variance / walked;
+            self.rate_variance = walked;
+        }
+    }
+
+    /// Takes a sample of the level with `variance` (counts^2, above 0).
+    pub fn update(&mut self, counts: i32, variance: f32) -> Innovation {
+        let measured = self.anchor_offset(counts);
+        let residual = measured - self.level;
+        let shared = self.coupling * self.rate_variance;
+        let given_rate = self.level_given_rate + variance;
+        let expected = given_rate + self.coupling * shared;
+        let reciprocal = 1.0 / (given_rate * expected);
+        let precision = given_rate * reciprocal;
+        let kept = variance * (expected * reciprocal);
+
+        let level_gain = (self.level_given_rate + self.coupling * shared) * precision;
+        let rate_gain = shared * precision;
+        self.level += level_gain * residual;
+        self.rate += rate_gain * residual;
+        self.level_given_rate *= kept;
+        self.coupling *= kept;
+        self.rate_variance *= given_rate * precision;
+        self.recentre();
+        Innovation { residual, precision, level_gain, rate_gain }
+    }
+
+    /// The level's whole part, counts.
+    pub const fn anchor(&self) -> i32 {
+        self.anchor
+    }
+
+    /// What the level is above its whole part, counts; not limited to one count.
+    pub const fn residual(&self) -> f32 {
+        self.level
+    }
+
+    /// The rate, counts/s.
+    pub const fn rate(&self) -> f32 {
+        self.rate
+    }
+
+    /// Variance of the level, counts^2.
+    pub fn level_variance(&self) -> f32 {
+        self.level_given_rate + self.coupling * self.coupling * self.rate_variance
+    }
+
+    /// Covariance of level and rate, counts^2/s.
+    pub fn covariance(&self) -> f32 {
+        self.coupling * self.rate_variance
+    }
+
+    /// Variance of the rate, (counts/s)^2.
+    pub const fn rate_variance(&self) -> f32 {
+        self.rate_variance
+    }
+
+    /// `counts` relative to the anchor; exact within 2^24 counts of it.
+    fn anchor_offset(&self, counts: i32) -> f32 {
+        (i64::from(counts) - i64::from(self.anchor)) as f32
+    }
+
+    /// Moves whole counts from the residual to the anchor; exact, so it changes no estimate.
+    fn recentre(&mut self) {
+        if math::abs(self.level) > ANCHOR_REACH {
+            let whole = math::nearest(self.level);
+            let moved = self.anchor.saturating_add(whole);
+            self.level -= whole as f32;
+            self.anchor = moved;
+        }
+    }
+}

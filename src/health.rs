@@ -1,0 +1,42 @@
+//! Faults that a single sample or a pair of samples shows.
+
+use crate::setup::Derived;
+
+/// Watches for readings that stand still; everything else it decides from the sample before it.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Health {
+    last: Option<i32>,
+    repeats: u16,
+}
+
+impl Health {
+    /// Whether the converter gave an end code or the level is past a usable rail.
+    pub(crate) fn at_rail(counts: i32, derived: &Derived) -> bool {
+        counts < derived.usable.0 || counts > derived.usable.1
+    }
+
+    /// Takes a sample and tells whether the readings are frozen. Never so on a channel too quiet to tell.
+    pub(crate) fn frozen(&mut self, counts: i32, derived: &Derived) -> bool {
+        self.repeats = if self.last == Some(counts) { self.repeats.saturating_add(1) } else { 0 };
+        self.last = Some(counts);
+        derived.frozen_samples > 0 && self.repeats >= derived.frozen_samples
+    }
+
+    /// Whether the level moved by more in `ticks` than the worst-case input and the noise can move it.
+    pub(crate) fn jumped(from: i32, to: i32, ticks: u32, derived: &Derived) -> bool {
+        let reach = derived.worst_movement(ticks).saturating_add(i64::from(derived.step_noise_counts));
+        derived.worst_rate_q16 > 0 && (i64::from(to) - i64::from(from)).abs() > reach
+    }
+
+    /// Whether a level lies outside a window of codes.
+    pub(crate) fn outside(counts: i32, window: (i32, i32)) -> bool {
+        counts < window.0 || counts > window.1
+    }
+
+    /// Whether a drift lies outside the data-sheet limits by more than 4 of its own uncertainties. A limit of 0 means
+    /// that the drift is held at 0, and nothing can be told.
+    pub(crate) fn drift_outside_limits(rate: f32, rate_variance: f32, derived: &Derived) -> bool {
+        let excess = crate::math::abs(rate) - derived.rate_limit;
+        derived.rate_limit > 0.0 && excess > 0.0 && excess * excess > 16.0 * rate_variance
+    }
+}

@@ -1,0 +1,70 @@
+//! Totals across resets and holds: what was measured, what was interpolated, and the variance they added.
+
+use crate::estimate::Edge;
+
+/// 2^-16 counts, rounded toward zero, saturating.
+pub(crate) fn to_q16(counts: f32) -> i64 {
+    (counts * 65536.0) as i64
+}
+
+/// What interruptions have carried over, in 2^-16 counts of output movement.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub(crate) struct Ledger {
+    /// Drop of the level across the interruptions, to be added back.
+    pub(crate) carried_q16: i64,
+    /// Movement that the input would have caused during dead time.
+    pub(crate) interpolated_q16: i64,
+    /// Variance from the fits beside the interruptions and from the interpolation, counts^2.
+    pub(crate) dead_time_var: f32,
+    /// Change of the run's walk variance, counts^2; may be negative.
+    pub(crate) walk_var: f32,
+}
+
+/// How well a dead time could be bridged.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Bridged {
+    /// From both sides.
+    Interpolated,
+    /// The slope of one side or of both is unknown: the input during the dead time is a guess.
+    Guessed,
+}
+
+impl Ledger {
+    /// Bridges an interruption with `dead_s` seconds of dead time.
+    ///
+    /// The lines before and after meet in the middle of the dead time: drop `= before - after` at the switching
+    /// instants, and interpolated input `= dead (slope before + slope after) / 2`. Where the slopes differ by more than
+    /// their noise, the input changed at an unknown instant in between: a rectangular distribution of the full width
+    /// `|difference| dead`, variance `width^2 / 12` (GUM 4.3.7).
+    pub(crate) fn bridge(&mut self, before: &Edge, after: &Edge, dead_s: f32, level_walk: f32) -> Bridged {
+        let half = 0.5 * dead_s;
+        let (slopes, bridged) = match (before.slope, after.slope) {
+            (Some(b), Some(a)) => ((b, a), Bridged::Interpolated),
+            (Some(s), None) | (None, Some(s)) => ((s, s), Bridged::Guessed),
+            (None, None) => ((0.0, 0.0), Bridged::Guessed),
+        };
+        let difference = slopes.0 - slopes.1;
+        let noise = before.slope_variance() + after.slope_variance();
+        let changed = match bridged {
+            Bridged::Interpolated => difference * difference - noise,
+            Bridged::Guessed => slopes.0 * slopes.0 * 12.0,
+        };
+        let drop = i64::from(before.anchor) - i64::from(after.anchor);
+        self.carried_q16 = self
+            .carried_q16
+            .saturating_add((drop << 16) + to_q16(before.level(slopes.0)) - to_q16(after.level(slopes.1)));
+        self.interpolated_q16 = self.interpolated_q16.saturating_add(to_q16(half * (slopes.0 + slopes.1)));
+        self.dead_time_var += before.readout_variance(half) + after.readout_variance(half);
+        if changed > 0.0 {
+            self.dead_time_var += changed * dead_s * dead_s * (1.0 / 12.0);
+        }
+        // With the switch closed the level does not walk, but the run is charged for its whole duration.
+        self.walk_var += before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
+        bridged
+    }
+
+    /// Carried and interpolated movement together, 2^-16 counts.
+    pub(crate) fn total_q16(&self) -> i64 {
+        self.carried_q16.saturating_add(self.interpolated_q16)
+    }
+}

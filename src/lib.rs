@@ -1,0 +1,31 @@
+#![doc = include_str!("../README.md")]
+#![no_std]
+
+mod channel;
+mod clock;
+mod decide;
+mod error;
+pub mod estimate;
+mod health;
+mod ledger;
+mod math;
+mod notice;
+mod quantity;
+mod reading;
+mod run;
+mod sample;
+mod setup;
+#[cfg(feature = "embedded-hal")]
+mod switches;
+pub mod unit;
+mod window;
+
+pub use channel::Channel;
+pub use error::SetupError;
+pub use notice::{Event, Notice, Notices, Reason, Reasons, Trust};
+pub use quantity::{Charge, Flux, Integral, Measured, RadiantExposure, Temperature, VoltageRate};
+pub use reading::{Budget, Estimate, Reading};
+pub use sample::{Mode, Sample, Step};
+pub use setup::{Circuit, Converter, Noise, Policy, Setup};
+#[cfg(feature = "embedded-hal")]
+pub use switches::Switches;

@@ -1,0 +1,26 @@
+//! The only place where a float function is taken from: `libm` in plain Rust gives the same bits on every target.
+
+/// Square root, correctly rounded; 0 for a negative argument (a variance that rounding took below zero).
+pub(crate) fn sqrt(x: f32) -> f32 {
+    if x > 0.0 { libm::sqrtf(x) } else { 0.0 }
+}
+
+/// Square root of a number that is not negative, correctly rounded; not for the path of a sample.
+pub(crate) fn sqrt_f64(x: f64) -> f64 {
+    libm::sqrt(x)
+}
+
+/// Magnitude.
+pub(crate) fn abs(x: f32) -> f32 {
+    libm::fabsf(x)
+}
+
+/// Nearest whole number of counts, halves away from zero, saturating at the ends of `i32`.
+pub(crate) fn nearest(x: f32) -> i32 {
+    libm::roundf(x) as i32
+}
+
+/// Seconds in `ticks` of a counter whose period is `tick_s`.
+pub(crate) fn seconds(ticks: u64, tick_s: f32) -> f32 {
+    ticks as f32 * tick_s
+}

@@ -1,0 +1,167 @@
+//! What a step has to say besides its request.
+
+/// Something that happened, with the tick it happened at.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Notice {
+    /// Counter value of the event: the sample that showed it, or the switching instant.
+    pub tick: u32,
+    /// What happened.
+    pub event: Event,
+}
+
+/// The kinds of notices.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+#[non_exhaustive]
+pub enum Event {
+    /// A run started: the input was connected.
+    RunStarted,
+    /// A run stopped: its last integrating sample was the one at this tick.
+    RunStopped,
+    /// The reset switch closed within a run.
+    ResetClosed,
+    /// The reset switch opened within a run.
+    ResetOpened,
+    /// A reset was due by the headroom guard; stated once until the next reset.
+    ResetDue,
+    /// Something that takes the trust from a reading; stated once for each run, or for each zero.
+    Fault(Reason),
+}
+
+/// Why a reading is not good.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+#[non_exhaustive]
+pub enum Reason {
+    /// The converter gave an end code, or the level was at a rail.
+    AtRail = 0,
+    /// No sample for longer than the policy's limit.
+    Gap = 1,
+    /// The level moved from one sample to the next by more than the worst-case input allows: a reset that no sample
+    /// showed, or a disturbance.
+    Jump = 2,
+    /// The input during a dead time is a guess: there were too few samples beside the reset to fit a line.
+    DeadTime = 3,
+    /// A reset after which the level had not arrived at the reset level.
+    ResetNotArrived = 4,
+    /// The readings stood still although the channel's noise should move them.
+    Frozen = 5,
+    /// The drift lies outside what offset voltage and bias current can cause by more than 4 of its uncertainties.
+    DriftOutsideLimits = 6,
+    /// The counter stood still or ran backwards; the sample was not used.
+    ClockStalled = 7,
+}
+
+impl Reason {
+    /// All reasons, in the order of their bits.
+    pub const ALL: [Self; 8] = [
+        Self::AtRail,
+        Self::Gap,
+        Self::Jump,
+        Self::DeadTime,
+        Self::ResetNotArrived,
+        Self::Frozen,
+        Self::DriftOutsideLimits,
+        Self::ClockStalled,
+    ];
+
+    /// A stable name for logs: lower case, words joined by `_`.
+    pub const fn name(self) -> &'static str {
+        match self {
+            Self::AtRail => "at_rail",
+            Self::Gap => "gap",
+            Self::Jump => "jump",
+            Self::DeadTime => "dead_time",
+            Self::ResetNotArrived => "reset_not_arrived",
+            Self::Frozen => "frozen",
+            Self::DriftOutsideLimits => "drift_outside_limits",
+            Self::ClockStalled => "clock_stalled",
+        }
+    }
+
+    /// Whether the total is still a lower bound of a unipolar input's integral.
+    const fn leaves_lower_bound(self) -> bool {
+        matches!(self, Self::AtRail | Self::Gap | Self::Jump | Self::DeadTime)
+    }
+}
+
+/// A set of [`Reason`]s.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Reasons(u8);
+
+impl Reasons {
+    /// The reasons in the set.
+    pub fn iter(self) -> impl Iterator<Item = Reason> {
+        Reason::ALL.into_iter().filter(move |&r| self.contains(r))
+    }
+
+    /// Whether the set is empty.
+    pub const fn is_empty(self) -> bool {
+        self.0 == 0
+    }
+
+    /// Whether the set holds `reason`.
+    pub const fn contains(self, reason: Reason) -> bool {
+        self.0 & (1 << reason as u8) != 0
+    }
+
+    /// How far a reading with these reasons can be trusted.
+    pub fn trust(self) -> Trust {
+        if self.is_empty() {
+            Trust::Good
+        } else if self.iter().all(Reason::leaves_lower_bound) {
+            Trust::LowerBound
+        } else {
+            Trust::Invalid
+        }
+    }
+
+    /// Adds a reason; `true` if it was not there before.
+    pub(crate) fn insert(&mut self, reason: Reason) -> bool {
+        let new = !self.contains(reason);
+        self.0 |= 1 << reason as u8;
+        new
+    }
+}
+
+/// How far a reading can be trusted.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub enum Trust {
+    /// Value and uncertainty hold.
+    Good,
+    /// Input may have gone unseen: for an input that keeps one sign, the true integral is at least this large.
+    LowerBound,
+    /// The value means nothing.
+    Invalid,
+}
+
+/// The notices of one step, oldest first; never more than 8.
+#[derive(Clone, Debug, Default)]
+pub struct Notices(heapless::Vec<Notice, 8>);
+
+impl Notices {
+    /// The notices, oldest first.
+    pub fn iter(&self) -> impl Iterator<Item = &Notice> {
+        self.0.iter()
+    }
+
+    /// Whether there are none.
+    pub fn is_empty(&self) -> bool {
+        self.0.is_empty()
+    }
+
+    pub(crate) fn push(&mut self, tick: u32, event: Event) {
+        // One step has at most one mode change (3 notices) and 4 faults: the ninth cannot come.
+        let _ = self.0.push(Notice { tick, event });
+    }
+}
+
+#[cfg(feature = "defmt")]
+impl defmt::Format for Notices {
+    fn format(&self, f: defmt::Formatter<'_>) {
+        defmt::write!(f, "{}", self.0.as_slice());
+    }
+}

@@ -1,0 +1,123 @@
+//! Value, uncertainty, what it is made of, and whether it can be trusted.
+
+use crate::math;
+use crate::notice::{Reasons, Trust};
+use crate::quantity::{Integral, Measured};
+use crate::run::{Run, Total};
+use crate::setup::Setup;
+
+/// What the variance of an estimate is made of, as standard uncertainties in the reading's unit.
+///
+/// The squares add up to `u^2`. At stop the parts are exact. For a closed value the closing zero mixes the sources; its
+/// variance is exact, and apportioned: input noise of the run first, then the levels at both ends (readout), the rest
+/// is drift.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Budget<Q> {
+    /// Readout noise of the levels at both ends of the run.
+    pub readout: Q,
+    /// White noise of the input, integrated over the run.
+    pub input_noise: Q,
+    /// Uncertainty of the drift, times the duration, and its wander.
+    pub drift: Q,
+    /// Fits beside the resets and interpolation of the input while the switch was closed.
+    pub dead_time: Q,
+    /// Relative uncertainty of the gain, times the value.
+    pub scale: Q,
+}
+
+/// One estimate of a run's integral.
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Estimate<Q> {
+    /// The integral with its standard uncertainty.
+    pub integral: Measured<Q>,
+    /// What the uncertainty is made of.
+    pub budget: Budget<Q>,
+}
+
+impl<Q: Integral> Estimate<Q> {
+    fn new(setup: &Setup<Q>, total: &Total) -> Self {
+        let per_count = setup.derived().integral_per_count;
+        let counts = from_q16(total.movement_q16);
+        let scale = (counts * setup.circuit().gain_u_rel) as f32;
+        let scale = scale * scale;
+        let variance = total.readout + total.input_noise + total.drift + total.dead_time + scale;
+        let u = |variance: f32| {
+            let magnitude = f64::from(math::sqrt(variance)) * per_count;
+            Q::from_si(if magnitude < 0.0 { -magnitude } else { magnitude })
+        };
+        Self {
+            integral: Measured::new(Q::from_si(counts * per_count), u(variance)),
+            budget: Budget {
+                readout: u(total.readout),
+                input_noise: u(total.input_noise),
+                drift: u(total.drift),
+                dead_time: u(total.dead_time),
+                scale: u(scale),
+            },
+        }
+    }
+}
+
+/// Counts as a number; exact below 2^37 counts.
+fn from_q16(q16: i64) -> f64 {
+    q16 as f64 * (1.0 / 65536.0)
+}
+
+/// A run's reading: what it is now, or what it was when it stopped and what the zero after it made of that.
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Reading<Q> {
+    /// From everything up to the run's last integrating sample; in a running run, up to the latest sample.
+    pub at_stop: Estimate<Q>,
+    /// With the zero after the run as well, up to its latest sample; `None` until that zero begins.
+    pub closed: Option<Estimate<Q>>,
+    /// Part of the latest estimate that was measured.
+    pub measured: Q,
+    /// Part of the latest estimate that was interpolated over dead time.
+    pub interpolated: Q,
+    /// What the drift would have added to the value at stop, and was taken off.
+    pub drift_removed: Q,
+    /// Resets within the run.
+    pub resets: u32,
+    /// Counter value when the run started.
+    pub start_tick: u32,
+    /// Counter value of the run's last integrating sample so far.
+    pub end_tick: u32,
+    /// From start to the last integrating sample, resets and holds included, s.
+    pub elapsed_s: f64,
+    /// How much warmer the board was at the last integrating sample than at the zero before, mK; `None` if not measured.
+    pub warming_mk: Option<i32>,
+    /// How far the reading can be trusted.
+    pub trust: Trust,
+    /// Why it is not good.
+    pub reasons: Reasons,
+}
+
+impl<Q: Integral> Reading<Q> {
+    pub(crate) fn new(setup: &Setup<Q>, run: &Run, at_stop: &Total, closed: Option<&Total>) -> Self {
+        let latest = closed.unwrap_or(at_stop);
+        let integral = |q16: i64| Q::from_si(from_q16(q16) * setup.derived().integral_per_count);
+        let ticks = run.driven.saturating_add(run.held);
+        Self {
+            at_stop: Estimate::new(setup, at_stop),
+            closed: closed.map(|total| Estimate::new(setup, total)),
+            measured: integral(latest.movement_q16 - run.ledger.interpolated_q16),
+            interpolated: integral(run.ledger.interpolated_q16),
+            drift_removed: integral(run.drift_q16),
+            resets: run.resets,
+            start_tick: run.start_tick,
+            end_tick: run.end_tick,
+            elapsed_s: ticks as f64 / setup.converter().tick_hz,
+            warming_mk: run.warming,
+            trust: run.reasons.trust(),
+            reasons: run.reasons,
+        }
+    }
+
+    /// The better of the two estimates: closed if there is one, at stop otherwise.
+    pub fn latest(&self) -> &Estimate<Q> {
+        self.closed.as_ref().unwrap_or(&self.at_stop)
+    }
+}

@@ -1,0 +1,166 @@
+//! One run: from leaving zero to the end of the next zero, through resets and holds.
+
+use crate::estimate::{Bracket, Edge, Trend, movement_q16};
+use crate::ledger::{Bridged, Ledger, to_q16};
+use crate::math;
+use crate::notice::Reasons;
+use crate::setup::Derived;
+
+/// An interruption of a run that waits for the line after it.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Crossing {
+    /// The line before it; `None` where the run begins after a reset or hold that no zero preceded.
+    pub(crate) before: Option<Edge>,
+    /// Time with the reset switch closed, ticks.
+    pub(crate) dead: u64,
+    /// Time with the input open, ticks.
+    pub(crate) held: u64,
+}
+
+/// Where a run stands.
+#[derive(Clone, Copy, Debug)]
+pub(crate) enum Stage {
+    /// The input is connected.
+    Integrating,
+    /// The reset switch is closed or the input open, and the run may go on.
+    Interrupted,
+    /// The input was disconnected.
+    Stopped {
+        /// What was known then.
+        at_stop: Total,
+        /// What the zero makes of it; `None` until its first sample.
+        bracket: Option<Bracket>,
+        /// Whether the level went on into the zero without an interruption.
+        unbroken: bool,
+    },
+}
+
+/// A run's total and the parts of its variance, in counts.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Total {
+    /// Movement of the level by the input, 2^-16 counts.
+    pub(crate) movement_q16: i64,
+    /// Variances, counts^2.
+    pub(crate) readout: f32,
+    pub(crate) input_noise: f32,
+    pub(crate) drift: f32,
+    pub(crate) dead_time: f32,
+}
+
+/// A run's books.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Run {
+    pub(crate) stage: Stage,
+    pub(crate) start_tick: u32,
+    pub(crate) end_tick: u32,
+    pub(crate) resets: u32,
+    pub(crate) reasons: Reasons,
+    pub(crate) ledger: Ledger,
+    pub(crate) crossing: Option<Crossing>,
+    /// Whether the present segment began with a line of its own.
+    pub(crate) opened: bool,
+    /// When the present segment began.
+    pub(crate) opened_tick: u32,
+    pub(crate) last_counts: i32,
+    /// Ticks up to the last integrating sample over which the baseline drifts (holds left out).
+    pub(crate) driven: u64,
+    /// Ticks in holds.
+    pub(crate) held: u64,
+    /// What the drift has moved the baseline by, 2^-16 counts; known once stopped.
+    pub(crate) drift_q16: i64,
+    /// How much warmer the board is than at the zero before, mK.
+    pub(crate) warming: Option<i32>,
+    start_q16: i64,
+    start_var: f32,
+}
+
+impl Run {
+    /// Starts at `tick` on a known baseline.
+    pub(crate) fn new(tick: u32, baseline: &Trend, reasons: Reasons) -> Self {
+        let mut run = Self {
+            stage: Stage::Integrating,
+            start_tick: tick,
+            end_tick: tick,
+            resets: 0,
+            reasons,
+            ledger: Ledger::default(),
+            crossing: None,
+            opened: false,
+            opened_tick: tick,
+            last_counts: baseline.anchor(),
+            driven: 0,
+            held: 0,
+            drift_q16: 0,
+            warming: None,
+            start_q16: 0,
+            start_var: 0.0,
+        };
+        run.begin_on(baseline);
+        run
+    }
+
+    fn begin_on(&mut self, baseline: &Trend) {
+        self.start_q16 = baseline_q16(baseline);
+        self.start_var = baseline.level_variance();
+    }
+
+    /// Whether the run has not stopped.
+    pub(crate) fn is_running(&self) -> bool {
+        !matches!(self.stage, Stage::Stopped { .. })
+    }
+
+    /// Closes the open crossing with the line after it. A run without a line before gets its baseline here.
+    pub(crate) fn settle(&mut self, after: Edge, baseline: &mut Trend, derived: &Derived) -> Bridged {
+        let Some(crossing) = self.crossing.take() else {
+            return Bridged::Interpolated;
+        };
+        let Some(before) = crossing.before else {
+            baseline.restart(after.anchor, after.level(baseline.rate()), after.readout_variance(0.0));
+            self.ledger.walk_var += after.walk_variance(0.0);
+            self.begin_on(baseline);
+            return Bridged::Interpolated;
+        };
+        let dead_s = math::seconds(crossing.dead, derived.tick_s);
+        self.ledger.bridge(&before, &after, dead_s, derived.level_walk)
+    }
+
+    /// The total up to the last integrating sample, with the baseline at that time.
+    pub(crate) fn total(&self, baseline: &Trend, derived: &Derived) -> Total {
+        let walk = derived.level_walk * math::seconds(self.driven, derived.tick_s);
+        Total {
+            movement_q16: movement_q16(self.last_counts, baseline).saturating_add(self.ledger.total_q16()),
+            readout: derived.readout_var + self.start_var,
+            input_noise: not_negative(walk + self.ledger.walk_var),
+            drift: not_negative(baseline.level_variance() - self.start_var - walk),
+            dead_time: self.ledger.dead_time_var,
+        }
+    }
+
+    /// The total as the closing zero sees it; `zero` is the level and drift there.
+    pub(crate) fn closed_total(&self, bracket: &Bracket, zero: &Trend, derived: &Derived) -> Total {
+        let walk = derived.level_walk * math::seconds(self.driven, derived.tick_s);
+        let variance = not_negative(bracket.variance() + self.ledger.walk_var);
+        let input_noise = not_negative(walk + self.ledger.walk_var).min(variance);
+        let readout = (self.start_var + zero.level_variance()).min(variance - input_noise);
+        Total {
+            movement_q16: bracket.movement_q16().saturating_add(self.ledger.total_q16()),
+            readout,
+            input_noise,
+            drift: variance - input_noise - readout,
+            dead_time: self.ledger.dead_time_var,
+        }
+    }
+
+    /// How far the drift has moved `baseline` since the start, 2^-16 counts.
+    pub(crate) fn drifted_q16(&self, baseline: &Trend) -> i64 {
+        baseline_q16(baseline) - self.start_q16
+    }
+}
+
+fn baseline_q16(baseline: &Trend) -> i64 {
+    (i64::from(baseline.anchor()) << 16) + to_q16(baseline.residual())
+}
+
+fn not_negative(variance: f32) -> f32 {
+    if variance > 0.0 { variance } else { 0.0 }
+}

@@ -1,0 +1,65 @@
+//! What the crate should do where the board leaves a choice.
+
+use crate::error::{SetupError, check};
+
+/// Most samples a straight-line fit beside a reset may use.
+pub(crate) const EDGE_SAMPLES_MAX: usize = 8;
+
+/// Choices that are the user's. Start from [`Policy::DEFAULT`].
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub struct Policy {
+    /// Samples in the straight-line fits before and after a reset: 2 to 8. Fewer follow a fast input better, more
+    /// average better.
+    pub edge_samples: u8,
+    /// Longest time between samples that leaves a run whole, s: above 0, and below half the counter's span.
+    pub gap_limit_s: f64,
+    /// Equal readings in a row that mean a dead converter: 0 (never) to 65535. Only watched where `readout_counts` is
+    /// at least 0.5: a quieter channel may rightly repeat itself.
+    pub frozen_samples: u16,
+    /// Largest magnitude of the input that the design allows, input units; `None`: unknown. With it the crate advises
+    /// resets and notices a level that jumped. A design constant, never an estimate.
+    pub worst_input: Option<f64>,
+    /// Time from a request to the reset switch closing, s: 0 to 3600.
+    pub latency_s: f64,
+    /// How many standard deviations of the readout the reset advice keeps from the rail: 0 to 100.
+    pub guard_sigma: f64,
+    /// Time the amplifier needs to follow the closed switch, s: 0 to 3600; ten times `R_on C` is added by the crate.
+    pub settling_s: f64,
+    /// How far from the reset level a reset may arrive, V: above 0; `None`: one hundredth of the usable span.
+    pub arrival_tolerance_v: Option<f64>,
+}
+
+impl Policy {
+    /// Fits of 8 samples, gaps up to 1 s, 64 equal readings mean frozen, no worst-case input known, 4 sigma of guard,
+    /// 1 ms of settling.
+    pub const DEFAULT: Self = Self {
+        edge_samples: 8,
+        gap_limit_s: 1.0,
+        frozen_samples: 64,
+        worst_input: None,
+        latency_s: 0.0,
+        guard_sigma: 4.0,
+        settling_s: 1e-3,
+        arrival_tolerance_v: None,
+    };
+
+    pub(super) const fn validate(&self, tick_hz: f64) -> Result<(), SetupError> {
+        check!(self.edge_samples >= 2 && self.edge_samples as usize <= EDGE_SAMPLES_MAX, "edge_samples", "2 to 8");
+        check!(
+            self.gap_limit_s > 0.0 && self.gap_limit_s * tick_hz < 2_147_483_648.0,
+            "gap_limit_s",
+            "above 0 and below half the counter's span, 2^31 / tick_hz (second)"
+        );
+        if let Some(worst) = self.worst_input {
+            check!(worst > 0.0 && worst <= 1e6, "worst_input", "above 0 and at most 1e6 (input units)");
+        }
+        check!(self.latency_s >= 0.0 && self.latency_s <= 3600.0, "latency_s", "0 to 3600 (second)");
+        check!(self.guard_sigma >= 0.0 && self.guard_sigma <= 100.0, "guard_sigma", "0 to 100");
+        check!(self.settling_s >= 0.0 && self.settling_s <= 3600.0, "settling_s", "0 to 3600 (second)");
+        if let Some(tolerance) = self.arrival_tolerance_v {
+            check!(tolerance > 0.0 && tolerance <= 1e3, "arrival_tolerance_v", "above 0 and at most 1000 (volt)");
+        }
+        Ok(())
+    }
+}
