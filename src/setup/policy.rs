@@ -3,13 +3,13 @@
 use crate::error::{SetupError, check};
 
 /// Most samples a straight-line fit beside a reset may use.
-pub(crate) const EDGE_SAMPLES_MAX: usize = 8;
+pub(crate) const EDGE_SAMPLES_MAX: usize = 16;
 
 /// Choices that are the user's. Start from [`Policy::DEFAULT`].
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Policy {
-    /// Samples in the straight-line fits before and after a reset: 2 to 8. Fewer follow a fast input better, more
+    /// Samples in the straight-line fits before and after a reset: 2 to 16. Fewer follow a fast input better, more
     /// average better.
     pub edge_samples: u8,
     /// Longest time between samples that leaves a run whole, s: above 0, and below half the counter's span.
@@ -31,10 +31,10 @@ pub struct Policy {
 }
 
 impl Policy {
-    /// Fits of 8 samples, gaps up to 1 s, 64 equal readings mean frozen, no worst-case input known, 4 sigma of guard,
+    /// Fits of 16 samples, gaps up to 1 s, 64 equal readings mean frozen, no worst-case input known, 4 sigma of guard,
     /// 1 ms of settling.
     pub const DEFAULT: Self = Self {
-        edge_samples: 8,
+        edge_samples: 16,
         gap_limit_s: 1.0,
         frozen_samples: 64,
         worst_input: None,
@@ -45,7 +45,7 @@ impl Policy {
     };
 
     pub(super) const fn validate(&self, tick_hz: f64) -> Result<(), SetupError> {
-        check!(self.edge_samples >= 2 && self.edge_samples as usize <= EDGE_SAMPLES_MAX, "edge_samples", "2 to 8");
+        check!(self.edge_samples >= 2 && self.edge_samples as usize <= EDGE_SAMPLES_MAX, "edge_samples", "2 to 16");
         check!(
             self.gap_limit_s > 0.0 && self.gap_limit_s * tick_hz < 2_147_483_648.0,
             "gap_limit_s",
