@@ -332,7 +332,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         self.interrupted(ticks, |crossing, ticks| crossing.dead = crossing.dead.saturating_add(ticks));
         self.reset_ticks = self.reset_ticks.saturating_add(u64::from(ticks));
         let settled = self.reset_ticks > u64::from(derived.settling_ticks);
-        if settled && !self.reset_failed && Health::outside(sample.counts, derived.reset_window) {
+        if settled && !self.reset_failed && Health::outside(i64::from(sample.counts), derived.reset_window) {
             self.reset_failed = true;
             self.fault(Reason::ResetNotArrived, sample.tick, notices);
         }
@@ -359,7 +359,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         let derived = self.setup.derived();
         let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
         let after = self.window.after(run.opened_tick, derived)?;
-        let opened_at = after.anchor.saturating_add(math::nearest(after.level(baseline.rate())));
+        let opened_at = i64::from(after.anchor).saturating_add(math::nearest(after.level(baseline.rate())));
         let arrived = crossing.dead == 0 || !Health::outside(opened_at, derived.opened_window);
         let bridged = run.settle(after, baseline, derived);
         if bridged == Bridged::Guessed {

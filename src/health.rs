@@ -25,12 +25,12 @@ impl Health {
     /// Whether the level moved by more in `ticks` than the worst-case input and the noise can move it.
     pub(crate) fn jumped(from: i32, to: i32, ticks: u32, derived: &Derived) -> bool {
         let reach = derived.worst_movement(ticks).saturating_add(i64::from(derived.step_noise_counts));
-        derived.worst_rate_q16 > 0 && (i64::from(to) - i64::from(from)).abs() > reach
+        derived.worst_rate_q16 > 0 && i64::from(to).abs_diff(i64::from(from)) > reach.unsigned_abs()
     }
 
     /// Whether a level lies outside a window of codes.
-    pub(crate) fn outside(counts: i32, window: (i32, i32)) -> bool {
-        counts < window.0 || counts > window.1
+    pub(crate) fn outside(counts: i64, window: (i32, i32)) -> bool {
+        counts < i64::from(window.0) || counts > i64::from(window.1)
     }
 
     /// Whether a drift lies outside the data-sheet limits by more than 4 of its own uncertainties. A limit of 0 means

@@ -1,10 +1,15 @@
 //! Totals across resets and holds: what was measured, what was interpolated, and the variance they added.
 
-use crate::estimate::Edge;
+use crate::estimate::{Edge, LEVEL_VARIANCE_MAX};
 
 /// 2^-16 counts, rounded toward zero, saturating.
 pub(crate) fn to_q16(counts: f32) -> i64 {
     (counts * 65536.0) as i64
+}
+
+/// Whole counts in 2^-16 counts, saturating.
+pub(crate) fn whole_q16(counts: i64) -> i64 {
+    counts.saturating_mul(1 << 16)
 }
 
 /// What interruptions have carried over, in 2^-16 counts of output movement.
@@ -49,17 +54,16 @@ impl Ledger {
             Bridged::Interpolated => difference * difference - noise,
             Bridged::Guessed => slopes.0 * slopes.0 * 12.0,
         };
-        let drop = i64::from(before.anchor) - i64::from(after.anchor);
-        self.carried_q16 = self
-            .carried_q16
-            .saturating_add((drop << 16) + to_q16(before.level(slopes.0)) - to_q16(after.level(slopes.1)));
+        let whole = whole_q16(i64::from(before.anchor).saturating_sub(i64::from(after.anchor)));
+        let rest = to_q16(before.level(slopes.0)).saturating_sub(to_q16(after.level(slopes.1)));
+        self.carried_q16 = self.carried_q16.saturating_add(whole.saturating_add(rest));
         self.interpolated_q16 = self.interpolated_q16.saturating_add(to_q16(half * (slopes.0 + slopes.1)));
-        self.dead_time_var += before.readout_variance(half) + after.readout_variance(half);
-        if changed > 0.0 {
-            self.dead_time_var += changed * dead_s * dead_s * (1.0 / 12.0);
-        }
+        let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
+        let fits = before.readout_variance(half) + after.readout_variance(half);
+        self.dead_time_var = (self.dead_time_var + fits + input).min(LEVEL_VARIANCE_MAX);
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
-        self.walk_var += before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
+        let walk = before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
+        self.walk_var = (self.walk_var + walk).clamp(-LEVEL_VARIANCE_MAX, LEVEL_VARIANCE_MAX);
         bridged
     }
 

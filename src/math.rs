@@ -15,9 +15,9 @@ pub(crate) fn abs(x: f32) -> f32 {
     libm::fabsf(x)
 }
 
-/// Nearest whole number of counts, halves away from zero, saturating at the ends of `i32`.
-pub(crate) fn nearest(x: f32) -> i32 {
-    libm::roundf(x) as i32
+/// Nearest whole number of counts, halves away from zero, saturating at the ends of `i64`.
+pub(crate) fn nearest(x: f32) -> i64 {
+    libm::roundf(x) as i64
 }
 
 /// Seconds in `ticks` of a counter whose period is `tick_s`.

@@ -103,7 +103,7 @@ impl<Q: Integral> Reading<Q> {
         Self {
             at_stop: Estimate::new(setup, at_stop),
             closed: closed.map(|total| Estimate::new(setup, total)),
-            measured: integral(latest.movement_q16 - run.ledger.interpolated_q16),
+            measured: integral(latest.movement_q16.saturating_sub(run.ledger.interpolated_q16)),
             interpolated: integral(run.ledger.interpolated_q16),
             drift_removed: integral(run.drift_q16),
             resets: run.resets,

@@ -1,7 +1,7 @@
 //! One run: from leaving zero to the end of the next zero, through resets and holds.
 
 use crate::estimate::{Bracket, Edge, Trend, movement_q16};
-use crate::ledger::{Bridged, Ledger, to_q16};
+use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
 use crate::setup::Derived;
@@ -87,7 +87,7 @@ impl Run {
             crossing: None,
             opened: false,
             opened_tick: tick,
-            last_counts: baseline.anchor(),
+            last_counts: 0,
             driven: 0,
             held: 0,
             drift_q16: 0,
@@ -153,12 +153,12 @@ impl Run {
 
     /// How far the drift has moved `baseline` since the start, 2^-16 counts.
     pub(crate) fn drifted_q16(&self, baseline: &Trend) -> i64 {
-        baseline_q16(baseline) - self.start_q16
+        baseline_q16(baseline).saturating_sub(self.start_q16)
     }
 }
 
 fn baseline_q16(baseline: &Trend) -> i64 {
-    (i64::from(baseline.anchor()) << 16) + to_q16(baseline.residual())
+    whole_q16(baseline.anchor()).saturating_add(to_q16(baseline.residual()))
 }
 
 fn not_negative(variance: f32) -> f32 {

@@ -1,7 +1,7 @@
 //! How the zero after a run tightens the finished run.
 
 use super::trend::{Innovation, Trend};
-use crate::ledger::to_q16;
+use crate::ledger::{to_q16, whole_q16};
 
 /// The movement of the level over a finished run, as the closing zero comes to know it.
 ///
@@ -54,7 +54,10 @@ impl Bracket {
         let gain = self.with_level * innovation.precision;
         self.correction += gain * innovation.residual;
         let variance = self.variance - gain * self.with_level;
-        self.variance = if variance > 0.0 { variance } else { 0.0 };
+        // Rounding may take away more than there is: then nothing was learned.
+        if variance > 0.0 {
+            self.variance = variance;
+        }
         self.with_rate -= innovation.rate_gain * self.with_level;
         self.with_level -= innovation.level_gain * self.with_level;
     }
@@ -72,5 +75,5 @@ impl Bracket {
 
 /// How far `counts` is above the baseline, 2^-16 counts.
 pub(crate) fn movement_q16(counts: i32, baseline: &Trend) -> i64 {
-    ((i64::from(counts) - i64::from(baseline.anchor())) << 16) - to_q16(baseline.residual())
+    whole_q16(i64::from(counts).saturating_sub(baseline.anchor())).saturating_sub(to_q16(baseline.residual()))
 }

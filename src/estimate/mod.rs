@@ -11,4 +11,5 @@ mod trend;
 pub(crate) use bracket::{Bracket, movement_q16};
 pub(crate) use edge::{Edge, Side};
 pub use line::{Line, Point};
+pub(crate) use trend::LEVEL_VARIANCE_MAX;
 pub use trend::{Innovation, Trend, Walk};

@@ -40,16 +40,21 @@ pub struct Innovation {
 /// Residuals this far from the anchor move the anchor: `f32` then resolves 2^-14 count.
 const ANCHOR_REACH: f32 = 1024.0;
 
+/// Variances end here: 10^15 counts, 10^10 counts/s. Past them nothing is known, and their products stay within `f32`.
+pub(crate) const LEVEL_VARIANCE_MAX: f32 = 1e30;
+const RATE_VARIANCE_MAX: f32 = 1e20;
+
 /// A level in counts and its rate in counts per second, with their covariance.
 ///
-/// The level is an integer anchor plus a small `f32` residual, so that a 24-bit level loses nothing. The covariance is
+/// The level is an integer anchor plus a small `f32` residual, so that a 24-bit level loses nothing, nor a baseline that
+/// has drifted for a year. The covariance is
 /// kept as the factors of `U D U^T` with `U = [1, s; 0, 1]`: the variance of the level *if the rate were known*, the
 /// coupling `s` and the variance of the rate. Every step multiplies, divides and adds positive numbers only, so the
 /// matrix cannot lose positive definiteness. Method: Bierman 1977, Factorization Methods for Discrete Sequential
 /// Estimation (from memory), worked out by hand for two states.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Trend {
-    anchor: i32,
+    anchor: i64,
     level: f32,
     rate: f32,
     /// Variance of the level given the rate.
@@ -63,13 +68,13 @@ impl Trend {
     /// Starts at a level known with `level_variance` (counts^2, above 0) and a rate known with `rate_variance`
     /// ((counts/s)^2; 0 holds the rate for good unless it walks).
     pub const fn new(counts: i32, level_variance: f32, rate: f32, rate_variance: f32) -> Self {
-        Self { anchor: counts, level: 0.0, rate, level_given_rate: level_variance, coupling: 0.0, rate_variance }
+        Self { anchor: counts as i64, level: 0.0, rate, level_given_rate: level_variance, coupling: 0.0, rate_variance }
     }
 
     /// Forgets the level, keeps the rate and its variance: after a reset, or when the input was connected.
     /// The new level is `counts + residual`.
     pub const fn restart(&mut self, counts: i32, residual: f32, level_variance: f32) {
-        self.anchor = counts;
+        self.anchor = counts as i64;
         self.level = residual;
         self.level_given_rate = level_variance;
         self.coupling = 0.0;
@@ -82,7 +87,7 @@ impl Trend {
         let coupling = self.coupling + dt_s;
         if walk.rate <= 0.0 {
             self.coupling = coupling;
-            self.level_given_rate += walk.level;
+            self.level_given_rate = (self.level_given_rate + walk.level).min(LEVEL_VARIANCE_MAX);
             return;
         }
         let share = 1.0 / (self.rate_variance + walk.rate);
@@ -90,15 +95,15 @@ impl Trend {
         let spread = walk.level + coupling * (coupling * walk.rate - 2.0 * walk.cross);
         let determinant = walk.level * walk.rate - walk.cross * walk.cross;
         let gained = (self.rate_variance * spread + determinant) * share;
-        self.level_given_rate += if gained > 0.0 { gained } else { 0.0 };
+        self.level_given_rate = (self.level_given_rate + gained.max(0.0)).min(LEVEL_VARIANCE_MAX);
         self.coupling = (coupling * self.rate_variance + walk.cross) * share;
-        self.rate_variance += walk.rate;
+        self.rate_variance = (self.rate_variance + walk.rate).min(RATE_VARIANCE_MAX);
     }
 
     /// Lets the rate alone walk by `rate_walk`, (counts/s)^2, while the level is held: the switch is closed or the
     /// input open.
     pub fn rest(&mut self, rate_walk: f32) {
-        let walked = self.rate_variance + rate_walk;
+        let walked = (self.rate_variance + rate_walk).min(RATE_VARIANCE_MAX);
         if walked > 0.0 {
             self.coupling *= self.rate_variance / walked;
             self.rate_variance = walked;
@@ -112,9 +117,8 @@ impl Trend {
         let shared = self.coupling * self.rate_variance;
         let given_rate = self.level_given_rate + variance;
         let expected = given_rate + self.coupling * shared;
-        let reciprocal = 1.0 / (given_rate * expected);
-        let precision = given_rate * reciprocal;
-        let kept = variance * (expected * reciprocal);
+        let precision = 1.0 / expected;
+        let kept = variance / given_rate;
 
         let level_gain = (self.level_given_rate + self.coupling * shared) * precision;
         let rate_gain = shared * precision;
@@ -128,7 +132,7 @@ impl Trend {
     }
 
     /// The level's whole part, counts.
-    pub const fn anchor(&self) -> i32 {
+    pub const fn anchor(&self) -> i64 {
         self.anchor
     }
 
@@ -142,9 +146,9 @@ impl Trend {
         self.rate
     }
 
-    /// Variance of the level, counts^2.
+    /// Variance of the level, counts^2; at most 1e30.
     pub fn level_variance(&self) -> f32 {
-        self.level_given_rate + self.coupling * self.coupling * self.rate_variance
+        (self.level_given_rate + self.coupling * self.coupling * self.rate_variance).min(LEVEL_VARIANCE_MAX)
     }
 
     /// Covariance of level and rate, counts^2/s.
@@ -159,16 +163,15 @@ impl Trend {
 
     /// `counts` relative to the anchor; exact within 2^24 counts of it.
     fn anchor_offset(&self, counts: i32) -> f32 {
-        (i64::from(counts) - i64::from(self.anchor)) as f32
+        i64::from(counts).saturating_sub(self.anchor) as f32
     }
 
     /// Moves whole counts from the residual to the anchor; exact, so it changes no estimate.
     fn recentre(&mut self) {
         if math::abs(self.level) > ANCHOR_REACH {
             let whole = math::nearest(self.level);
-            let moved = self.anchor.saturating_add(whole);
             self.level -= whole as f32;
-            self.anchor = moved;
+            self.anchor = self.anchor.saturating_add(whole);
         }
     }
 }

@@ -70,7 +70,7 @@ impl Derived {
             "small enough to change the drift by at most 1e6 counts/s per square root of second"
         );
         let rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
-        check!(rate_limit <= 1e8, "offset_limit_v", "such that, with bias_limit_a, the drift is at most 1e8 counts/s");
+        check!(rate_limit <= 1e9, "offset_limit_v", "such that, with bias_limit_a, the drift is at most 1e9 counts/s");
 
         let low = ceil(converter.code(circuit.rail_low_v));
         let high = floor(converter.code(circuit.rail_high_v));
