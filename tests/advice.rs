@@ -64,6 +64,13 @@ fn a_request_stands_until_the_reset_and_is_stated_once() {
     assert_eq!(script.last_step.request, None);
     script.integrate(20, 0.0);
     assert_eq!(script.last_step.request, None);
+    script.level = 189_500.0;
+    script.sample(Mode::Integrate, STEP);
+    assert_eq!(
+        script.notices.iter().filter(|(_, event)| *event == Event::ResetDue).count(),
+        2,
+        "and once for the next"
+    );
 }
 
 #[test]

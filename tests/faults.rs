@@ -208,6 +208,19 @@ fn a_fault_of_one_run_does_not_follow_into_the_next() {
 }
 
 #[test]
+fn a_fault_in_a_zero_concerns_the_run_it_opens_and_no_later_one() {
+    let mut script = Script::new(&SETUP);
+    script.zero(100);
+    for _ in 0..70 {
+        script.sample_of(Mode::Zero, STEP, 20);
+    }
+    script.zero(300).integrate(100, 2000.0);
+    assert!(script.reading().reasons.contains(Reason::Frozen));
+    script.zero(300).integrate(100, 2000.0);
+    assert_eq!(script.reading().trust, Trust::Good);
+}
+
+#[test]
 fn a_fault_after_a_closed_run_does_not_reach_back() {
     let mut script = clean();
     script.zero(300).reset(3, 50_000.0);

@@ -233,3 +233,74 @@ fn a_reading_tells_how_far_the_board_has_warmed() {
     feed(Mode::Integrate, 23_500, 1);
     assert_eq!(script.reading().warming_mk, Some(3_500));
 }
+
+/// Two lines of 16 samples, read out half a dead time (one sample period) beyond the switching instants, which lie on the
+/// last sample before and one period ahead of the first sample after. Variance of a line at a point: Draper & Smith,
+/// Applied Regression Analysis (from memory); see `reference/estimation_limits.toml`.
+#[test]
+fn a_reset_costs_what_the_two_lines_cost() {
+    let mut script = Script::new(&SETUP);
+    script.noisy = false;
+    script.drift = 0.0;
+    script.zero(300).integrate(200, 20_000.0).reset(2, 0.0).integrate(200, 20_000.0);
+    let readout_var = 1.0 + 1.0 / 12.0;
+    let line = |lever: f64| 1.0 / 16.0 + lever * lever / 340.0;
+    let expected = (readout_var * (line(7.5 + 1.0) + line(8.5 + 1.0))).sqrt() * script::COULOMBS_PER_COUNT;
+    let dead_time = script.reading().at_stop.budget.dead_time.as_coulombs();
+    assert!((dead_time / expected - 1.0).abs() < 1e-4, "{dead_time:e} {expected:e}");
+}
+
+#[test]
+fn the_first_sample_after_a_reset_is_read_with_the_slope_from_before() {
+    let mut script = Script::new(&SETUP);
+    script.zero(300).integrate(200, 20_000.0).reset(2, 0.0).integrate(1, 20_000.0);
+    let reading = script.reading();
+    let value = reading.at_stop.integral.value.as_coulombs();
+    assert!((value - coulombs(20_000.0 * 2.03)).abs() < 6e-12, "{value:e}");
+    assert_eq!(reading.trust, Trust::LowerBound);
+    // Two more samples make a line, and a good reading.
+    script.integrate(2, 20_000.0);
+    assert_eq!(script.reading().trust, Trust::Good);
+}
+
+#[test]
+fn the_baseline_drifts_on_while_the_switch_is_closed() {
+    let mut script = Script::new(&SETUP);
+    script.drift = 100.0;
+    script.zero(500).integrate(200, 2_000.0).reset(500, 0.0).integrate(200, 2_000.0);
+    assert_total(&script, 2_000.0 * 9.0, 40.0);
+}
+
+#[test]
+fn after_a_reset_in_the_closing_zero_the_level_tells_nothing_more() {
+    let mut script = Script::new(&SETUP);
+    script.zero(3000).integrate(100, 2000.0).zero(2).reset(3, 0.0).zero(3000);
+    // The level at stop rests on two samples: their mean has half a readout variance.
+    let u = script.reading().closed.expect("closed").integral.u.as_coulombs();
+    assert!(u > (1.083_f64 / 2.0).sqrt() * script::COULOMBS_PER_COUNT, "{u:e}");
+}
+
+/// Wander of the offset in every pause: the drift is as much less certain as the pause was long.
+#[test]
+fn a_drift_wanders_through_pauses() {
+    let wander = 1e-12; // A per root second: one count per second per root second
+    let setup = Setup::new(CIRCUIT, CONVERTER, brimline::Noise { offset_wander: wander, ..NOISE }, POLICY);
+    let drift_u = |script: &Script<'_>| script.channel.drift().u.as_volts_per_second() / CONVERTER.lsb_v;
+    for hold in [true, false] {
+        let pause = |script: &mut Script<'_>, samples| {
+            if hold {
+                script.hold(samples, 0.0)
+            } else {
+                script.reset(samples, 0.0)
+            };
+        };
+        let mut script = Script::new(&setup);
+        script.zero(300).integrate(20, 2000.0);
+        pause(&mut script, 10_000);
+        script.integrate(20, 2000.0);
+        assert!((drift_u(&script) - 10.0).abs() < 0.5, "in a run: {}", drift_u(&script));
+        pause(&mut script, 10_000);
+        script.zero(1);
+        assert!((drift_u(&script) - 200.0_f64.sqrt()).abs() < 0.5, "at its end: {}", drift_u(&script));
+    }
+}
