@@ -34,7 +34,7 @@ macro_rules! quantity {
 
 pub(crate) mod sealed {
     /// A quantity as a bare number in its SI unit, for the conversions inside the crate.
-    pub trait Si: Copy + core::fmt::Debug {
+    pub trait Si: Copy + core::fmt::Debug + PartialEq {
         /// The unit's symbol.
         const UNIT: &'static str;
         /// From a bare number in the SI unit.

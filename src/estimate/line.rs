@@ -44,6 +44,9 @@ pub struct Line {
 
 impl Line {
     /// Fits a line; `None` with fewer than two different abscissas. Three passes over the points, O(n).
+    ///
+    /// The means are formed about the first point: where the variances differ by many decades, put the point with the
+    /// least variance first.
     pub fn fit(points: impl Iterator<Item = Point> + Clone) -> Option<Self> {
         let (mut count, mut weights, mut x_sum, mut y_sum) = (0_u16, 0.0_f32, 0.0_f32, 0.0_f32);
         let origin = points.clone().next()?;

@@ -37,7 +37,7 @@ pub struct Innovation {
     pub rate_gain: f32,
 }
 
-/// Residuals this far from the anchor move the anchor: `f32` then resolves 2^-14 count.
+/// Residuals this far from the anchor move the anchor by whole counts: `f32` resolves 2^-14 count there.
 const ANCHOR_REACH: f32 = 1024.0;
 
 /// Variances end here: 10^15 counts, 10^10 counts/s. Past them nothing is known, and their products stay within `f32`.
@@ -111,24 +111,37 @@ impl Trend {
     }
 
     /// Takes a sample of the level with `variance` (counts^2, above 0).
+    ///
+    /// A sample that is not far off becomes the new anchor, so that the residual stays as small as the noise: `f32` then
+    /// loses nothing of a slow drift, however far the level has gone.
     pub fn update(&mut self, counts: i32, variance: f32) -> Innovation {
-        let measured = self.anchor_offset(counts);
-        let residual = measured - self.level;
+        let residual = i64::from(counts).saturating_sub(self.anchor) as f32 - self.level;
         let shared = self.coupling * self.rate_variance;
+        let from_rate = (self.coupling * shared).min(LEVEL_VARIANCE_MAX);
         let given_rate = self.level_given_rate + variance;
-        let expected = given_rate + self.coupling * shared;
-        let precision = 1.0 / expected;
+        let precision = 1.0 / (given_rate + from_rate);
         let kept = variance / given_rate;
-
-        let level_gain = (self.level_given_rate + self.coupling * shared) * precision;
         let rate_gain = shared * precision;
-        self.level += level_gain * residual;
+
+        let level_gain = (self.level_given_rate + from_rate) * precision;
+
+        if math::abs(residual) < ANCHOR_REACH {
+            self.anchor = i64::from(counts);
+            self.level = -residual * (variance * precision);
+        } else {
+            self.level += level_gain * residual;
+            self.recentre();
+        }
         self.rate += rate_gain * residual;
         self.level_given_rate *= kept;
         self.coupling *= kept;
-        self.rate_variance *= given_rate * precision;
-        self.recentre();
+        self.rate_variance = (self.rate_variance * (given_rate * precision)).max(self.rate_variance_floor());
         Innovation { residual, precision, level_gain, rate_gain }
+    }
+
+    /// What rounding leaves of the rate, whatever the number of samples: one millionth. A rate that is held has none.
+    fn rate_variance_floor(&self) -> f32 {
+        if self.rate_variance > 0.0 { (self.rate * self.rate * 1e-12).min(RATE_VARIANCE_MAX) } else { 0.0 }
     }
 
     /// The level's whole part, counts.
@@ -159,11 +172,6 @@ impl Trend {
     /// Variance of the rate, (counts/s)^2.
     pub const fn rate_variance(&self) -> f32 {
         self.rate_variance
-    }
-
-    /// `counts` relative to the anchor; exact within 2^24 counts of it.
-    fn anchor_offset(&self, counts: i32) -> f32 {
-        i64::from(counts).saturating_sub(self.anchor) as f32
     }
 
     /// Moves whole counts from the residual to the anchor; exact, so it changes no estimate.
