@@ -1,0 +1,14 @@
+//! What a program without an operating system needs, at no cost in flash.
+
+use core::panic::PanicInfo;
+
+unsafe extern "C" {
+    safe fn a_panic_is_reachable() -> !;
+}
+
+/// Calls what does not exist: the program links only if the linker can drop this function, that is if no panic is
+/// reachable.
+#[panic_handler]
+fn panic(_: &PanicInfo) -> ! {
+    a_panic_is_reachable()
+}

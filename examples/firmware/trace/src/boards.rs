@@ -1,0 +1,43 @@
+//! The boards that the traces were recorded on, worked out at compile time. Figures as in `examples/setups`.
+
+use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup};
+
+const CIRCUIT: Circuit =
+    Circuit { rail_low_v: -12.0, rail_high_v: 12.0, offset_limit_v: 2e-3, bias_limit_a: 100e-12, ..Circuit::DEFAULT };
+
+const CONVERTER: Converter =
+    Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, code_min: 0, code_max: 65535, tick_hz: 1e6 };
+
+pub(crate) static HATCHERY: Setup<Charge> = Setup::new(
+    Circuit { capacitance_f: 470e-9, source_resistance_ohm: 5e9, pedestal_v: -0.8e-3, pedestal_u_v: 40e-6, ..CIRCUIT },
+    CONVERTER,
+    Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0 },
+    Policy { worst_input: Some(0.2e-6), ..Policy::DEFAULT },
+);
+
+pub(crate) static DIM_LAMP: Setup<Charge> = Setup::new(
+    Circuit { capacitance_f: 22e-9, source_resistance_ohm: 20e9, ..CIRCUIT },
+    CONVERTER,
+    Noise { readout_counts: 1.1, input_density: 8e-14, offset_wander: 0.0 },
+    Policy { worst_input: Some(1e-9), ..Policy::DEFAULT },
+);
+
+pub(crate) static WANDERING_OFFSET: Setup<Flux> = Setup::new(
+    Circuit { capacitance_f: 220e-9, input_resistance_ohm: Some(47e3), ..CIRCUIT },
+    CONVERTER,
+    Noise { readout_counts: 1.0, input_density: 1.5e-6, offset_wander: 6e-6 },
+    Policy::DEFAULT,
+);
+
+pub(crate) static SEARCH_COIL: Setup<Flux> = Setup::new(
+    Circuit {
+        capacitance_f: 1e-6,
+        input_resistance_ohm: Some(22e3),
+        offset_limit_v: 25e-6,
+        bias_limit_a: 10e-12,
+        ..CIRCUIT
+    },
+    Converter { code_zero_v: -5.0, lsb_v: 10.0 / 262144.0, code_min: 0, code_max: 262143, tick_hz: 1e6 },
+    Noise { readout_counts: 1.4, input_density: 40e-9, offset_wander: 0.0 },
+    Policy { worst_input: Some(0.05), ..Policy::DEFAULT },
+);
