@@ -1,6 +1,6 @@
 #![doc = include_str!("../README.md")]
 #![no_std]
-#![deny(missing_docs, unreachable_pub)]
+#![deny(missing_docs, unreachable_pub, clippy::disallowed_methods)]
 // The core is total: nothing in it may panic.
 #![cfg_attr(not(test), deny(clippy::indexing_slicing, clippy::unwrap_used, clippy::expect_used,))]
 

@@ -22,10 +22,10 @@ macro_rules! quantity {
 
         impl sealed::Si for $name {
             const UNIT: &'static str = $unit;
-            fn from_si(value: f64) -> Self {
+            fn from_si_value(value: f64) -> Self {
                 Self(value)
             }
-            fn si(self) -> f64 {
+            fn si_value(self) -> f64 {
                 self.0
             }
         }
@@ -38,9 +38,9 @@ pub(crate) mod sealed {
         /// The unit's symbol.
         const UNIT: &'static str;
         /// From a bare number in the SI unit.
-        fn from_si(value: f64) -> Self;
+        fn from_si_value(value: f64) -> Self;
         /// As a bare number in the SI unit.
-        fn si(self) -> f64;
+        fn si_value(self) -> f64;
     }
 }
 use sealed::Si;
@@ -118,6 +118,6 @@ impl<Q: Si> Measured<Q> {
 
     /// The expanded uncertainty `U = k u`; `k = 2` covers about 95 %.
     pub fn expanded(&self, k: f64) -> Q {
-        Q::from_si(k * self.u.si())
+        Q::from_si_value(k * self.u.si_value())
     }
 }

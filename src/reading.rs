@@ -45,10 +45,10 @@ impl<Q: Integral> Estimate<Q> {
         let variance = total.readout + total.input_noise + total.drift + total.dead_time + scale;
         let u = |variance: f32| {
             let magnitude = f64::from(math::sqrt(variance)) * per_count;
-            Q::from_si(if magnitude < 0.0 { -magnitude } else { magnitude })
+            Q::from_si_value(if magnitude < 0.0 { -magnitude } else { magnitude })
         };
         Self {
-            integral: Measured::new(Q::from_si(counts * per_count), u(variance)),
+            integral: Measured::new(Q::from_si_value(counts * per_count), u(variance)),
             budget: Budget {
                 readout: u(total.readout),
                 input_noise: u(total.input_noise),
@@ -98,7 +98,7 @@ pub struct Reading<Q> {
 impl<Q: Integral> Reading<Q> {
     pub(crate) fn new(setup: &Setup<Q>, run: &Run, at_stop: &Total, closed: Option<&Total>) -> Self {
         let latest = closed.unwrap_or(at_stop);
-        let integral = |q16: i64| Q::from_si(from_q16(q16) * setup.derived().integral_per_count);
+        let integral = |q16: i64| Q::from_si_value(from_q16(q16) * setup.derived().integral_per_count);
         let ticks = run.driven.saturating_add(run.held);
         Self {
             at_stop: Estimate::new(setup, at_stop),

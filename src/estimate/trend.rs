@@ -40,7 +40,9 @@ pub struct Innovation {
 /// Residuals this far from the anchor move the anchor by whole counts: `f32` resolves 2^-14 count there.
 const ANCHOR_REACH: f32 = 1024.0;
 
-/// Variances end here: 10^15 counts, 10^10 counts/s. Past them nothing is known, and their products stay within `f32`.
+/// Rates and variances end here: 10^10 counts/s, 10^15 counts. Past them nothing is known, and their products stay within
+/// `f32`.
+const RATE_MAX: f32 = 1e10;
 pub(crate) const LEVEL_VARIANCE_MAX: f32 = 1e30;
 const RATE_VARIANCE_MAX: f32 = 1e20;
 
@@ -132,7 +134,7 @@ impl Trend {
             self.level += level_gain * residual;
             self.recentre();
         }
-        self.rate += rate_gain * residual;
+        self.rate = (self.rate + rate_gain * residual).clamp(-RATE_MAX, RATE_MAX);
         self.level_given_rate *= kept;
         self.coupling *= kept;
         self.rate_variance = (self.rate_variance * (given_rate * precision)).max(self.rate_variance_floor());

@@ -1,0 +1,131 @@
+//! The keys of a set-up file: how they are read, and what each may hold.
+
+use serde::Deserialize;
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct SetupFile {
+    pub(crate) circuit: CircuitKeys,
+    pub(crate) converter: ConverterKeys,
+    pub(crate) noise: NoiseKeys,
+    #[serde(default)]
+    pub(crate) scale: ScaleKeys,
+    #[serde(default)]
+    pub(crate) policy: PolicyKeys,
+}
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct CircuitKeys {
+    pub(crate) capacitance_f: f64,
+    pub(crate) input_resistance_ohm: Option<f64>,
+    pub(crate) inverting: Option<bool>,
+    pub(crate) reset_level_v: Option<f64>,
+    pub(crate) rail_low_v: f64,
+    pub(crate) rail_high_v: f64,
+    pub(crate) offset_limit_v: f64,
+    pub(crate) bias_limit_a: f64,
+    pub(crate) source_resistance_ohm: Option<f64>,
+    pub(crate) leak_time_constant_s: Option<f64>,
+    #[serde(default)]
+    pub(crate) soakage: Vec<SoakageBranch>,
+    pub(crate) pedestal_v: Option<f64>,
+    pub(crate) pedestal_u_v: Option<f64>,
+    pub(crate) switch_resistance_ohm: Option<f64>,
+}
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct SoakageBranch {
+    pub(crate) fraction: f64,
+    pub(crate) time_constant_s: f64,
+}
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct ConverterKeys {
+    pub(crate) code_zero_v: f64,
+    pub(crate) lsb_v: f64,
+    pub(crate) code_min: i32,
+    pub(crate) code_max: i32,
+    pub(crate) tick_hz: f64,
+}
+
+#[derive(Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct NoiseKeys {
+    pub(crate) readout_counts: f64,
+    pub(crate) input_density: f64,
+    pub(crate) offset_wander: Option<f64>,
+}
+
+#[derive(Default, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct ScaleKeys {
+    pub(crate) responsivity_a_per_w: Option<f64>,
+    pub(crate) responsivity_u_rel: Option<f64>,
+    pub(crate) area_m2: Option<f64>,
+    pub(crate) area_u_rel: Option<f64>,
+    pub(crate) gain_u_rel: Option<f64>,
+}
+
+#[derive(Default, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub(crate) struct PolicyKeys {
+    pub(crate) edge_samples: Option<u8>,
+    pub(crate) gap_limit_s: Option<f64>,
+    pub(crate) frozen_samples: Option<u16>,
+    pub(crate) worst_input: Option<f64>,
+    pub(crate) latency_s: Option<f64>,
+    pub(crate) guard_sigma: Option<f64>,
+    pub(crate) settling_s: Option<f64>,
+    pub(crate) arrival_tolerance_v: Option<f64>,
+}
+
+/// Every key: its section, and what it may hold. Where the library checks a range its own words are shown instead.
+const KEYS: &[(&str, &str, &str)] = &[
+    ("circuit", "capacitance_f", "the integrating capacitance in farad, above 0 and at most 1"),
+    (
+        "circuit",
+        "input_resistance_ohm",
+        "the input resistor in ohm, above 0 and at most 1e15; absent for a current input",
+    ),
+    ("circuit", "inverting", "true or false (default true)"),
+    ("circuit", "reset_level_v", "a voltage within the rails, V (default 0)"),
+    ("circuit", "rail_low_v", "the lowest linear output voltage, V"),
+    ("circuit", "rail_high_v", "the highest linear output voltage, V"),
+    ("circuit", "offset_limit_v", "the data sheet's limit of the offset voltage in volt, 0 to 1"),
+    ("circuit", "bias_limit_a", "the data sheet's limit of the bias current in ampere, 0 to 1"),
+    ("circuit", "source_resistance_ohm", "the resistance of the source in ohm, above 0 and at most 1e18"),
+    ("circuit", "leak_time_constant_s", "absent"),
+    ("circuit", "soakage", "absent or an empty list"),
+    ("circuit", "pedestal_v", "a voltage within -1 and 1, V (default 0)"),
+    ("circuit", "pedestal_u_v", "a voltage from 0 to 1, V (default 0)"),
+    ("circuit", "switch_resistance_ohm", "a resistance from 0 to 1e6, ohm (default 100)"),
+    ("converter", "code_zero_v", "the output voltage at code 0, V"),
+    ("converter", "lsb_v", "volts per code, above 0"),
+    ("converter", "code_min", "the lowest code, a whole number within -2^30 and 2^30"),
+    ("converter", "code_max", "the highest code, a whole number above code_min and at most 2^30"),
+    ("converter", "tick_hz", "the rate of the tick counter in hertz, 1 to 4e9"),
+    ("noise", "readout_counts", "the noise of one sample in rms counts, 0 to 1e6"),
+    ("noise", "input_density", "the input's white noise, A (or V) per square root of hertz, 0 to 1"),
+    ("noise", "offset_wander", "the offset's random walk, A (or V) per square root of second, 0 to 1 (default 0)"),
+    ("scale", "responsivity_a_per_w", "the detector's responsivity in A/W, above 0"),
+    ("scale", "responsivity_u_rel", "the responsivity's relative standard uncertainty, 0 to 1"),
+    ("scale", "area_m2", "the detector's aperture in square metre, above 0"),
+    ("scale", "area_u_rel", "the aperture's relative standard uncertainty, 0 to 1"),
+    ("scale", "gain_u_rel", "the gain's relative standard uncertainty, 0 to 1 (default 0)"),
+    ("policy", "edge_samples", "a whole number from 2 to 16 (default 16)"),
+    ("policy", "gap_limit_s", "a time above 0 and below 2^31 / tick_hz, s (default 1)"),
+    ("policy", "frozen_samples", "a whole number from 0 to 65535 (default 64)"),
+    ("policy", "worst_input", "the largest input by design, A (or V), above 0; absent if unknown"),
+    ("policy", "latency_s", "a time from 0 to 3600, s (default 0)"),
+    ("policy", "guard_sigma", "a number from 0 to 100 (default 4)"),
+    ("policy", "settling_s", "a time from 0 to 3600, s (default 0.001)"),
+    ("policy", "arrival_tolerance_v", "a voltage above 0, V (default one hundredth of the usable span)"),
+];
+
+/// The section that `key` belongs to and what it may hold.
+pub(crate) fn about(key: &str) -> Option<(&'static str, &'static str)> {
+    KEYS.iter().find(|(_, known, _)| *known == key).map(|&(section, _, allowed)| (section, allowed))
+}

@@ -1,0 +1,115 @@
+//! Events, reasons and parts of the budget in words that tell what to do.
+
+use brimline::{Event, Reason, Trust};
+
+use crate::replay::Figure;
+
+/// A part of the uncertainty: its standard uncertainty, its name, and what makes it smaller.
+pub(crate) struct Part {
+    pub(crate) u: f64,
+    pub(crate) name: &'static str,
+    pub(crate) remedy: &'static str,
+}
+
+/// The parts of `figure`, largest first.
+pub(crate) fn budget(figure: &Figure) -> Vec<Part> {
+    let mut parts = vec![
+        Part {
+            u: figure.readout,
+            name: "readout noise",
+            remedy: "take more samples in the zeros, or a quieter converter",
+        },
+        Part {
+            u: figure.input_noise,
+            name: "noise of the input",
+            remedy: "a shorter run, or a quieter source and amplifier",
+        },
+        Part { u: figure.drift, name: "drift", remedy: "longer zeros before and after the run, or a shorter run" },
+        Part { u: figure.dead_time, name: "dead time at resets", remedy: "fewer resets, or more samples beside them" },
+        Part { u: figure.scale, name: "gain", remedy: "calibrate the gain against a known input" },
+    ];
+    parts.sort_by(|a, b| b.u.total_cmp(&a.u));
+    parts
+}
+
+/// The name that programs see.
+pub(crate) fn trust_name(trust: Trust) -> &'static str {
+    match trust {
+        Trust::Good => "good",
+        Trust::LowerBound => "lower_bound",
+        Trust::Invalid => "invalid",
+    }
+}
+
+/// What a degree of trust means.
+pub(crate) fn trust(trust: Trust) -> &'static str {
+    match trust {
+        Trust::Good => "good: value and uncertainty hold",
+        Trust::LowerBound => "LOWER BOUND: for an input of one sign the true value is at least this large",
+        Trust::Invalid => "INVALID: the value means nothing, do not use it",
+    }
+}
+
+/// What happened, and what to do about it.
+pub(crate) fn reason(reason: Reason) -> (&'static str, &'static str) {
+    match reason {
+        Reason::AtRail => (
+            "the level was at a rail or the converter at an end code, and input went unseen",
+            "reset sooner (worst_input, latency_s), or take a larger capacitor",
+        ),
+        Reason::Gap => (
+            "samples are missing for longer than gap_limit_s, and input may have gone unseen",
+            "look for lost samples; raise gap_limit_s only if the level cannot have been reset in such a time",
+        ),
+        Reason::Jump => (
+            "the level moved faster than worst_input allows",
+            "look for a reset that no row shows, a disturbance, or a worst_input that is too small",
+        ),
+        Reason::DeadTime => (
+            "too few samples beside a reset to know the input during it",
+            "sample faster, or leave more time between resets",
+        ),
+        Reason::ResetNotArrived => (
+            "after a reset the level was not at the reset level",
+            "check the reset switch and its drive, and whether settling_s and the time it stays closed suffice",
+        ),
+        Reason::Frozen => (
+            "the readings stood still although noise should move them",
+            "check converter, reference and wiring; lower readout_counts if the channel really is that quiet",
+        ),
+        Reason::DriftOutsideLimits => (
+            "the drift is larger than offset voltage and bias current within their limits can cause",
+            "look for leakage, a wrong amplifier, light on the detector during the zero, or limits set too tight",
+        ),
+        Reason::ClockStalled => {
+            ("the counter stood still or ran backwards", "check the timer and the order in which samples are handed on")
+        }
+        _ => ("the library gives a reason that this program does not know", "update this program"),
+    }
+}
+
+/// The name that programs see.
+pub(crate) fn event_name(event: Event) -> &'static str {
+    match event {
+        Event::RunStarted => "run_started",
+        Event::RunStopped => "run_stopped",
+        Event::ResetClosed => "reset_closed",
+        Event::ResetOpened => "reset_opened",
+        Event::ResetDue => "reset_due",
+        Event::Fault(_) => "fault",
+        _ => "other",
+    }
+}
+
+/// What happened, for a person.
+pub(crate) fn event(event: Event) -> String {
+    match event {
+        Event::RunStarted => "run started".to_owned(),
+        Event::RunStopped => "run stopped".to_owned(),
+        Event::ResetClosed => "reset switch closed".to_owned(),
+        Event::ResetOpened => "reset switch opened".to_owned(),
+        Event::ResetDue => "reset due: the level could reach a rail before the next sample".to_owned(),
+        Event::Fault(cause) => format!("FAULT {}: {}", cause.name(), reason(cause).0),
+        _ => "something that this program does not know".to_owned(),
+    }
+}
