@@ -14,7 +14,7 @@ fn points(x: &[f64], y: &[f64], variance: impl Fn(usize) -> f64) -> Vec<Point> {
     x.iter()
         .zip(y)
         .enumerate()
-        .map(|(i, (&x, &y))| Point { x: x as f32, y: y as f32, variance: variance(i) as f32 })
+        .map(|(i, (&x, &y))| Point { x: x as f32, y: y as f32, weight: (1.0 / variance(i)) as f32 })
         .collect()
 }
 
@@ -319,7 +319,7 @@ fn line_through_a_point_known_exactly_is_nist_no_int() {
         let set = Dataset::new(name);
         assert_eq!(set.x.len() as f64, set.value("n"));
         let mut points = points(&set.x, &set.y, |_| 1.0);
-        points.insert(0, Point { x: 0.0, y: 0.0, variance: 1e-9 });
+        points.insert(0, Point { x: 0.0, y: 0.0, weight: 1e9 });
         let line = fit(&points);
         let rounding = Rounding::of(&points, &line);
         let s = scatter(&line, dof);

@@ -43,13 +43,14 @@ impl Edge {
         level_walk: f32,
     ) -> Option<Self> {
         let (first_ticks, anchor) = samples.clone().next()?;
-        let points = samples.map(|(ticks, counts)| Point {
-            x: math::seconds(u64::from(ticks), tick_s),
+        let weight = 1.0 / readout_var;
+        let points = samples.map(move |(ticks, counts)| Point {
+            x: ticks as f32 * tick_s,
             y: (i64::from(counts) - i64::from(anchor)) as f32,
-            variance: readout_var,
+            weight,
         });
         let Some(line) = Line::fit(points.clone()) else {
-            let reach = math::seconds(u64::from(first_ticks), tick_s);
+            let reach = first_ticks as f32 * tick_s;
             return Some(Self {
                 anchor,
                 level: 0.0,
@@ -60,7 +61,7 @@ impl Edge {
             });
         };
         let span = points.clone().last().map_or(0.0, |p| p.x) - points.clone().next().map_or(0.0, |p| p.x);
-        let misfit = misfit(&line, level_walk * span / readout_var);
+        let misfit = misfit(&line, level_walk * span * weight);
         Some(Self {
             anchor,
             level: line.at(0.0),
@@ -71,7 +72,7 @@ impl Edge {
             }),
             // The extrapolation goes to -d in terms of the distance x.
             readout: [misfit * line.variance_at(0.0), misfit * -line.covariance_at(0.0), misfit * line.slope_variance],
-            walk: walk_forms(&line, points.map(|p| p.x), readout_var, level_walk),
+            walk: walk_forms(&line, points.map(|p| p.x), weight, level_walk),
         })
     }
 
@@ -123,9 +124,9 @@ fn misfit(line: &Line, walk: f32) -> f32 {
 /// The run is charged with the full walk of its whole duration. A fit's weights see the walk of its own window
 /// differently: of an increment between two samples the run keeps, instead of all, the square of the sum of the weights of
 /// the samples nearer to the instant. The weights, and with them the sum, are linear in the extrapolation: `h + d k`.
-fn walk_forms(line: &Line, distances: impl Iterator<Item = f32>, readout_var: f32, level_walk: f32) -> [f32; 3] {
-    let share = line.level_variance / readout_var;
-    let lever = line.slope_variance / readout_var;
+fn walk_forms(line: &Line, distances: impl Iterator<Item = f32>, weight: f32, level_walk: f32) -> [f32; 3] {
+    let share = line.level_variance * weight;
+    let lever = line.slope_variance * weight;
     let (mut h, mut k, mut near) = (0.0_f32, 0.0_f32, 0.0_f32);
     let mut forms = [0.0_f32; 3];
     for far in distances {

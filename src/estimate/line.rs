@@ -1,14 +1,14 @@
 //! Weighted straight-line fit.
 
-/// One point of a straight-line fit: the abscissa is exact, the ordinate has a variance.
+/// One point of a straight-line fit: the abscissa is exact, the ordinate has a weight.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Point {
     /// Abscissa.
     pub x: f32,
     /// Ordinate.
     pub y: f32,
-    /// Variance of the ordinate, above 0.
-    pub variance: f32,
+    /// One over the variance of the ordinate, above 0.
+    pub weight: f32,
 }
 
 /// A straight line `y = level + slope (x - centre)` fitted by weighted least squares.
@@ -19,7 +19,7 @@ pub struct Point {
 /// ```
 /// use brimline::estimate::{Line, Point};
 ///
-/// let points = [(0.0, 1.0), (1.0, 3.0), (2.0, 5.0)].map(|(x, y)| Point { x, y, variance: 0.25 });
+/// let points = [(0.0, 1.0), (1.0, 3.0), (2.0, 5.0)].map(|(x, y)| Point { x, y, weight: 4.0 });
 /// let line = Line::fit(points.iter().copied()).expect("two abscissas differ");
 /// assert_eq!(line.at(10.0), 21.0);
 /// assert!(line.variance_at(10.0) > line.variance_at(1.0));
@@ -36,7 +36,7 @@ pub struct Line {
     pub level_variance: f32,
     /// Variance of `slope`; the covariance with `level` is 0.
     pub slope_variance: f32,
-    /// Sum of squared weighted residuals; about `points - 2` where the variances given are true.
+    /// Sum of squared weighted residuals; about `points - 2` where the weights are true.
     pub chi_squared: f32,
     /// Number of points.
     pub points: u16,
@@ -45,24 +45,23 @@ pub struct Line {
 impl Line {
     /// Fits a line; `None` with fewer than two different abscissas. Three passes over the points, O(n).
     ///
-    /// The means are formed about the first point: where the variances differ by many decades, put the point with the
-    /// least variance first.
+    /// The means are formed about the first point: where the weights differ by many decades, put the heaviest point
+    /// first.
     pub fn fit(points: impl Iterator<Item = Point> + Clone) -> Option<Self> {
         let (mut count, mut weights, mut x_sum, mut y_sum) = (0_u16, 0.0_f32, 0.0_f32, 0.0_f32);
         let origin = points.clone().next()?;
         for p in points.clone() {
-            let weight = 1.0 / p.variance;
             count = count.saturating_add(1);
-            weights += weight;
-            x_sum += weight * (p.x - origin.x);
-            y_sum += weight * (p.y - origin.y);
+            weights += p.weight;
+            x_sum += p.weight * (p.x - origin.x);
+            y_sum += p.weight * (p.y - origin.y);
         }
         let centre = origin.x + x_sum / weights;
         let level = origin.y + y_sum / weights;
 
         let (mut xx, mut xy) = (0.0_f32, 0.0_f32);
         for p in points.clone() {
-            let x = (p.x - centre) / p.variance;
+            let x = (p.x - centre) * p.weight;
             xx += x * (p.x - centre);
             xy += x * (p.y - level);
         }
@@ -74,7 +73,7 @@ impl Line {
         let mut chi_squared = 0.0_f32;
         for p in points {
             let residual = p.y - level - slope * (p.x - centre);
-            chi_squared += residual * residual / p.variance;
+            chi_squared += residual * residual * p.weight;
         }
         Some(Self {
             centre,
