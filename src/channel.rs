@@ -185,7 +185,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         baseline.advance(math::seconds(self.pending, derived.tick_s), walk(derived, self.pending));
         self.pending = 0;
         if to != Mode::Zero {
-            let before = self.window.before(tick, run.opened, derived);
+            let before = self.window.before(tick, run.opening.as_ref(), derived);
             run.crossing = Some(Crossing { before, dead: 0, held: 0 });
             run.stage = Stage::Interrupted;
         }
@@ -230,7 +230,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             run.driven = run.driven.saturating_add(dead);
             run.held = run.held.saturating_add(held);
             run.stage = Stage::Integrating;
-            run.opened = true;
+            run.opening = None;
             run.opened_tick = tick;
             if dead > 0 {
                 notices.push(tick, Event::ResetOpened);
@@ -240,7 +240,6 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             if self.mode != Some(Mode::Zero) || !self.level_known {
                 self.rest();
                 run.crossing = Some(Crossing::default());
-                run.opened = true;
             }
             self.run = Some(run);
             notices.push(tick, Event::RunStarted);
@@ -280,7 +279,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
     fn find_level(&mut self, counts: i32) {
         let derived = self.setup.derived();
         if let Some(run) = self.run.as_mut() {
-            let last_counts = run.last_counts;
+            let (last_counts, last_var) = (run.last_counts, run.last_sample_var(derived));
             if let Stage::Stopped { bracket: bracket @ None, unbroken, .. } = &mut run.stage {
                 *bracket = Some(if *unbroken {
                     // Level and baseline drift together from the stop on.
@@ -288,7 +287,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
                     self.resting = 0;
                     Bracket::on_level(counts, derived.readout_var, &self.trend)
                 } else {
-                    Bracket::on_rate(last_counts, derived.readout_var, &self.trend)
+                    Bracket::on_rate(last_counts, last_var, &self.trend)
                 });
             }
         }

@@ -60,7 +60,7 @@ impl Ledger {
         self.interpolated_q16 = self.interpolated_q16.saturating_add(to_q16(half * (slopes.0 + slopes.1)));
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
         let fits = before.readout_variance(half) + after.readout_variance(half);
-        self.dead_time_var = (self.dead_time_var + fits + input).min(LEVEL_VARIANCE_MAX);
+        self.dead_time_var = (self.dead_time_var + fits + input).clamp(0.0, LEVEL_VARIANCE_MAX);
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
         let walk = before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
         self.walk_var = (self.walk_var + walk).clamp(-LEVEL_VARIANCE_MAX, LEVEL_VARIANCE_MAX);

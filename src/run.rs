@@ -5,6 +5,7 @@ use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
 use crate::setup::Derived;
+use crate::window::Opening;
 
 /// An interruption of a run that waits for the line after it.
 #[derive(Clone, Copy, Debug, Default)]
@@ -57,8 +58,8 @@ pub(crate) struct Run {
     pub(crate) reasons: Reasons,
     pub(crate) ledger: Ledger,
     pub(crate) crossing: Option<Crossing>,
-    /// Whether the present segment began with a line of its own.
-    pub(crate) opened: bool,
+    /// The line with which the present segment began, once it is drawn.
+    pub(crate) opening: Option<Opening>,
     /// When the present segment began.
     pub(crate) opened_tick: u32,
     pub(crate) last_counts: i32,
@@ -85,7 +86,7 @@ impl Run {
             reasons,
             ledger: Ledger::default(),
             crossing: None,
-            opened: false,
+            opening: None,
             opened_tick: tick,
             last_counts: 0,
             driven: 0,
@@ -114,26 +115,44 @@ impl Run {
         let Some(crossing) = self.crossing.take() else {
             return Bridged::Interpolated;
         };
+        let half_s = 0.5 * math::seconds(crossing.dead, derived.tick_s);
+        self.opening = Some(Opening::new(&after, half_s, self.opened_tick, self.end_tick));
         let Some(before) = crossing.before else {
             baseline.restart(after.anchor, after.level(baseline.rate()), after.readout_variance(0.0));
             self.ledger.walk_var += after.walk_variance(0.0);
             self.begin_on(baseline);
             return Bridged::Interpolated;
         };
-        let dead_s = math::seconds(crossing.dead, derived.tick_s);
-        self.ledger.bridge(&before, &after, dead_s, derived.level_walk)
+        self.ledger.bridge(&before, &after, 2.0 * half_s, derived.level_walk)
     }
 
     /// The total up to the last integrating sample, with the baseline at that time.
     pub(crate) fn total(&self, baseline: &Trend, derived: &Derived) -> Total {
         let walk = derived.level_walk * math::seconds(self.driven, derived.tick_s);
+        let weight = self.last_sample_weight(derived);
+        let own = 1.0 - weight;
+        let counted_twice = derived.readout_var * weight * weight;
+        let (of_start, of_dead_time) = match self.ledger.dead_time_var >= counted_twice {
+            true => (0.0, counted_twice),
+            false => (counted_twice, 0.0),
+        };
         Total {
             movement_q16: movement_q16(self.last_counts, baseline).saturating_add(self.ledger.total_q16()),
-            readout: derived.readout_var + self.start_var,
+            readout: not_negative(derived.readout_var * own * own + self.start_var - of_start),
             input_noise: not_negative(walk + self.ledger.walk_var),
             drift: not_negative(baseline.level_variance() - self.start_var - walk),
-            dead_time: self.ledger.dead_time_var,
+            dead_time: self.ledger.dead_time_var - of_dead_time,
         }
+    }
+
+    /// The weight that the last sample has in the opening line as well, shortly after a reset.
+    fn last_sample_weight(&self, derived: &Derived) -> f32 {
+        self.opening.map_or(0.0, |opening| opening.weight(self.end_tick, derived))
+    }
+
+    /// What the last sample adds to the variance of a total that ends on it: `r (1 - 2 w)`.
+    pub(crate) fn last_sample_var(&self, derived: &Derived) -> f32 {
+        derived.readout_var * (1.0 - 2.0 * self.last_sample_weight(derived))
     }
 
     /// The total as the closing zero sees it; `zero` is the level and drift there.

@@ -2,7 +2,7 @@
 
 use heapless::Deque;
 
-use crate::estimate::{Edge, Side};
+use crate::estimate::{Edge, EdgeNoise, Side, Weights};
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
 /// Integer work only, until a line is asked for.
@@ -33,18 +33,15 @@ impl Window {
     /// The line just after the switch opened at `instant`.
     pub(crate) fn after(&self, instant: u32, derived: &Derived) -> Option<Edge> {
         let samples = self.iter().map(|&(tick, counts)| (tick.wrapping_sub(instant), counts));
-        Edge::fit(Side::After, samples, derived.tick_s, derived.readout_var, derived.level_walk)
+        Edge::fit(Side::After, samples, derived.tick_s, noise(derived), |_| 0.0)
     }
 
-    /// The line just before the switch closed at `instant`. `opened`: the segment began with a line of its own, which
-    /// should not share samples with this one.
-    pub(crate) fn before(&self, instant: u32, opened: bool, derived: &Derived) -> Option<Edge> {
-        let fresh = usize::from(self.seen.saturating_sub(derived.edge_samples));
-        let shares = opened && fresh < 2;
-        let take = if opened && !shares { fresh } else { EDGE_SAMPLES_MAX };
-        let samples = self.iter().rev().take(take).map(|&(tick, counts)| (instant.wrapping_sub(tick), counts));
-        let edge = Edge::fit(Side::Before, samples, derived.tick_s, derived.readout_var, derived.level_walk);
-        if shares { edge.map(Edge::sharing_samples) } else { edge }
+    /// The line just before the switch closed at `instant`. `opening`: the line at the other end of the segment, which
+    /// may share samples with this one.
+    pub(crate) fn before(&self, instant: u32, opening: Option<&Opening>, derived: &Derived) -> Option<Edge> {
+        let samples = self.iter().rev().map(|&(tick, counts)| (instant.wrapping_sub(tick), counts));
+        let taken = |ticks| opening.map_or(0.0, |opening| opening.weight(instant.wrapping_sub(ticks), derived));
+        Edge::fit(Side::Before, samples, derived.tick_s, noise(derived), taken)
     }
 
     /// Oldest first.
@@ -52,4 +49,34 @@ impl Window {
         let (older, newer) = self.samples.as_slices();
         older.iter().chain(newer)
     }
+}
+
+/// The line with which a segment opened: which samples it used, and with what weights they are in the run's total.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Opening {
+    weights: Weights,
+    /// How far the line was extrapolated into the dead time, s.
+    extrapolated_s: f32,
+    instant: u32,
+    /// Ticks from the instant to the last sample that the line used.
+    window: u32,
+}
+
+impl Opening {
+    pub(crate) fn new(line: &Edge, extrapolated_s: f32, instant: u32, last: u32) -> Self {
+        Self { weights: line.weights(), extrapolated_s, instant, window: last.wrapping_sub(instant) }
+    }
+
+    /// The weight of the sample at `tick`; 0 if the line did not use it.
+    pub(crate) fn weight(&self, tick: u32, derived: &Derived) -> f32 {
+        let ticks = tick.wrapping_sub(self.instant);
+        if ticks > self.window {
+            return 0.0;
+        }
+        self.weights.of(ticks as f32 * derived.tick_s, self.extrapolated_s)
+    }
+}
+
+fn noise(derived: &Derived) -> EdgeNoise {
+    EdgeNoise { readout_var: derived.readout_var, level_walk: derived.level_walk, bend_var: derived.bend_var }
 }

@@ -53,6 +53,7 @@ fn each_parameter_is_refused_by_name() {
         policy.edge_samples: [0, 1, 17]
         policy.gap_limit_s: [0.0, -1.0, 2147.5, nan]
         policy.worst_input: [Some(0.0), Some(-1.0), Some(nan), Some(1e6)]
+        policy.input_slew: [Some(-1.0), Some(2e6), Some(nan), Some(1.0)]
         policy.latency_s: [-1.0, 4000.0, nan]
         policy.guard_sigma: [-1.0, 101.0, nan]
         policy.settling_s: [-1.0, 4000.0, nan]

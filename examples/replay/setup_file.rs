@@ -147,6 +147,7 @@ fn policy(p: &PolicyKeys) -> Policy {
         gap_limit_s: p.gap_limit_s.unwrap_or(d.gap_limit_s),
         frozen_samples: p.frozen_samples.unwrap_or(d.frozen_samples),
         worst_input: p.worst_input.or(d.worst_input),
+        input_slew: p.input_slew.or(d.input_slew),
         latency_s: p.latency_s.unwrap_or(d.latency_s),
         guard_sigma: p.guard_sigma.unwrap_or(d.guard_sigma),
         settling_s: p.settling_s.unwrap_or(d.settling_s),

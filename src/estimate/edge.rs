@@ -12,10 +12,27 @@ pub(crate) enum Side {
     After,
 }
 
-/// A straight line through the samples beside a switching instant, described at that instant.
+/// A bend that noise could hardly have made is taken off: a parabola instead of a line.
+const CORRECTED_BEND: f32 = 4.0;
+/// A bend that noise may have made is left in and charged in full. Taking it off as well would make errors of just those
+/// lines on which noise had played its tricks, and state them too small.
+const CHARGED_BEND: f32 = 3.0;
+
+/// Noise of the samples: readout variance of each, counts^2, and walk of the level between them, counts^2/s.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct EdgeNoise {
+    pub(crate) readout_var: f32,
+    pub(crate) level_walk: f32,
+    /// How far the level may bend beside the instant: variance of half its second derivative, (counts/s^2)^2; `None`:
+    /// unknown.
+    pub(crate) bend_var: Option<f32>,
+}
+
+/// A line through the samples beside a switching instant, described at that instant. Where the samples show plainly that
+/// the input changes, a parabola.
 ///
-/// Its quadratic forms give the variance that extrapolating the line by `d` seconds away from its samples, into the
-/// dead time, adds to the run: `v[0] + 2 v[1] d + v[2] d^2`.
+/// Its quadratic forms give the variance that extrapolating it by `d` seconds away from its samples, into the dead time,
+/// adds to the run: `v[0] + 2 v[1] d + v[2] d^2`.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Edge {
     /// Whole part of the level at the instant, counts.
@@ -28,60 +45,118 @@ pub(crate) struct Edge {
     pub(crate) slope: Option<f32>,
     /// Readout noise and misfit.
     readout: [f32; 3],
-    /// Input noise: what the line's weights change in the walk that the whole run is charged with. May be negative.
+    /// Input noise: what the weights change in the walk that the whole run is charged with. May be negative.
     walk: [f32; 3],
+    weights: Weights,
+}
+
+/// The weights with which the samples make up the level at the distance `-d`: a polynomial in `u = x - centre`, each of
+/// whose coefficients is linear in `d`.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub(crate) struct Weights {
+    centre: f32,
+    at_instant: [f32; 3],
+    per_second: [f32; 3],
+}
+
+impl Weights {
+    /// The weight at the instant of the sample at distance `x`, and its change with `d`.
+    fn parts(&self, x: f32) -> (f32, f32) {
+        let u = x - self.centre;
+        let polynomial = |c: &[f32; 3]| c[0] + u * (c[1] + u * c[2]);
+        (polynomial(&self.at_instant), polynomial(&self.per_second))
+    }
+
+    /// The weight of the sample at distance `x` in the level at `-d`.
+    pub(crate) fn of(&self, x: f32, d: f32) -> f32 {
+        let (at_instant, per_second) = self.parts(x);
+        at_instant + d * per_second
+    }
 }
 
 impl Edge {
-    /// Fits the samples `(ticks from the instant, counts)`, in the order of growing distance, at most
-    /// [`EDGE_SAMPLES_MAX`](crate::setup::EDGE_SAMPLES_MAX) of them; `None` if there are none.
+    /// Fits the samples `(ticks from the instant, counts)`, in the order of growing distance; `None` if there are none.
+    ///
+    /// `taken(ticks)`: the weight that the sample so far from the instant has already in the line at the other end of its
+    /// segment, 0 if none. Noise that both lines share is charged once and with its sign.
     pub(crate) fn fit(
         side: Side,
         samples: impl Iterator<Item = (u32, i32)> + Clone,
         tick_s: f32,
-        readout_var: f32,
-        level_walk: f32,
+        noise: EdgeNoise,
+        taken: impl Fn(u32) -> f32,
     ) -> Option<Self> {
         let (first_ticks, anchor) = samples.clone().next()?;
-        let weight = 1.0 / readout_var;
-        let points = samples.map(move |(ticks, counts)| Point {
+        let weight = 1.0 / noise.readout_var;
+        let points = samples.clone().map(move |(ticks, counts)| Point {
             x: ticks as f32 * tick_s,
             y: (i64::from(counts) - i64::from(anchor)) as f32,
             weight,
         });
-        let Some(line) = Line::fit(points.clone()) else {
-            let reach = first_ticks as f32 * tick_s;
-            return Some(Self {
-                anchor,
-                level: 0.0,
-                reach,
-                slope: None,
-                readout: [readout_var, 0.0, 0.0],
-                walk: [level_walk * -reach, 0.0, 0.0],
-            });
+        let forward = match side {
+            Side::Before => -1.0,
+            Side::After => 1.0,
         };
-        let span = points.clone().last().map_or(0.0, |p| p.x) - points.clone().next().map_or(0.0, |p| p.x);
-        let misfit = misfit(&line, level_walk * span * weight);
-        Some(Self {
+        let mut edge = Self {
             anchor,
-            level: line.at(0.0),
-            reach: 0.0,
-            slope: Some(match side {
-                Side::Before => -line.slope,
-                Side::After => line.slope,
-            }),
-            // The extrapolation goes to -d in terms of the distance x.
-            readout: [misfit * line.variance_at(0.0), misfit * -line.covariance_at(0.0), misfit * line.slope_variance],
-            walk: walk_forms(&line, points.map(|p| p.x), weight, level_walk),
-        })
+            level: 0.0,
+            reach: first_ticks as f32 * tick_s,
+            slope: None,
+            readout: [0.0; 3],
+            walk: [0.0; 3],
+            weights: Weights { centre: 0.0, at_instant: [1.0, 0.0, 0.0], per_second: [0.0; 3] },
+        };
+        let mut misfit = 1.0;
+        if let Some(line) = Line::fit(points.clone()) {
+            let share = line.level_variance * weight;
+            let lever = line.slope_variance * weight;
+            edge.reach = 0.0;
+            edge.level = line.at(0.0);
+            edge.weights.centre = line.centre;
+            edge.weights.at_instant = [share, -line.centre * lever, 0.0];
+            edge.weights.per_second = [0.0, -lever, 0.0];
+            let bend = Bend::of(&line, points.clone(), noise);
+            let mut slope = line.slope;
+            if let Some(bend) = bend {
+                let (taken_off, left) = bend.share_to_take_off(noise.bend_var);
+                edge.level += taken_off * bend.amount * bend.at_instant;
+                slope -= taken_off * bend.amount * bend.per_second;
+                bend.add_to(&mut edge.weights, taken_off);
+                let forms = |a: f32, b: f32| left * a * b;
+                edge.readout = [
+                    forms(bend.at_instant, bend.at_instant),
+                    forms(bend.at_instant, bend.per_second),
+                    forms(bend.per_second, bend.per_second),
+                ];
+            }
+            edge.slope = Some(forward * slope);
+            misfit = unexplained(&line, bend, points.clone(), noise);
+        }
+        edge.charge(samples.map(|(ticks, _)| (ticks as f32 * tick_s, taken(ticks))), noise, misfit);
+        Some(edge)
     }
 
-    /// The same edge if it shares its samples with the edge at the other end of its segment. Rise and extrapolation of
-    /// a line fitted twice to the same points have up to 1.5 times the variance of two separate fits; this edge takes
-    /// the excess of both.
-    pub(crate) fn sharing_samples(mut self) -> Self {
-        self.readout = self.readout.map(|v| 2.0 * v);
-        self
+    /// Works out the quadratic forms from the samples' distances and the weights that are taken already.
+    ///
+    /// The run is charged with the full walk of its whole duration. A fit's weights see the walk of its own window
+    /// differently: of an increment between two samples the run keeps, instead of all, the square of the sum `h` of the
+    /// weights of the samples nearer to the instant.
+    fn charge(&mut self, samples: impl Iterator<Item = (f32, f32)>, noise: EdgeNoise, misfit: f32) {
+        let (mut h, mut k, mut other, mut near) = (0.0_f32, 0.0_f32, 0.0_f32, 0.0_f32);
+        for (far, shared) in samples {
+            let span = noise.level_walk * (far - near);
+            self.walk[0] += span * (h * h - 1.0 + 2.0 * other * (1.0 - h));
+            self.walk[1] += span * (h * k - other * k);
+            self.walk[2] += span * k * k;
+            near = far;
+            let (p, s) = self.weights.parts(far);
+            self.readout[0] += noise.readout_var * (misfit * p * p - 2.0 * p * shared);
+            self.readout[1] += noise.readout_var * (misfit * p * s - s * shared);
+            self.readout[2] += noise.readout_var * misfit * s * s;
+            h += p;
+            k += s;
+            other += shared;
+        }
     }
 
     /// The level at the switching instant above `anchor`, counts, when the level moves by `slope`.
@@ -103,41 +178,116 @@ impl Edge {
     pub(crate) fn slope_variance(&self) -> f32 {
         self.readout[2] + self.walk[2]
     }
+
+    /// The weights of its samples.
+    pub(crate) fn weights(&self) -> Weights {
+        self.weights
+    }
 }
 
 fn quadratic(v: &[f32; 3], d: f32) -> f32 {
     v[0] + d * (2.0 * v[1] + d * v[2])
 }
 
-/// Factor on the variances where the points scatter about the line by clearly more than their noise: the input curved,
-/// or hum is present. It is `chi^2` over its expectation, once it lies 3 standard deviations above (Birge ratio).
-///
-/// A random walk that gains `walk` readout variances over the window adds `walk (n + 2)(n - 2) / (15 (n - 1))` to the
-/// expectation `n - 2`.
-fn misfit(line: &Line, walk: f32) -> f32 {
-    let n = f32::from(line.points);
-    let expected = (n - 2.0) * (1.0 + walk * (n + 2.0) / (15.0 * (n - 1.0)));
-    let scatter = expected * math::sqrt(2.0 / (n - 2.0));
-    if n > 2.0 && line.chi_squared > expected + 3.0 * scatter { line.chi_squared / expected } else { 1.0 }
+/// What the samples show of a curved input: the part of a parabola that no line holds,
+/// `amount (u^2 - skew u - mean square)`.
+#[derive(Clone, Copy, Debug)]
+struct Bend {
+    amount: f32,
+    /// Variance of `amount` from readout noise and walk.
+    variance: f32,
+    /// Sum of the squares of the polynomial over the samples.
+    power: f32,
+    skew: f32,
+    mean_square: f32,
+    /// The polynomial at the instant, and its change with the extrapolation `d`.
+    at_instant: f32,
+    per_second: f32,
 }
 
-/// The run is charged with the full walk of its whole duration. A fit's weights see the walk of its own window
-/// differently: of an increment between two samples the run keeps, instead of all, the square of the sum of the weights of
-/// the samples nearer to the instant. The weights, and with them the sum, are linear in the extrapolation: `h + d k`.
-fn walk_forms(line: &Line, distances: impl Iterator<Item = f32>, weight: f32, level_walk: f32) -> [f32; 3] {
-    let share = line.level_variance * weight;
-    let lever = line.slope_variance * weight;
-    let (mut h, mut k, mut near) = (0.0_f32, 0.0_f32, 0.0_f32);
-    let mut forms = [0.0_f32; 3];
-    for far in distances {
-        let span = level_walk * (far - near);
-        forms[0] += span * (h * h - 1.0);
-        forms[1] += span * h * k;
-        forms[2] += span * k * k;
-        let weight_slope = (far - line.centre) * lever;
-        h += share - line.centre * weight_slope;
-        k -= weight_slope;
-        near = far;
+impl Bend {
+    /// `None` with fewer than four samples, or where the line is exact.
+    fn of(line: &Line, points: impl Iterator<Item = Point> + Clone, noise: EdgeNoise) -> Option<Self> {
+        let (mut squares, mut cubes) = (0.0_f32, 0.0_f32);
+        for p in points.clone() {
+            let u = p.x - line.centre;
+            squares += u * u;
+            cubes += u * u * u;
+        }
+        let (skew, mean_square) = (cubes / squares, squares / f32::from(line.points));
+        let polynomial = |x: f32| {
+            let u = x - line.centre;
+            u * (u - skew) - mean_square
+        };
+        let (mut power, mut product, mut nearer, mut walked, mut near) = (0.0_f32, 0.0_f32, 0.0_f32, 0.0_f32, 0.0_f32);
+        for p in points {
+            walked += (p.x - near) * nearer * nearer;
+            near = p.x;
+            let value = polynomial(p.x);
+            power += value * value;
+            product += value * (p.y - line.at(p.x));
+            nearer += value;
+        }
+        if line.points < 4 || power <= 0.0 {
+            return None;
+        }
+        Some(Self {
+            amount: product / power,
+            variance: (noise.readout_var + noise.level_walk * walked / power) / power,
+            power,
+            skew,
+            mean_square,
+            at_instant: polynomial(0.0),
+            per_second: 2.0 * line.centre + skew,
+        })
     }
-    forms
+
+    /// Whether it stands out of the noise by more than so many standard deviations.
+    fn stands_out(&self, deviations: f32) -> bool {
+        self.amount * self.amount > deviations * deviations * self.variance
+    }
+
+    /// How much of the bend to take off, 0 to 1, and the variance of what is left in, (counts/s^2)^2.
+    ///
+    /// With a prior variance `b` of the bend and a variance `v` of what the samples show, `b/(b + v)` is taken off and
+    /// `b v^2/(b + v)^2` left in. Without a prior, see [`CORRECTED_BEND`] and [`CHARGED_BEND`].
+    fn share_to_take_off(&self, bend_var: Option<f32>) -> (f32, f32) {
+        match bend_var {
+            Some(prior) => {
+                let share = prior / (prior + self.variance);
+                (share, prior * (1.0 - share) * (1.0 - share))
+            }
+            None if self.stands_out(CORRECTED_BEND) => (1.0, 0.0),
+            None if self.stands_out(CHARGED_BEND) => (0.0, self.amount * self.amount),
+            None => (0.0, 0.0),
+        }
+    }
+
+    fn add_to(&self, weights: &mut Weights, taken_off: f32) {
+        let share = taken_off / self.power;
+        for (coefficients, reach) in
+            [(&mut weights.at_instant, self.at_instant), (&mut weights.per_second, self.per_second)]
+        {
+            coefficients[0] -= reach * share * self.mean_square;
+            coefficients[1] -= reach * share * self.skew;
+            coefficients[2] += reach * share;
+        }
+    }
+}
+
+/// Factor on the variances where the samples scatter about their curve by clearly more than their noise: hum, or an
+/// input that does more than curve. It is `chi^2` over its expectation, once it lies 3 standard deviations above (Birge
+/// ratio). The random walk adds `walk (n + 2)(n - 2) / (15 (n - 1))` to the expectation `n - 2`, where `walk` is what it
+/// gains over the window in readout variances.
+fn unexplained(line: &Line, bend: Option<Bend>, points: impl Iterator<Item = Point> + Clone, noise: EdgeNoise) -> f32 {
+    let n = f32::from(line.points);
+    let span = points.clone().last().map_or(0.0, |p| p.x) - points.clone().next().map_or(0.0, |p| p.x);
+    let walk = noise.level_walk * span / noise.readout_var;
+    let curved = bend
+        .filter(|bend| bend.stands_out(CHARGED_BEND))
+        .map_or(0.0, |b| b.amount * b.amount * b.power / noise.readout_var);
+    let chi_squared = line.chi_squared - curved;
+    let expected = (n - 2.0) * (1.0 + walk * (n + 2.0) / (15.0 * (n - 1.0)));
+    let scatter = expected * math::sqrt(2.0 / (n - 2.0));
+    if n > 2.0 && chi_squared > expected + 3.0 * scatter { chi_squared / expected } else { 1.0 }
 }

@@ -38,6 +38,8 @@ pub(crate) struct Derived {
     pub(crate) step_noise_counts: i32,
     /// Equal readings in a row that are a fault; 0: not watched.
     pub(crate) frozen_samples: u16,
+    /// Variance of half the level's second derivative, (counts/s^2)^2; `None`: unknown.
+    pub(crate) bend_var: Option<f32>,
     /// Samples in the fits beside a reset.
     pub(crate) edge_samples: u8,
 }
@@ -98,6 +100,19 @@ impl Derived {
         };
         let per_tick_q16 = worst_rate / converter.tick_hz * 65536.0;
         check!(per_tick_q16 <= 1e9, "worst_input", "small enough for at most 15,000 counts per tick");
+        // An input that swings at its fastest: a sine's slew has half the square of its peak (GUM 4.3.5, U-shaped).
+        let bend_var = match policy.input_slew {
+            Some(slew) => {
+                let bend = 0.5 * slew * per_input;
+                check!(
+                    bend <= 1e9,
+                    "input_slew",
+                    "small enough to bend the level by at most 2e9 counts per square second"
+                );
+                Some((bend * bend / 2.0) as f32)
+            }
+            None => None,
+        };
         let sigma = noise.readout_counts + QUANTISATION_RMS;
         let settling_s = policy.settling_s + 10.0 * circuit.switch_resistance_ohm * circuit.capacitance_f;
         Ok(Self {
@@ -117,6 +132,7 @@ impl Derived {
             guard_counts: ceil(worst_rate * policy.latency_s + policy.guard_sigma * sigma),
             step_noise_counts: ceil(8.0 * sigma),
             frozen_samples: if noise.readout_counts >= 0.5 { policy.frozen_samples } else { 0 },
+            bend_var,
             edge_samples: policy.edge_samples,
         })
     }

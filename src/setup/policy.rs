@@ -20,6 +20,11 @@ pub struct Policy {
     /// Largest magnitude of the input that the design allows, input units; `None`: unknown. With it the crate advises
     /// resets and notices a level that jumped. A design constant, never an estimate.
     pub worst_input: Option<f64>,
+    /// Fastest change of the input that the design expects, input units/s; `None`: unknown. It tells how far the input
+    /// may bend beside a reset. Without it only a bend that stands out of the noise is seen, and one that just does not
+    /// is missing from the uncertainty: where dead time dominates the budget and the input changes, give it, or take
+    /// fewer samples. `edge_samples` should span no more than a sixth of the period of the fastest change.
+    pub input_slew: Option<f64>,
     /// Time from a request to the reset switch closing, s: 0 to 3600.
     pub latency_s: f64,
     /// How many standard deviations of the readout the reset advice keeps from the rail: 0 to 100.
@@ -31,13 +36,14 @@ pub struct Policy {
 }
 
 impl Policy {
-    /// Fits of 16 samples, gaps up to 1 s, 64 equal readings mean frozen, no worst-case input known, 4 sigma of guard,
+    /// Fits of 16 samples, gaps up to 1 s, 64 equal readings mean frozen, no worst-case input or slew known, 4 sigma of guard,
     /// 1 ms of settling.
     pub const DEFAULT: Self = Self {
         edge_samples: 16,
         gap_limit_s: 1.0,
         frozen_samples: 64,
         worst_input: None,
+        input_slew: None,
         latency_s: 0.0,
         guard_sigma: 4.0,
         settling_s: 1e-3,
@@ -53,6 +59,9 @@ impl Policy {
         );
         if let Some(worst) = self.worst_input {
             check!(worst > 0.0 && worst <= 1e6, "worst_input", "above 0 and at most 1e6 (input units)");
+        }
+        if let Some(slew) = self.input_slew {
+            check!(slew >= 0.0 && slew <= 1e6, "input_slew", "0 to 1e6 (input units per second)");
         }
         check!(self.latency_s >= 0.0 && self.latency_s <= 3600.0, "latency_s", "0 to 3600 (second)");
         check!(self.guard_sigma >= 0.0 && self.guard_sigma <= 100.0, "guard_sigma", "0 to 100");
