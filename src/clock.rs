@@ -9,6 +9,8 @@ pub(crate) enum Elapsed {
     Ticks(u32),
     /// The counter did not move, or went back (a step of more than half its span).
     Stalled,
+    /// The counter has gone on from such a step often enough: it began anew, and the time in between is unknown.
+    Restarted,
 }
 
 /// A free-running 32-bit counter.
@@ -17,7 +19,13 @@ pub(crate) enum Elapsed {
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Clock {
     last: Option<u32>,
+    /// The latest tick that was out of order, and how many went forward from there.
+    astray: u32,
+    onward: u8,
 }
+
+/// Ticks in a row that go forward from one that was out of order: the counter has been restarted.
+const RESTART_TICKS: u8 = 3;
 
 impl Clock {
     /// Takes the next tick; a stalled counter leaves the clock where it was.
@@ -25,12 +33,24 @@ impl Clock {
         let elapsed = match self.last {
             None => Elapsed::Start,
             Some(last) => match tick.wrapping_sub(last) {
-                0 | 0x8000_0000.. => return Elapsed::Stalled,
+                0 | 0x8000_0000.. => match self.stray(tick) {
+                    false => return Elapsed::Stalled,
+                    true => Elapsed::Restarted,
+                },
                 ticks => Elapsed::Ticks(ticks),
             },
         };
         self.last = Some(tick);
+        self.onward = 0;
         elapsed
+    }
+
+    /// Takes a tick that is out of order; `true` if it and those before it make a counter that runs.
+    fn stray(&mut self, tick: u32) -> bool {
+        let forward = matches!(tick.wrapping_sub(self.astray), 1..=0x7FFF_FFFF);
+        self.onward = if forward || self.onward == 0 { self.onward.saturating_add(1) } else { 1 };
+        self.astray = tick;
+        self.onward > RESTART_TICKS
     }
 
     /// The latest tick; 0 before the first.
@@ -59,5 +79,25 @@ mod tests {
         assert_eq!(clock.advance(100 + 0x8000_0000), Elapsed::Stalled);
         assert_eq!(clock.advance(100 + 0x7FFF_FFFF), Elapsed::Ticks(0x7FFF_FFFF));
         assert_eq!(clock.tick(), 100 + 0x7FFF_FFFF);
+    }
+
+    #[test]
+    fn a_counter_that_runs_on_from_a_step_back_was_restarted() {
+        let mut clock = Clock::default();
+        clock.advance(1_000_000);
+        for tick in [10, 20, 30] {
+            assert_eq!(clock.advance(tick), Elapsed::Stalled);
+        }
+        assert_eq!(clock.advance(40), Elapsed::Restarted);
+        assert_eq!(clock.advance(50), Elapsed::Ticks(10));
+    }
+
+    #[test]
+    fn a_counter_that_stands_still_is_never_restarted() {
+        let mut clock = Clock::default();
+        clock.advance(1_000_000);
+        for _ in 0..100 {
+            assert_eq!(clock.advance(1_000_000), Elapsed::Stalled);
+        }
     }
 }

@@ -15,17 +15,21 @@ impl Health {
         counts < derived.usable.0 || counts > derived.usable.1
     }
 
-    /// Takes a sample and tells whether the readings are frozen. Never so on a channel too quiet to tell.
-    pub(crate) fn frozen(&mut self, counts: i32, derived: &Derived) -> bool {
-        self.repeats = if self.last == Some(counts) { self.repeats.saturating_add(1) } else { 0 };
+    /// Takes a sample.
+    pub(crate) fn take(&mut self, counts: i32) {
+        self.repeats = if self.last == Some(counts) { self.repeats.saturating_add(1) } else { 1 };
         self.last = Some(counts);
+    }
+
+    /// Whether the readings are frozen. Never so on a channel too quiet to tell.
+    pub(crate) fn frozen(&self, derived: &Derived) -> bool {
         derived.frozen_samples > 0 && self.repeats >= derived.frozen_samples
     }
 
-    /// Whether the level moved by more in `ticks` than the worst-case input and the noise can move it.
-    pub(crate) fn jumped(from: i32, to: i32, ticks: u32, derived: &Derived) -> bool {
-        let reach = derived.worst_movement(ticks).saturating_add(i64::from(derived.step_noise_counts));
-        derived.worst_rate_q16 > 0 && i64::from(to).abs_diff(i64::from(from)) > reach.unsigned_abs()
+    /// Whether the level moved to `counts` by more in `ticks` than the worst-case input and the noise can move it.
+    pub(crate) fn jumped(&self, counts: i32, ticks: u32, derived: &Derived) -> bool {
+        let reach = derived.worst_movement(ticks).saturating_add(i64::from(derived.step_counts));
+        self.last.is_some_and(|last| i64::from(counts).abs_diff(i64::from(last)) > reach.unsigned_abs())
     }
 
     /// Whether a level lies outside a window of codes.

@@ -17,8 +17,10 @@ pub(crate) fn whole_q16(counts: i64) -> i64 {
 pub(crate) struct Ledger {
     /// Drop of the level across the interruptions, to be added back.
     pub(crate) carried_q16: i64,
-    /// Movement that the input would have caused during dead time.
+    /// Movement that the lines say there would have been during dead time, drift included.
     pub(crate) interpolated_q16: i64,
+    /// The drift's share of it.
+    pub(crate) dead_drift_q16: i64,
     /// Variance from the fits beside the interruptions and from the interpolation, counts^2.
     pub(crate) dead_time_var: f32,
     /// Change of the run's walk variance, counts^2; may be negative.
@@ -41,12 +43,20 @@ impl Ledger {
     /// instants, and interpolated input `= dead (slope before + slope after) / 2`. Where the slopes differ by more than
     /// their noise, the input changed at an unknown instant in between: a rectangular distribution of the full width
     /// `|difference| dead`, variance `width^2 / 12` (GUM 4.3.7).
-    pub(crate) fn bridge(&mut self, before: &Edge, after: &Edge, dead_s: f32, level_walk: f32) -> Bridged {
+    ///
+    /// Where a slope is not known, nothing is taken for input: the level is carried over, the dead time adds its drift at
+    /// `rate`, and what the known slope would have added is the uncertainty.
+    pub(crate) fn bridge(&mut self, before: &Edge, after: &Edge, dead_s: f32, rate: f32, level_walk: f32) -> Bridged {
         let half = 0.5 * dead_s;
         let (slopes, bridged) = match (before.slope, after.slope) {
             (Some(b), Some(a)) => ((b, a), Bridged::Interpolated),
             (Some(s), None) | (None, Some(s)) => ((s, s), Bridged::Guessed),
             (None, None) => ((0.0, 0.0), Bridged::Guessed),
+        };
+        let drifted = to_q16(dead_s * rate);
+        let interpolated = match bridged {
+            Bridged::Interpolated => to_q16(half * (slopes.0 + slopes.1)),
+            Bridged::Guessed => drifted,
         };
         let difference = slopes.0 - slopes.1;
         let noise = before.slope_variance() + after.slope_variance();
@@ -57,7 +67,8 @@ impl Ledger {
         let whole = whole_q16(i64::from(before.anchor).saturating_sub(i64::from(after.anchor)));
         let rest = to_q16(before.level(slopes.0)).saturating_sub(to_q16(after.level(slopes.1)));
         self.carried_q16 = self.carried_q16.saturating_add(whole.saturating_add(rest));
-        self.interpolated_q16 = self.interpolated_q16.saturating_add(to_q16(half * (slopes.0 + slopes.1)));
+        self.interpolated_q16 = self.interpolated_q16.saturating_add(interpolated);
+        self.dead_drift_q16 = self.dead_drift_q16.saturating_add(drifted);
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
         let fits = before.readout_variance(half) + after.readout_variance(half);
         self.dead_time_var = (self.dead_time_var + fits + input).clamp(0.0, LEVEL_VARIANCE_MAX);

@@ -22,6 +22,7 @@ mod setup;
 mod switches;
 pub mod unit;
 mod window;
+mod zeroing;
 
 pub use channel::Channel;
 pub use error::SetupError;

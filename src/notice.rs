@@ -25,6 +25,17 @@ pub enum Event {
     ResetOpened,
     /// A reset was due by the headroom guard; stated once until the next reset.
     ResetDue,
+    /// A sample of a zero was too far off for noise, and was left out.
+    Spike,
+    /// Input began during a zero, at this tick at the latest found. The zero is not used from there on; what arrives is
+    /// kept in the run that follows.
+    InputInZero,
+    /// The zeros scatter by so many per cent of what the set-up's noise figures say, clearly not 100. Where it is more,
+    /// uncertainties are widened by as much. Stated at the end of a zero.
+    NoiseFigures {
+        /// Observed over expected standard deviation, per cent.
+        percent: u16,
+    },
     /// Something that takes the trust from a reading; stated once for each run, or for each zero.
     Fault(Reason),
 }
@@ -51,11 +62,15 @@ pub enum Reason {
     DriftOutsideLimits = 6,
     /// The counter stood still or ran backwards; the sample was not used.
     ClockStalled = 7,
+    /// A zero beside the run was no zero: input began, or the drift had changed. The zero was not used from there on.
+    InputInZero = 8,
+    /// The value at stop and the closed one differ by more than 5 of their uncertainties.
+    Inconsistent = 9,
 }
 
 impl Reason {
     /// All reasons, in the order of their bits.
-    pub const ALL: [Self; 8] = [
+    pub const ALL: [Self; 10] = [
         Self::AtRail,
         Self::Gap,
         Self::Jump,
@@ -64,6 +79,8 @@ impl Reason {
         Self::Frozen,
         Self::DriftOutsideLimits,
         Self::ClockStalled,
+        Self::InputInZero,
+        Self::Inconsistent,
     ];
 
     /// A stable name for logs: lower case, words joined by `_`.
@@ -77,19 +94,21 @@ impl Reason {
             Self::Frozen => "frozen",
             Self::DriftOutsideLimits => "drift_outside_limits",
             Self::ClockStalled => "clock_stalled",
+            Self::InputInZero => "input_in_zero",
+            Self::Inconsistent => "inconsistent",
         }
     }
 
     /// Whether the total is still a lower bound of a unipolar input's integral.
     const fn leaves_lower_bound(self) -> bool {
-        matches!(self, Self::AtRail | Self::Gap | Self::Jump | Self::DeadTime)
+        matches!(self, Self::AtRail | Self::Gap | Self::DeadTime | Self::InputInZero)
     }
 }
 
 /// A set of [`Reason`]s.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
-pub struct Reasons(u8);
+pub struct Reasons(u16);
 
 impl Reasons {
     /// The reasons in the set.
@@ -104,7 +123,7 @@ impl Reasons {
 
     /// Whether the set holds `reason`.
     pub const fn contains(self, reason: Reason) -> bool {
-        self.0 & (1 << reason as u8) != 0
+        self.0 & (1 << reason as u16) != 0
     }
 
     /// How far a reading with these reasons can be trusted.
@@ -121,7 +140,7 @@ impl Reasons {
     /// Adds a reason; `true` if it was not there before.
     pub(crate) fn insert(&mut self, reason: Reason) -> bool {
         let new = !self.contains(reason);
-        self.0 |= 1 << reason as u8;
+        self.0 |= 1 << reason as u16;
         new
     }
 }
@@ -154,7 +173,7 @@ impl Notices {
     }
 
     pub(crate) fn push(&mut self, tick: u32, event: Event) {
-        // One step has at most one mode change (3 notices) and 4 faults: the ninth cannot come.
+        // A mode change has at most 5 notices, a sample 3: the ninth cannot come.
         let _ = self.0.push(Notice { tick, event });
     }
 }

@@ -75,10 +75,12 @@ pub struct Reading<Q> {
     pub closed: Option<Estimate<Q>>,
     /// Part of the latest estimate that was measured.
     pub measured: Q,
-    /// Part of the latest estimate that was interpolated over dead time.
+    /// Part of the latest estimate that was interpolated over dead time, drift taken off.
     pub interpolated: Q,
     /// What the drift would have added to the value at stop, and was taken off.
     pub drift_removed: Q,
+    /// Samples of the zero after the run that were too far off and left out.
+    pub spikes: u16,
     /// Resets within the run.
     pub resets: u32,
     /// Counter value when the run started.
@@ -99,13 +101,15 @@ impl<Q: Integral> Reading<Q> {
     pub(crate) fn new(setup: &Setup<Q>, run: &Run, at_stop: &Total, closed: Option<&Total>) -> Self {
         let latest = closed.unwrap_or(at_stop);
         let integral = |q16: i64| Q::from_si_value(from_q16(q16) * setup.derived().integral_per_count);
+        let interpolated_q16 = run.ledger.interpolated_q16.saturating_sub(run.ledger.dead_drift_q16);
         let ticks = run.driven.saturating_add(run.held);
         Self {
             at_stop: Estimate::new(setup, at_stop),
             closed: closed.map(|total| Estimate::new(setup, total)),
-            measured: integral(latest.movement_q16.saturating_sub(run.ledger.interpolated_q16)),
-            interpolated: integral(run.ledger.interpolated_q16),
+            measured: integral(latest.movement_q16.saturating_sub(interpolated_q16)),
+            interpolated: integral(interpolated_q16),
             drift_removed: integral(run.drift_q16),
+            spikes: run.spikes,
             resets: run.resets,
             start_tick: run.start_tick,
             end_tick: run.end_tick,

@@ -6,6 +6,7 @@ use crate::math;
 use crate::notice::Reasons;
 use crate::setup::Derived;
 use crate::window::Opening;
+use crate::zeroing::{QUANTISATION_VAR, Shown, Stop};
 
 /// An interruption of a run that waits for the line after it.
 #[derive(Clone, Copy, Debug, Default)]
@@ -16,6 +17,11 @@ pub(crate) struct Crossing {
     pub(crate) dead: u64,
     /// Time with the input open, ticks.
     pub(crate) held: u64,
+    /// Whether there was a reset in it, and whether a hold came last.
+    pub(crate) reset: bool,
+    pub(crate) held_last: bool,
+    /// Whether a hold has opened the input: a reset from then on misses nothing.
+    pub(crate) input_open: bool,
 }
 
 /// Where a run stands.
@@ -29,8 +35,6 @@ pub(crate) enum Stage {
     Stopped {
         /// What was known then.
         at_stop: Total,
-        /// What the zero makes of it; `None` until its first sample.
-        bracket: Option<Bracket>,
         /// Whether the level went on into the zero without an interruption.
         unbroken: bool,
     },
@@ -69,10 +73,24 @@ pub(crate) struct Run {
     pub(crate) held: u64,
     /// What the drift has moved the baseline by, 2^-16 counts; known once stopped.
     pub(crate) drift_q16: i64,
+    /// Samples of the zero after it that were left out.
+    pub(crate) spikes: u16,
     /// How much warmer the board is than at the zero before, mK.
     pub(crate) warming: Option<i32>,
     start_q16: i64,
     start_var: f32,
+}
+
+impl Total {
+    fn variance(&self) -> f32 {
+        self.readout + self.input_noise + self.drift + self.dead_time
+    }
+
+    /// Whether two totals of a run differ by no more than 5 standard deviations of a difference between independent ones.
+    pub(crate) fn agrees_with(&self, other: &Self) -> bool {
+        let difference = self.movement_q16.saturating_sub(other.movement_q16) as f32 * (1.0 / 65536.0);
+        difference * difference <= 25.0 * (self.variance() + other.variance())
+    }
 }
 
 impl Run {
@@ -92,6 +110,7 @@ impl Run {
             driven: 0,
             held: 0,
             drift_q16: 0,
+            spikes: 0,
             warming: None,
             start_q16: 0,
             start_var: 0.0,
@@ -121,26 +140,36 @@ impl Run {
             baseline.restart(after.anchor, after.level(baseline.rate()), after.readout_variance(0.0));
             self.ledger.walk_var += after.walk_variance(0.0);
             self.begin_on(baseline);
-            return Bridged::Interpolated;
+            if after.slope.is_some() {
+                return Bridged::Interpolated;
+            }
+            // A single sample is baseline and end in one.
+            self.ledger.dead_time_var += derived.readout_var;
+            return Bridged::Guessed;
         };
-        self.ledger.bridge(&before, &after, 2.0 * half_s, derived.level_walk)
+        self.ledger.bridge(&before, &after, 2.0 * half_s, baseline.rate(), derived.level_walk)
     }
 
     /// The total up to the last integrating sample, with the baseline at that time.
-    pub(crate) fn total(&self, baseline: &Trend, derived: &Derived) -> Total {
-        let walk = derived.level_walk * math::seconds(self.driven, derived.tick_s);
+    ///
+    /// What rests on the zeros is widened by what they have shown of the noise.
+    pub(crate) fn total(&self, baseline: &Trend, shown: &Shown, derived: &Derived) -> Total {
+        let driven_s = math::seconds(self.driven, derived.tick_s);
+        let walk = derived.level_walk * driven_s;
         let weight = self.last_sample_weight(derived);
         let own = 1.0 - weight;
-        let counted_twice = derived.readout_var * weight * weight;
+        let counted_twice = shown.sample_var * weight * weight;
+        let start_var = (self.start_var * shown.widening).max(shown.rounding.0);
+        let drift = not_negative(baseline.level_variance() - self.start_var - walk) * shown.widening;
         let (of_start, of_dead_time) = match self.ledger.dead_time_var >= counted_twice {
             true => (0.0, counted_twice),
             false => (counted_twice, 0.0),
         };
         Total {
             movement_q16: movement_q16(self.last_counts, baseline).saturating_add(self.ledger.total_q16()),
-            readout: not_negative(derived.readout_var * own * own + self.start_var - of_start),
+            readout: (shown.sample_var * own * own + start_var - of_start).max(QUANTISATION_VAR),
             input_noise: not_negative(walk + self.ledger.walk_var),
-            drift: not_negative(baseline.level_variance() - self.start_var - walk),
+            drift: drift + shown.rounding.1 * driven_s * driven_s,
             dead_time: self.ledger.dead_time_var - of_dead_time,
         }
     }
@@ -150,22 +179,28 @@ impl Run {
         self.opening.map_or(0.0, |opening| opening.weight(self.end_tick, derived))
     }
 
-    /// What the last sample adds to the variance of a total that ends on it: `r (1 - 2 w)`.
-    pub(crate) fn last_sample_var(&self, derived: &Derived) -> f32 {
-        derived.readout_var * (1.0 - 2.0 * self.last_sample_weight(derived))
+    /// What the closing zero has to know of the stop.
+    pub(crate) fn stop(&self, shown: &Shown, derived: &Derived) -> Option<Stop> {
+        let Stage::Stopped { unbroken, .. } = self.stage else { return None };
+        // Shortly after a reset the last sample is part of the opening line as well: r (1 - 2 w) instead of r.
+        let last_var = shown.sample_var * (1.0 - 2.0 * self.last_sample_weight(derived));
+        Some(Stop { last_counts: self.last_counts, last_var, unbroken })
     }
 
     /// The total as the closing zero sees it; `zero` is the level and drift there.
-    pub(crate) fn closed_total(&self, bracket: &Bracket, zero: &Trend, derived: &Derived) -> Total {
-        let walk = derived.level_walk * math::seconds(self.driven, derived.tick_s);
-        let variance = not_negative(bracket.variance() + self.ledger.walk_var);
-        let input_noise = not_negative(walk + self.ledger.walk_var).min(variance);
-        let readout = (self.start_var + zero.level_variance()).min(variance - input_noise);
+    pub(crate) fn closed_total(&self, bracket: &Bracket, zero: &Trend, shown: &Shown, derived: &Derived) -> Total {
+        let driven_s = math::seconds(self.driven, derived.tick_s);
+        let walk = derived.level_walk * driven_s;
+        // Rounding without dither: of the level at both ends, and of the drift of the two zeros together.
+        let rounding = 2.0 * shown.rounding.0 + 0.5 * shown.rounding.1 * driven_s * driven_s;
+        let input_noise = not_negative(walk + self.ledger.walk_var);
+        let rest = not_negative(bracket.variance() + self.ledger.walk_var - input_noise) * shown.widening + rounding;
+        let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {
             movement_q16: bracket.movement_q16().saturating_add(self.ledger.total_q16()),
             readout,
             input_noise,
-            drift: variance - input_noise - readout,
+            drift: rest - readout,
             dead_time: self.ledger.dead_time_var,
         }
     }

@@ -31,17 +31,23 @@ impl Window {
     }
 
     /// The line just after the switch opened at `instant`.
-    pub(crate) fn after(&self, instant: u32, derived: &Derived) -> Option<Edge> {
+    pub(crate) fn after(&self, instant: u32, sample_var: f32, derived: &Derived) -> Option<Edge> {
         let samples = self.iter().map(|&(tick, counts)| (tick.wrapping_sub(instant), counts));
-        Edge::fit(Side::After, samples, derived.tick_s, noise(derived), |_| 0.0)
+        Edge::fit(Side::After, samples, derived.tick_s, noise(sample_var, derived), |_| 0.0)
     }
 
     /// The line just before the switch closed at `instant`. `opening`: the line at the other end of the segment, which
     /// may share samples with this one.
-    pub(crate) fn before(&self, instant: u32, opening: Option<&Opening>, derived: &Derived) -> Option<Edge> {
+    pub(crate) fn before(
+        &self,
+        instant: u32,
+        opening: Option<&Opening>,
+        sample_var: f32,
+        derived: &Derived,
+    ) -> Option<Edge> {
         let samples = self.iter().rev().map(|&(tick, counts)| (instant.wrapping_sub(tick), counts));
         let taken = |ticks| opening.map_or(0.0, |opening| opening.weight(instant.wrapping_sub(ticks), derived));
-        Edge::fit(Side::Before, samples, derived.tick_s, noise(derived), taken)
+        Edge::fit(Side::Before, samples, derived.tick_s, noise(sample_var, derived), taken)
     }
 
     /// Oldest first.
@@ -77,6 +83,6 @@ impl Opening {
     }
 }
 
-fn noise(derived: &Derived) -> EdgeNoise {
-    EdgeNoise { readout_var: derived.readout_var, level_walk: derived.level_walk, bend_var: derived.bend_var }
+fn noise(sample_var: f32, derived: &Derived) -> EdgeNoise {
+    EdgeNoise { readout_var: sample_var, level_walk: derived.level_walk, bend_var: derived.bend_var }
 }

@@ -100,7 +100,7 @@ fn record(mix: &Mix, board: &Board, seed: u64) -> Record {
 
 /// Value at stop, closed value, drift of the opening and of the closing zero.
 fn compare<Q: Plain>(mix: &Mix, board: &Board) -> [Apart; 4] {
-    let setup = board.setup::<Q>(Policy { gap_limit_s: 10.0, ..Policy::DEFAULT });
+    let setup = board.setup::<Q>(Policy { gap_limit_s: 10.0, zero_block_s: 0.0, ..Policy::DEFAULT });
     let mut apart = [Apart::default(); 4];
     for seed in 0..SEEDS {
         let record = record(mix, board, seed);
@@ -127,7 +127,7 @@ fn the_budget_at_stop_is_exact() {
     for mix in &MIXES {
         let mut board = Board::current(true, &mix.character);
         board.circuit.gain_u_rel = 1e-4;
-        let setup = board.setup::<Charge>(Policy { gap_limit_s: 10.0, ..Policy::DEFAULT });
+        let setup = board.setup::<Charge>(Policy { gap_limit_s: 10.0, zero_block_s: 0.0, ..Policy::DEFAULT });
         let record = record(mix, &board, 0);
         let reading = answer(&setup, &record).reading;
         let stop = optimum(&board, &record, Using::UntilStop);

@@ -23,7 +23,7 @@ fn long_record(walk: Walk) -> (f64, f64, Trend) {
         trend.advance(DT as f32, walk);
         let truth = f64::from(START) + DRIFT * DT * f64::from(k);
         let noise: f64 = StandardNormal.sample(&mut rng);
-        trend.update(round(truth + noise) as i32, READOUT);
+        trend.update(round(truth + noise) as i32, 0.0, READOUT);
         assert!(trend.level_variance() > 0.0 && trend.rate_variance() > 0.0);
         if k > UPDATES / 2 {
             let off = (f64::from(trend.rate()) - DRIFT, trend.anchor() as f64 + f64::from(trend.residual()) - truth);
@@ -74,7 +74,7 @@ fn extreme_input_leaves_numbers_finite_and_variances_positive() {
                     let mut trend = Trend::new(i32::MIN, level_variance, 0.0, rate_variance);
                     for counts in [i32::MAX, i32::MIN, 0, -1, i32::MAX, i32::MAX] {
                         trend.advance(step, Walk::over(step, level_walk, rate_walk));
-                        let i = trend.update(counts, variance);
+                        let i = trend.update(counts, 0.0, variance);
                         for number in
                             [i.residual, i.precision, i.level_gain, i.rate_gain, trend.residual(), trend.rate()]
                         {
@@ -96,12 +96,12 @@ fn extreme_input_leaves_numbers_finite_and_variances_positive() {
 fn level_follows_a_sample_from_one_end_of_the_counts_to_the_other() {
     for (from, to) in [(i32::MIN, i32::MAX), (i32::MAX, i32::MIN)] {
         let mut trend = Trend::new(from, 1e12, 0.0, 0.0);
-        let innovation = trend.update(to, 1.0);
+        let innovation = trend.update(to, 0.0, 1.0);
         assert_eq!(innovation.residual, (i64::from(to) - i64::from(from)) as f32);
         // `f32` resolves 2^32 counts to 256; the gain differs from 1 by 1e-12.
         let off = trend.anchor() as f64 + f64::from(trend.residual()) - f64::from(to);
         assert!(off.abs() <= 256.0, "{off} counts");
-        trend.update(to, 1.0);
+        trend.update(to, 0.0, 1.0);
         let off = trend.anchor() as f64 + f64::from(trend.residual()) - f64::from(to);
         assert!(off.abs() <= 128.0, "{off} counts");
     }

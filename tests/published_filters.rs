@@ -34,7 +34,7 @@ fn nile() -> Vec<(Record, Trend, Innovation, Trend)> {
         let predicted = trend;
         close("prediction", level(&predicted), before.number("predicted_next_level"), LEVEL);
         close_by_roundings("its variance", predicted.level_variance(), before.number("predicted_next_var"), 3.0);
-        let innovation = trend.update(year.number("volume") as i32, readout);
+        let innovation = trend.update(year.number("volume") as i32, 0.0, readout);
         before = Record::clone(&year);
         steps.push((year, predicted, innovation, trend));
     }
@@ -125,7 +125,7 @@ fn trend_filter_with_a_diffuse_start_is_the_exact_diffuse_filter() {
     // The largest variance that a trend keeps; the first difference has 1.2e13, which shows in the results as 1.2e-7.
     let mut trend = Trend::new(y1, readout as f32, 0.0, 1e20);
     trend.advance(1.0, walk);
-    trend.update(y2, readout as f32);
+    trend.update(y2, 0.0, readout as f32);
     trend.advance(1.0, walk);
     // Prediction after two samples in closed form (Koopman 1997).
     let (y1, y2) = (f64::from(y1), f64::from(y2));
@@ -137,7 +137,7 @@ fn trend_filter_with_a_diffuse_start_is_the_exact_diffuse_filter() {
     close_by_roundings("P3 slope", trend.rate_variance(), readout * (2.0 + qm + 2.0 * qb), 3.0);
 
     for (line, &counts) in lines.iter().zip(&counts).skip(2) {
-        trend.update(counts, readout as f32);
+        trend.update(counts, 0.0, readout as f32);
         let figure = |column: &str, power: i32| line.number(column) * if power == 2 { SCALE * SCALE } else { SCALE };
         close("level", level(&trend), figure("filtered_level", 1), FILTERED);
         close("slope", trend.rate(), figure("filtered_slope", 1), FILTERED);
@@ -158,7 +158,7 @@ fn regression(n: usize) -> Trend {
     let mut trend = Trend::new(0, 1.0, 0.0, DIFFUSE);
     for k in 1..n {
         trend.advance(1.0, Walk::default());
-        trend.update(ramp(k), 1.0);
+        trend.update(ramp(k), 0.0, 1.0);
     }
     trend
 }
@@ -214,7 +214,7 @@ fn trend_gains_are_those_of_the_expanding_memory_line() {
     let mut trend = Trend::new(0, 1.0, 0.0, DIFFUSE);
     for n in 2..=1000 {
         trend.advance(1.0, Walk::default());
-        let innovation = trend.update(ramp(n), 1.0);
+        let innovation = trend.update(ramp(n), 0.0, 1.0);
         let n = n as f64;
         close_by_roundings("a_n", innovation.level_gain, 2.0 * (2.0 * n - 1.0) / (n * (n + 1.0)), 2.0 + 2.0 * sqrt(n));
         close_by_roundings("b_n", innovation.rate_gain, 6.0 / (n * (n + 1.0)), 2.0 + 2.0 * sqrt(n));
@@ -230,7 +230,7 @@ fn trend_of_a_random_walk_is_the_difference_of_its_ends() {
         let mut trend = Trend::new(ramp(0), NO_READOUT, 0.0, DIFFUSE);
         for k in 1..n as usize {
             trend.advance(1.0, Walk { level: 1.0, ..Walk::default() });
-            trend.update(ramp(k), NO_READOUT);
+            trend.update(ramp(k), 0.0, NO_READOUT);
         }
         let ends = f64::from(ramp(n as usize - 1)) / (n - 1.0);
         close_by_roundings("var(slope)", trend.rate_variance(), blue, 2.0 + 2.0 * sqrt(n));
@@ -255,10 +255,10 @@ fn steady_gains_of_the_trend_are_alpha_and_beta() {
             rate: (to_rate * to_rate) as f32,
         };
         let mut trend = Trend::new(0, 1.0, 0.0, DIFFUSE);
-        let mut innovation = trend.update(0, 1.0);
+        let mut innovation = trend.update(0, 0.0, 1.0);
         for _ in 0..1000 {
             trend.advance(DT as f32, walk);
-            innovation = trend.update(0, 1.0);
+            innovation = trend.update(0, 0.0, 1.0);
         }
         close_by_roundings("alpha", innovation.level_gain, alpha, 4.0 + 2.0 / alpha);
         close_by_roundings("beta", f64::from(innovation.rate_gain) * DT, beta, 4.0 + 2.0 / alpha);
@@ -271,10 +271,10 @@ fn steady_gains_of_the_trend_are_alpha_and_beta() {
 fn steady_gain_of_the_level_is_that_of_exponential_smoothing() {
     for [ratio, gain] in Figures::of(include_str!("reference/estimation_limits.toml")).rows("local_level_gain") {
         let mut trend = Trend::new(0, 1.0, 0.0, 0.0);
-        let mut innovation = trend.update(0, 1.0);
+        let mut innovation = trend.update(0, 0.0, 1.0);
         for _ in 0..20_000 {
             trend.advance(1.0, Walk { level: ratio as f32, ..Walk::default() });
-            innovation = trend.update(0, 1.0);
+            innovation = trend.update(0, 0.0, 1.0);
         }
         close_by_roundings("gain", innovation.level_gain, gain, 2.0 + 1.0 / gain);
     }
@@ -303,7 +303,7 @@ fn advancing_by_a_then_b_is_advancing_by_their_sum() {
             let start = {
                 let mut trend = Trend::new(-40, 2.0, 3.0, 5.0);
                 trend.advance(0.5, Walk::over(0.5, 1.0, 1.0));
-                trend.update(-35, 2.0);
+                trend.update(-35, 0.0, 2.0);
                 trend
             };
             let mut twice = start;

@@ -121,7 +121,7 @@ fn run<'s, Q: Integral>(setup: &'s Setup<Q>, zeros: u32, moved: i32) -> Channel<
 
 /// An ideal converter's rounding has the standard deviation `LSB / sqrt(12)` (IEEE Std 1241 and general textbooks;
 /// verified): without other noise it is what the readout's share of a reading consists of, once for the sample at the end
-/// and once, averaged over `n` samples, for the zero.
+/// and once for the zero, however many samples that has: without noise to dither them their rounding does not average.
 #[test]
 fn readout_share_of_a_noiseless_converter_is_one_lsb_over_the_root_of_twelve() {
     let handbook = Figures::of(include_str!("reference/electronics_noise_and_drift.toml"));
@@ -132,7 +132,7 @@ fn readout_share_of_a_noiseless_converter_is_one_lsb_over_the_root_of_twelve() {
         let setup = noiseless::<Charge>(circuit, lsb);
         for zeros in [1, 2, 12] {
             let Some(reading) = run(&setup, zeros, 0).reading() else { panic!("no reading") };
-            let expected = sigma * circuit.capacitance_f * sqrt(1.0 + 1.0 / f64::from(zeros));
+            let expected = sigma * circuit.capacitance_f * sqrt(2.0);
             let at_stop = reading.at_stop;
             close_by_roundings("readout", at_stop.budget.readout.as_coulombs(), expected, 1.0);
             close_by_roundings("u", at_stop.integral.u.as_coulombs(), expected, 1.0);

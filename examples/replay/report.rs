@@ -107,7 +107,11 @@ fn write_exposure(out: &mut impl Write, run: &RunRecord) -> io::Result<()> {
     let in_joule = units::with_uncertainty(value, K * u, "J/m^2");
     // 1 mJ/cm^2 = 10 J/m^2.
     let in_millijoule = units::in_unit(value / 10.0, K * u / 10.0, "mJ/cm^2");
-    let note = if run.trust == Trust::Invalid { ", invalid as the run" } else { "" };
+    let note = match run.trust {
+        Trust::Good => "",
+        Trust::LowerBound => ", at least, as the run",
+        Trust::Invalid => ", invalid as the run",
+    };
     line(out, "radiant exposure", &format!("{in_joule} = {in_millijoule}{note}"))
 }
 

@@ -143,6 +143,8 @@ fn unsupported(key: &'static str, what: &str) -> Refusal {
 fn policy(p: &PolicyKeys) -> Policy {
     let d = Policy::DEFAULT;
     Policy {
+        zero_block_s: p.zero_block_s.unwrap_or(d.zero_block_s),
+        false_alarm_s: p.false_alarm_s.unwrap_or(d.false_alarm_s),
         edge_samples: p.edge_samples.unwrap_or(d.edge_samples),
         gap_limit_s: p.gap_limit_s.unwrap_or(d.gap_limit_s),
         frozen_samples: p.frozen_samples.unwrap_or(d.frozen_samples),

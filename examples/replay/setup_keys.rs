@@ -72,6 +72,8 @@ pub(crate) struct ScaleKeys {
 #[derive(Default, Deserialize)]
 #[serde(deny_unknown_fields)]
 pub(crate) struct PolicyKeys {
+    pub(crate) zero_block_s: Option<f64>,
+    pub(crate) false_alarm_s: Option<f64>,
     pub(crate) edge_samples: Option<u8>,
     pub(crate) gap_limit_s: Option<f64>,
     pub(crate) frozen_samples: Option<u16>,
@@ -116,6 +118,8 @@ const KEYS: &[(&str, &str, &str)] = &[
     ("scale", "area_m2", "the detector's aperture in square metre, above 0"),
     ("scale", "area_u_rel", "the aperture's relative standard uncertainty, 0 to 1"),
     ("scale", "gain_u_rel", "the gain's relative standard uncertainty, 0 to 1 (default 0)"),
+    ("policy", "zero_block_s", "how long zero samples are averaged, s, 0 to 60 (default 0.1)"),
+    ("policy", "false_alarm_s", "mean time between false alarms of the watch for input in a zero, s, 1 to 1e12"),
     ("policy", "edge_samples", "a whole number from 2 to 16 (default 16)"),
     ("policy", "gap_limit_s", "a time above 0 and below 2^31 / tick_hz, s (default 1)"),
     ("policy", "frozen_samples", "a whole number from 0 to 65535 (default 64)"),

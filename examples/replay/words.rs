@@ -62,12 +62,12 @@ pub(crate) fn reason(reason: Reason) -> (&'static str, &'static str) {
             "look for lost samples; raise gap_limit_s only if the level cannot have been reset in such a time",
         ),
         Reason::Jump => (
-            "the level moved faster than worst_input allows",
+            "the level moved faster than worst_input (without it: than a quarter of the range in a sample) allows",
             "look for a reset that no row shows, a disturbance, or a worst_input that is too small",
         ),
         Reason::DeadTime => (
-            "too few samples beside a reset to know the input during it",
-            "sample faster, or leave more time between resets",
+            "the input during a reset is a guess: too few samples beside it, or the switch was closed too long",
+            "sample faster, leave more time between resets, or close the switch for less than gap_limit_s",
         ),
         Reason::ResetNotArrived => (
             "after a reset the level was not at the reset level",
@@ -84,6 +84,14 @@ pub(crate) fn reason(reason: Reason) -> (&'static str, &'static str) {
         Reason::ClockStalled => {
             ("the counter stood still or ran backwards", "check the timer and the order in which samples are handed on")
         }
+        Reason::InputInZero => (
+            "the level moved during a zero as if there were input, or the drift changed",
+            "look for light or leakage during the zero; if the drift does wander, give offset_wander",
+        ),
+        Reason::Inconsistent => (
+            "the zero after the run contradicts what was known when it stopped",
+            "look for a reset or disturbance that no row shows, and check the noise figures",
+        ),
         _ => ("the library gives a reason that this program does not know", "update this program"),
     }
 }
@@ -96,6 +104,9 @@ pub(crate) fn event_name(event: Event) -> &'static str {
         Event::ResetClosed => "reset_closed",
         Event::ResetOpened => "reset_opened",
         Event::ResetDue => "reset_due",
+        Event::Spike => "spike",
+        Event::InputInZero => "input_in_zero",
+        Event::NoiseFigures { .. } => "noise_figures",
         Event::Fault(_) => "fault",
         _ => "other",
     }
@@ -109,6 +120,11 @@ pub(crate) fn event(event: Event) -> String {
         Event::ResetClosed => "reset switch closed".to_owned(),
         Event::ResetOpened => "reset switch opened".to_owned(),
         Event::ResetDue => "reset due: the level could reach a rail before the next sample".to_owned(),
+        Event::Spike => "a sample too far off for noise was left out".to_owned(),
+        Event::InputInZero => "input began during a zero".to_owned(),
+        Event::NoiseFigures { percent } => {
+            format!("the zeros scatter by {percent} % of what the set-up's noise figures say")
+        }
         Event::Fault(cause) => format!("FAULT {}: {}", cause.name(), reason(cause).0),
         _ => "something that this program does not know".to_owned(),
     }

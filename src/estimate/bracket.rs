@@ -21,11 +21,11 @@ pub(crate) struct Bracket {
 }
 
 impl Bracket {
-    /// The run stopped and the level went on without a break: the first zero sample, taken when the baseline is
-    /// `baseline`, shows where it was. `counts` has the variance `readout_var`.
-    pub(crate) fn on_level(counts: i32, readout_var: f32, baseline: &Trend) -> Self {
+    /// The run stopped and the level went on without a break: the first zero sample, `counts + rest`, taken when the
+    /// baseline is `baseline`, shows where it was. It has the variance `readout_var`.
+    pub(crate) fn on_level(counts: i32, rest: f32, readout_var: f32, baseline: &Trend) -> Self {
         Self {
-            start_q16: movement_q16(counts, baseline),
+            start_q16: movement_q16(counts, baseline).saturating_add(to_q16(rest)),
             correction: 0.0,
             variance: readout_var + baseline.level_variance(),
             with_level: readout_var,
@@ -36,7 +36,7 @@ impl Bracket {
     /// The run stopped before a reset or hold, so the zero's level says nothing about it: only the zero's drift does.
     /// `counts` is the last sample of the run, `baseline` the baseline then.
     pub(crate) fn on_rate(counts: i32, readout_var: f32, baseline: &Trend) -> Self {
-        Self { with_level: 0.0, ..Self::on_level(counts, readout_var, baseline) }
+        Self { with_level: 0.0, ..Self::on_level(counts, 0.0, readout_var, baseline) }
     }
 
     /// Time passes in `Zero`.

@@ -3,13 +3,21 @@
 //!
 //! Integers carry what is large (levels in counts), `f32` what is small (residuals, variances).
 
+mod block;
 mod bracket;
 mod edge;
 mod line;
+mod noise_fit;
+mod octave;
+mod onset;
 mod trend;
 
+pub(crate) use block::{Block, BlockMean};
 pub(crate) use bracket::{Bracket, movement_q16};
-pub(crate) use edge::{Edge, Side};
+pub(crate) use edge::{Edge, EdgeNoise, Side, Weights};
 pub use line::{Line, Point};
+pub use noise_fit::{Figure, NoiseFigures};
+pub use octave::{Octave, Octaves};
+pub(crate) use onset::{Cusum, cusum_threshold};
 pub(crate) use trend::LEVEL_VARIANCE_MAX;
 pub use trend::{Innovation, Trend, Walk};

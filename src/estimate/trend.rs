@@ -112,12 +112,19 @@ impl Trend {
         }
     }
 
+    /// Makes the rate at least as uncertain as `rate_variance` again, and keeps its estimate.
+    pub fn doubt_rate(&mut self, rate_variance: f32) {
+        self.rate_variance = self.rate_variance.max(rate_variance);
+    }
+
     /// Takes a sample of the level with `variance` (counts^2, above 0).
     ///
     /// A sample that is not far off becomes the new anchor, so that the residual stays as small as the noise: `f32` then
     /// loses nothing of a slow drift, however far the level has gone.
-    pub fn update(&mut self, counts: i32, variance: f32) -> Innovation {
-        let residual = i64::from(counts).saturating_sub(self.anchor) as f32 - self.level;
+    ///
+    /// The sample is `counts + rest`: a mean of several is not whole.
+    pub fn update(&mut self, counts: i32, rest: f32, variance: f32) -> Innovation {
+        let residual = i64::from(counts).saturating_sub(self.anchor) as f32 - self.level + rest;
         let shared = self.coupling * self.rate_variance;
         let from_rate = (self.coupling * shared).min(LEVEL_VARIANCE_MAX);
         let given_rate = self.level_given_rate + variance;
@@ -129,7 +136,7 @@ impl Trend {
 
         if math::abs(residual) < ANCHOR_REACH {
             self.anchor = i64::from(counts);
-            self.level = -residual * (variance * precision);
+            self.level = rest - residual * (variance * precision);
         } else {
             self.level += level_gain * residual;
             self.recentre();

@@ -30,7 +30,7 @@ pub struct Circuit {
     pub source_resistance_ohm: f64,
     /// Step of the output when the reset switch opens (charge injection), V: within +-1.
     pub pedestal_v: f64,
-    /// Standard uncertainty of the pedestal, V: 0 to 1.
+    /// Standard uncertainty of the pedestal, V: 0 to 1. Five times it is allowed when a reset is verified.
     pub pedestal_u_v: f64,
     /// On-resistance of the reset switch, ohm: 0 to 1e6.
     pub switch_resistance_ohm: f64,

@@ -2,6 +2,7 @@
 
 use super::{Circuit, Converter, Noise, Policy};
 use crate::error::{SetupError, check};
+use crate::estimate::cusum_threshold;
 
 /// The set-up in counts, seconds and ticks.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -34,8 +35,15 @@ pub(crate) struct Derived {
     pub(crate) worst_rate_q16: u64,
     /// Headroom that the advice keeps besides one sample period: latency and readout noise, counts.
     pub(crate) guard_counts: i32,
-    /// Largest step from sample to sample that readout noise explains, counts.
-    pub(crate) step_noise_counts: i32,
+    /// Largest step from sample to sample that readout noise explains, counts; without a worst-case input, a quarter of
+    /// the usable span.
+    pub(crate) step_counts: i32,
+    /// Whether the noise is enough to make rounding errors of different samples independent.
+    pub(crate) dithered: bool,
+    /// Length of a block of zero samples, ticks; 0: each sample by itself.
+    pub(crate) block_ticks: u32,
+    /// Where the cumulative sums of a zero's innovations alarm, standard deviations.
+    pub(crate) onset_threshold: f32,
     /// Equal readings in a row that are a fault; 0: not watched.
     pub(crate) frozen_samples: u16,
     /// Variance of half the level's second derivative, (counts/s^2)^2; `None`: unknown.
@@ -80,8 +88,12 @@ impl Derived {
             if low > converter.code_min { low } else { converter.code_min + 1 },
             if high < converter.code_max { high } else { converter.code_max - 1 },
         );
-        check!(usable.1 - usable.0 >= 8, "rail_high_v", "such that at least 8 codes lie between the rails");
-        let span = (usable.1 - usable.0) as f64;
+        check!(
+            usable.1 as i64 - usable.0 as i64 >= 8,
+            "rail_high_v",
+            "such that at least 8 codes lie between the rails"
+        );
+        let span = (usable.1 as i64 - usable.0 as i64) as f64;
         let tolerance = match policy.arrival_tolerance_v {
             Some(volts) => volts / converter.lsb_v,
             None => 0.01 * span,
@@ -92,6 +104,7 @@ impl Derived {
             "reset_level_v",
             "inside the converter's range and the rails (volt)"
         );
+        let opened_tolerance = tolerance + 5.0 * circuit.pedestal_u_v / converter.lsb_v;
         let opened_code = converter.code(circuit.reset_level_v + circuit.pedestal_v);
 
         let worst_rate = match policy.worst_input {
@@ -113,6 +126,10 @@ impl Derived {
             }
             None => None,
         };
+        let block_ticks = policy.zero_block_s * converter.tick_hz;
+        check!(block_ticks <= 2e9, "zero_block_s", "at most 2e9 ticks of the counter");
+        // Without blocks the sample period is not known: a millisecond is on the side of fewer false alarms.
+        let innovation_s = if policy.zero_block_s > 0.0 { policy.zero_block_s } else { 1e-3 };
         let sigma = noise.readout_counts + QUANTISATION_RMS;
         let settling_s = policy.settling_s + 10.0 * circuit.switch_resistance_ohm * circuit.capacitance_f;
         Ok(Self {
@@ -125,12 +142,15 @@ impl Derived {
             rate_prior_var: (rate_limit * rate_limit / 3.0) as f32,
             usable,
             reset_window: (floor(reset_code - tolerance), ceil(reset_code + tolerance)),
-            opened_window: (floor(opened_code - tolerance), ceil(opened_code + tolerance)),
+            opened_window: (floor(opened_code - opened_tolerance), ceil(opened_code + opened_tolerance)),
             settling_ticks: (settling_s * converter.tick_hz) as u32,
             gap_limit_ticks: (policy.gap_limit_s * converter.tick_hz) as u32,
             worst_rate_q16: per_tick_q16 as u64 + (worst_rate > 0.0) as u64,
             guard_counts: ceil(worst_rate * policy.latency_s + policy.guard_sigma * sigma),
-            step_noise_counts: ceil(8.0 * sigma),
+            step_counts: if worst_rate > 0.0 { ceil(8.0 * sigma) } else { ceil(0.25 * span + 8.0 * sigma) },
+            dithered: noise.readout_counts * noise.readout_counts + density * density / 2.0 * DITHER_S >= 0.25,
+            block_ticks: block_ticks as u32,
+            onset_threshold: cusum_threshold(policy.false_alarm_s / innovation_s),
             frozen_samples: if noise.readout_counts >= 0.5 { policy.frozen_samples } else { 0 },
             bend_var,
             edge_samples: policy.edge_samples,
@@ -143,6 +163,9 @@ impl Derived {
         ((self.worst_rate_q16 * u64::from(ticks)) >> 16).cast_signed() + i64::from(self.worst_rate_q16 > 0)
     }
 }
+
+/// A walk by half a count in this time dithers the readings as well as half a count of noise, s.
+const DITHER_S: f64 = 0.1;
 
 /// Rms error of rounding to whole counts, `1/sqrt(12)` (IEEE Std 1241).
 const QUANTISATION_RMS: f64 = 0.288_675_134_594_812_9;

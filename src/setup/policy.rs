@@ -9,16 +9,23 @@ pub(crate) const EDGE_SAMPLES_MAX: usize = 16;
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Policy {
+    /// Time over which samples of a zero are averaged before the filter sees them, s: 0 (not at all) to 60. Whole mains
+    /// periods keep hum out; 0.1 s holds whole periods of 50 and 60 Hz.
+    pub zero_block_s: f64,
+    /// Mean time between false alarms of the watch for input during a zero, s: 1 to 1e12.
+    pub false_alarm_s: f64,
     /// Samples in the straight-line fits before and after a reset: 2 to 16. Fewer follow a fast input better, more
     /// average better.
     pub edge_samples: u8,
-    /// Longest time between samples that leaves a run whole, s: above 0, and below half the counter's span.
+    /// Longest time between samples, and longest time with the reset switch closed, that leaves a run whole, s: above 0,
+    /// and below half the counter's span.
     pub gap_limit_s: f64,
     /// Equal readings in a row that mean a dead converter: 0 (never) to 65535. Only watched where `readout_counts` is
     /// at least 0.5: a quieter channel may rightly repeat itself.
     pub frozen_samples: u16,
     /// Largest magnitude of the input that the design allows, input units; `None`: unknown. With it the crate advises
-    /// resets and notices a level that jumped. A design constant, never an estimate.
+    /// resets and notices a level that jumped; without it only a jump by a quarter of the usable span is noticed. A design
+    /// constant, never an estimate.
     pub worst_input: Option<f64>,
     /// Fastest change of the input that the design expects, input units/s; `None`: unknown. It tells how far the input
     /// may bend beside a reset. Without it only a bend that stands out of the noise is seen, and one that just does not
@@ -36,9 +43,11 @@ pub struct Policy {
 }
 
 impl Policy {
-    /// Fits of 16 samples, gaps up to 1 s, 64 equal readings mean frozen, no worst-case input or slew known, 4 sigma of guard,
+    /// Blocks of 0.1 s, a false alarm in four months of zeros, fits of 16 samples, gaps and resets up to 1 s, 64 equal readings mean frozen, no worst-case input or slew known, 4 sigma of guard,
     /// 1 ms of settling.
     pub const DEFAULT: Self = Self {
+        zero_block_s: 0.1,
+        false_alarm_s: 1e7,
         edge_samples: 16,
         gap_limit_s: 1.0,
         frozen_samples: 64,
@@ -51,6 +60,8 @@ impl Policy {
     };
 
     pub(super) const fn validate(&self, tick_hz: f64) -> Result<(), SetupError> {
+        check!(self.zero_block_s >= 0.0 && self.zero_block_s <= 60.0, "zero_block_s", "0 to 60 (second)");
+        check!(self.false_alarm_s >= 1.0 && self.false_alarm_s <= 1e12, "false_alarm_s", "1 to 1e12 (second)");
         check!(self.edge_samples >= 2 && self.edge_samples as usize <= EDGE_SAMPLES_MAX, "edge_samples", "2 to 16");
         check!(
             self.gap_limit_s > 0.0 && self.gap_limit_s * tick_hz < 2_147_483_648.0,

@@ -1,0 +1,91 @@
+//! What goes wrong, whom it concerns, and what the channel asks for.
+
+use super::Channel;
+use crate::decide;
+use crate::health::Health;
+use crate::notice::{Event, Notices, Reason};
+use crate::quantity::Integral;
+use crate::run::{Run, Stage};
+use crate::sample::{Mode, Sample};
+
+impl<Q: Integral> Channel<'_, Q> {
+    /// Whether the level moved since the sample before by more than the input can move it. Within a zero the spread of the
+    /// samples tells more; through a reset or hold nothing is expected.
+    pub(super) fn has_jumped(&self, sample: Sample, ticks: u32) -> bool {
+        let watched = matches!(
+            (self.mode, sample.mode),
+            (Some(Mode::Zero | Mode::Integrate), Mode::Integrate) | (Some(Mode::Integrate), Mode::Zero)
+        );
+        watched && self.health.jumped(sample.counts, ticks, self.setup.derived())
+    }
+
+    /// A long silence: a run may have missed anything; a zero finds its level again, and is none the worse.
+    pub(super) fn gap(&mut self, was_running: bool, tick: u32, notices: &mut Notices) {
+        if was_running || self.is_running() {
+            self.mark_run(Reason::Gap, tick, notices);
+        } else {
+            self.lose_level();
+        }
+    }
+
+    /// The counter began anew: nobody knows how much time passed.
+    pub(super) fn lose_time(&mut self, tick: u32, notices: &mut Notices) {
+        self.window.clear();
+        if self.is_running() {
+            self.mark_run(Reason::Gap, tick, notices);
+        } else {
+            self.lose_level();
+        }
+    }
+
+    fn lose_level(&mut self) {
+        self.zeroing.forget_level();
+        if let Some(Run { stage: Stage::Stopped { unbroken, .. }, .. }) = self.run.as_mut() {
+            *unbroken = false;
+        }
+    }
+
+    /// Marks the run that goes on, or that the very sample at `tick` has stopped.
+    fn mark_run(&mut self, reason: Reason, tick: u32, notices: &mut Notices) {
+        if self.run.as_mut().is_some_and(|run| run.reasons.insert(reason)) {
+            notices.push(tick, Event::Fault(reason));
+        }
+    }
+
+    /// Books a fault with the run that it concerns and states it if it is new. What happens in a zero concerns the run
+    /// after it, and the run before it unless that was closed already without the samples in question.
+    pub(super) fn fault(&mut self, reason: Reason, tick: u32, notices: &mut Notices) {
+        let running = self.is_running();
+        let left_out = reason == Reason::AtRail && self.zeroing.bracket.is_some();
+        let in_zero = self.mode == Some(Mode::Zero) && !left_out;
+        let mut new = false;
+        if let Some(run) = self.run.as_mut().filter(|_| running || in_zero) {
+            new |= run.reasons.insert(reason);
+        }
+        if !running {
+            new |= self.zero_reasons.insert(reason);
+        }
+        if new {
+            notices.push(tick, Event::Fault(reason));
+        }
+    }
+
+    /// Readings that stand still. At an end code they rightly do, and that is a fault of its own.
+    pub(super) fn watch(&mut self, sample: Sample, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        if self.health.frozen(derived) && !Health::at_rail(sample.counts, derived) {
+            self.fault(Reason::Frozen, sample.tick, notices);
+        }
+    }
+
+    pub(super) fn advise(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) -> Option<Mode> {
+        if sample.mode == Mode::Reset || !decide::reset::due(sample.counts, ticks, self.setup.derived()) {
+            return None;
+        }
+        if !self.reset_advised {
+            self.reset_advised = true;
+            notices.push(sample.tick, Event::ResetDue);
+        }
+        Some(Mode::Reset)
+    }
+}

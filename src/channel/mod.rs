@@ -1,0 +1,167 @@
+//! The conductor: samples in, steps out, a reading when asked for. It knows no pin and no clock.
+
+mod faults;
+mod modes;
+mod switching;
+
+use crate::clock::{Clock, Elapsed};
+use crate::health::Health;
+use crate::math;
+use crate::notice::{Notices, Reason, Reasons};
+use crate::quantity::{Integral, Measured, Temperature, VoltageRate};
+use crate::reading::Reading;
+use crate::run::{Run, Stage};
+use crate::sample::{Mode, Sample, Step};
+use crate::setup::Setup;
+use crate::window::Window;
+use crate::zeroing::{Stop, Zeroing, advance};
+
+/// One integrator channel: the state beside a [`Setup`].
+///
+/// Feed every sample in the order it was taken, with the mode that the switches were in since the sample before; in
+/// each mode at least one, in `Integrate` a few. [`reading`](Self::reading) may be asked for at any time; a run's
+/// reading is final when the zero after it ends, so take it before the first sample of the next run.
+///
+/// Between two samples at most 2^31 - 1 ticks may pass. Totals saturate after 2^47 counts of movement.
+#[derive(Clone, Debug)]
+pub struct Channel<'s, Q> {
+    setup: &'s Setup<Q>,
+    clock: Clock,
+    mode: Option<Mode>,
+    zeroing: Zeroing,
+    window: Window,
+    run: Option<Run>,
+    health: Health,
+    /// Faults since the zero began, inherited by the run that it opens.
+    zero_reasons: Reasons,
+    /// Board temperature at the latest zero sample.
+    zero_temperature: Option<Temperature>,
+    reset_ticks: u64,
+    reset_failed: bool,
+    reset_advised: bool,
+}
+
+impl<'s, Q: Integral> Channel<'s, Q> {
+    /// A channel that has seen nothing: the drift is what the data sheet allows.
+    pub fn new(setup: &'s Setup<Q>) -> Self {
+        Self {
+            setup,
+            clock: Clock::default(),
+            mode: None,
+            zeroing: Zeroing::new(setup.derived()),
+            window: Window::default(),
+            run: None,
+            health: Health::default(),
+            zero_reasons: Reasons::default(),
+            zero_temperature: None,
+            reset_ticks: 0,
+            reset_failed: false,
+            reset_advised: false,
+        }
+    }
+
+    /// Takes one sample. Bounded work; in `Integrate` integers only, except for the lines beside a reset.
+    ///
+    /// A sample whose tick does not move forward is not used and makes the reading invalid; after a few of them that agree
+    /// with each other the counter is taken for restarted.
+    pub fn feed(&mut self, sample: Sample) -> Step {
+        let mut notices = Notices::default();
+        let before = self.clock.tick();
+        let (ticks, switched_tick) = match self.clock.advance(sample.tick) {
+            Elapsed::Start => (0, sample.tick),
+            Elapsed::Ticks(ticks) => (ticks, before),
+            Elapsed::Stalled => {
+                self.fault(Reason::ClockStalled, sample.tick, &mut notices);
+                return Step { request: self.advise(sample, 0, &mut notices), notices };
+            }
+            Elapsed::Restarted => {
+                self.lose_time(sample.tick, &mut notices);
+                (0, sample.tick)
+            }
+        };
+        let was_running = self.is_running();
+        let jumped = self.has_jumped(sample, ticks);
+        if self.mode != Some(sample.mode) {
+            self.switch(sample.mode, switched_tick, &mut notices);
+        }
+        if jumped {
+            self.fault(Reason::Jump, sample.tick, &mut notices);
+        }
+        if ticks > self.setup.derived().gap_limit_ticks {
+            self.gap(was_running, sample.tick, &mut notices);
+        }
+        match sample.mode {
+            Mode::Zero => self.zero(sample, ticks, &mut notices),
+            Mode::Integrate => self.integrate(sample, ticks, &mut notices),
+            Mode::Hold => self.hold(ticks),
+            Mode::Reset => self.reset(sample, ticks, &mut notices),
+        }
+        self.health.take(sample.counts);
+        if sample.mode != Mode::Reset {
+            self.watch(sample, &mut notices);
+        }
+        let request = self.advise(sample, ticks, &mut notices);
+        Step { request, notices }
+    }
+
+    /// The reading of the latest run; `None` before the first.
+    ///
+    /// While the run goes on, its value as if it stopped at the latest sample.
+    pub fn reading(&self) -> Option<Reading<Q>> {
+        let derived = self.setup.derived();
+        let mut run = self.run?;
+        let shown = self.zeroing.shown(derived);
+        let Stage::Stopped { at_stop, .. } = run.stage else {
+            let mut baseline = self.zeroing.trend;
+            self.settle(&mut run, &mut baseline);
+            advance(&mut baseline, self.zeroing.pending, derived);
+            run.drift_q16 = run.drifted_q16(&baseline);
+            return Some(Reading::new(self.setup, &run, &run.total(&baseline, &shown, derived), None));
+        };
+        let mut zeroing = self.zeroing;
+        zeroing.finish(self.clock.tick(), self.stop(), derived);
+        let closed = zeroing.bracket.map(|bracket| run.closed_total(&bracket, &zeroing.trend, &shown, derived));
+        if let Some(closed) = closed {
+            if self.drift_outside_limits() {
+                run.reasons.insert(Reason::DriftOutsideLimits);
+            }
+            if !closed.agrees_with(&at_stop) {
+                run.reasons.insert(Reason::Inconsistent);
+            }
+        }
+        Some(Reading::new(self.setup, &run, &at_stop, closed.as_ref()))
+    }
+
+    /// The drift of the output and its standard uncertainty, as of the latest zero.
+    pub fn drift(&self) -> Measured<VoltageRate> {
+        let lsb_v = self.setup.converter().lsb_v;
+        let trend = &self.zeroing.trend;
+        let shown = self.zeroing.shown(self.setup.derived());
+        let u = math::sqrt(trend.rate_variance() * shown.widening + shown.rounding.1);
+        Measured::new(
+            VoltageRate::from_volts_per_second(f64::from(trend.rate()) * lsb_v),
+            VoltageRate::from_volts_per_second(f64::from(u) * lsb_v),
+        )
+    }
+
+    /// The mode of the latest sample; `None` before the first.
+    pub fn mode(&self) -> Option<Mode> {
+        self.mode
+    }
+
+    /// How the run before the present zero stopped, while its bracket is still open.
+    fn stop(&self) -> Option<Stop> {
+        let derived = self.setup.derived();
+        let run = self.run.as_ref().filter(|_| self.zeroing.bracket.is_none())?;
+        run.stop(&self.zeroing.shown(derived), derived)
+    }
+
+    fn is_running(&self) -> bool {
+        self.run.as_ref().is_some_and(Run::is_running)
+    }
+
+    fn drift_outside_limits(&self) -> bool {
+        let trend = &self.zeroing.trend;
+        Health::drift_outside_limits(trend.rate(), trend.rate_variance(), self.setup.derived())
+    }
+}

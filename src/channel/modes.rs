@@ -1,0 +1,91 @@
+//! What a sample does in each mode.
+
+use super::Channel;
+use crate::health::Health;
+use crate::notice::{Event, Notices, Reason};
+use crate::quantity::Integral;
+use crate::run::Crossing;
+use crate::sample::Sample;
+use crate::zeroing::Taken;
+
+impl<Q: Integral> Channel<'_, Q> {
+    pub(super) fn zero(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        self.zero_temperature = sample.temperature.or(self.zero_temperature);
+        if Health::at_rail(sample.counts, derived) {
+            self.zeroing.skip(ticks);
+            self.fault(Reason::AtRail, sample.tick, notices);
+            return;
+        }
+        let stop = self.stop();
+        match self.zeroing.take(sample.tick, sample.counts, ticks, stop, derived) {
+            Taken::Used => {}
+            Taken::Spike => {
+                if let Some(run) = self.run.as_mut() {
+                    run.spikes = run.spikes.saturating_add(1);
+                }
+                notices.push(sample.tick, Event::Spike);
+            }
+            Taken::Onset { since, contradicts_run } => {
+                notices.push(since, Event::InputInZero);
+                if contradicts_run && let Some(run) = self.run.as_mut() {
+                    run.reasons.insert(Reason::InputInZero);
+                }
+                if self.zero_reasons.insert(Reason::InputInZero) {
+                    notices.push(sample.tick, Event::Fault(Reason::InputInZero));
+                }
+            }
+        }
+    }
+
+    pub(super) fn integrate(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        self.zeroing.pending = self.zeroing.pending.saturating_add(u64::from(ticks));
+        let filled = self.window.push(sample.tick, sample.counts, derived);
+        let Some(run) = self.run.as_mut() else { return };
+        run.driven = run.driven.saturating_add(u64::from(ticks));
+        run.end_tick = sample.tick;
+        run.last_counts = sample.counts;
+        if let (Some(now), Some(then)) = (sample.temperature, self.zero_temperature) {
+            run.warming = Some(now.since(then));
+        }
+        if Health::at_rail(sample.counts, derived) {
+            self.fault(Reason::AtRail, sample.tick, notices);
+        }
+        if filled {
+            self.settle_for_good(sample.tick, notices);
+        }
+    }
+
+    pub(super) fn hold(&mut self, ticks: u32) {
+        self.interrupted(ticks, |crossing, ticks| {
+            crossing.held = crossing.held.saturating_add(ticks);
+            crossing.held_last = true;
+            crossing.input_open = true;
+        });
+    }
+
+    pub(super) fn reset(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        self.interrupted(ticks, |crossing, ticks| {
+            let booked = if crossing.input_open { &mut crossing.held } else { &mut crossing.dead };
+            *booked = booked.saturating_add(ticks);
+            crossing.held_last = false;
+        });
+        self.reset_ticks = self.reset_ticks.saturating_add(u64::from(ticks));
+        let settled = self.reset_ticks > u64::from(derived.settling_ticks);
+        if settled && !self.reset_failed && Health::outside(i64::from(sample.counts), derived.reset_window) {
+            self.reset_failed = true;
+            self.fault(Reason::ResetNotArrived, sample.tick, notices);
+        }
+    }
+
+    /// Books time in an interruption; outside a run only the rate wanders.
+    fn interrupted(&mut self, ticks: u32, book: impl FnOnce(&mut Crossing, u64)) {
+        let ticks = u64::from(ticks);
+        match self.run.as_mut().filter(|run| run.is_running()).and_then(|run| run.crossing.as_mut()) {
+            Some(crossing) => book(crossing, ticks),
+            None => self.zeroing.resting = self.zeroing.resting.saturating_add(ticks),
+        }
+    }
+}

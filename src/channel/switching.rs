@@ -1,0 +1,158 @@
+//! What a change of mode does to the run and to the zero.
+
+use super::Channel;
+use crate::ledger::Bridged;
+use crate::math;
+use crate::notice::{Event, Notices, Reason, Reasons};
+use crate::quantity::Integral;
+use crate::run::{Crossing, Run, Stage};
+use crate::sample::Mode;
+use crate::zeroing::advance;
+
+impl<Q: Integral> Channel<'_, Q> {
+    /// The switches moved at `tick`, the instant of the sample before.
+    pub(super) fn switch(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
+        match self.mode {
+            Some(Mode::Integrate) => self.leave_integrate(to, tick, notices),
+            Some(Mode::Zero) => self.leave_zero(tick, notices),
+            _ => {}
+        }
+        match to {
+            Mode::Zero => self.enter_zero(notices),
+            Mode::Integrate => self.enter_integrate(tick, notices),
+            Mode::Reset => self.enter_reset(tick, notices),
+            Mode::Hold => {}
+        }
+        self.mode = Some(to);
+    }
+
+    /// The zero has told what it could.
+    fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        self.zeroing.finish(tick, self.stop(), derived);
+        self.zeroing.catch_up(derived);
+        if let Some(percent) = self.zeroing.noise_percent() {
+            notices.push(tick, Event::NoiseFigures { percent });
+        }
+        if self.drift_outside_limits() {
+            self.fault(Reason::DriftOutsideLimits, tick, notices);
+        }
+    }
+
+    /// Brings the baseline up to `tick`; if the run may go on, draws the line before the interruption.
+    fn leave_integrate(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        self.settle_for_good(tick, notices);
+        self.zeroing.catch_up(derived);
+        if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
+            let sample_var = self.zeroing.shown(derived).sample_var;
+            let before = self.window.before(tick, run.opening.as_ref(), sample_var, derived);
+            run.crossing = Some(Crossing { before, ..Crossing::default() });
+            run.stage = Stage::Interrupted;
+        }
+    }
+
+    /// Stops a running run. The level is to be found anew whenever another mode came between.
+    fn enter_zero(&mut self, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        let shown = self.zeroing.shown(derived);
+        self.zero_temperature = None;
+        self.zero_reasons = Reasons::default();
+        match self.run.as_mut() {
+            Some(run) if run.is_running() => {
+                run.drift_q16 = run.drifted_q16(&self.zeroing.trend);
+                let at_stop = run.total(&self.zeroing.trend, &shown, derived);
+                let unbroken = matches!(run.stage, Stage::Integrating);
+                run.stage = Stage::Stopped { at_stop, unbroken };
+                if let Some(crossing) = run.crossing.take() {
+                    self.zeroing.resting =
+                        self.zeroing.resting.saturating_add(crossing.dead).saturating_add(crossing.held);
+                }
+                self.zeroing.bracket = None;
+                notices.push(run.end_tick, Event::RunStopped);
+            }
+            // The level did not go on into this zero.
+            Some(Run { stage: Stage::Stopped { unbroken, .. }, .. }) => *unbroken = false,
+            _ => {}
+        }
+        self.zeroing.enter(derived);
+    }
+
+    /// Goes on with an interrupted run, or starts one.
+    fn enter_integrate(&mut self, tick: u32, notices: &mut Notices) {
+        let derived = self.setup.derived();
+        self.window.clear();
+        let Some(run) = self.run.as_mut().filter(|run| run.is_running()) else {
+            let mut run = Run::new(tick, &self.zeroing.trend, self.zero_reasons);
+            if self.mode != Some(Mode::Zero) || !self.zeroing.level_known() {
+                self.zeroing.forget_level();
+                self.zeroing.rest(derived);
+                run.crossing = Some(Crossing::default());
+            }
+            self.run = Some(run);
+            notices.push(tick, Event::RunStarted);
+            return;
+        };
+        let crossing = run.crossing.unwrap_or_default();
+        advance(&mut self.zeroing.trend, crossing.dead, derived);
+        self.zeroing.trend.rest(derived.rate_walk * math::seconds(crossing.held, derived.tick_s));
+        run.driven = run.driven.saturating_add(crossing.dead);
+        run.held = run.held.saturating_add(crossing.held);
+        run.stage = Stage::Integrating;
+        run.opening = None;
+        run.opened_tick = tick;
+        if crossing.reset {
+            run.resets = run.resets.saturating_add(1);
+            notices.push(tick, Event::ResetOpened);
+        }
+        if crossing.dead > u64::from(derived.gap_limit_ticks) && run.reasons.insert(Reason::DeadTime) {
+            notices.push(tick, Event::Fault(Reason::DeadTime));
+        }
+    }
+
+    fn enter_reset(&mut self, tick: u32, notices: &mut Notices) {
+        self.reset_ticks = 0;
+        self.reset_failed = false;
+        self.reset_advised = false;
+        let in_hold = self.mode == Some(Mode::Hold);
+        if let Some(run) = self.run.as_mut().filter(|run| run.is_running()) {
+            if let Some(crossing) = run.crossing.as_mut() {
+                crossing.reset = true;
+                crossing.input_open |= in_hold;
+            }
+            notices.push(tick, Event::ResetClosed);
+        }
+    }
+
+    /// Closes an open crossing of `run` with the samples at hand; `None` if there is none, or no sample yet. The second
+    /// value tells whether the reset had arrived.
+    pub(super) fn settle(&self, run: &mut Run, baseline: &mut crate::estimate::Trend) -> Option<(Bridged, bool)> {
+        let derived = self.setup.derived();
+        let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
+        let after = self.window.after(run.opened_tick, self.zeroing.shown(derived).sample_var, derived)?;
+        let opened_at = i64::from(after.anchor).saturating_add(math::nearest(after.level(baseline.rate())));
+        let judged = crossing.reset && !crossing.held_last;
+        let arrived = !judged || !crate::health::Health::outside(opened_at, derived.opened_window);
+        let bridged = run.settle(after, baseline, derived);
+        if bridged == Bridged::Guessed {
+            run.reasons.insert(Reason::DeadTime);
+        }
+        Some((bridged, arrived))
+    }
+
+    /// The same, for good: with notices of what is wrong with it.
+    pub(super) fn settle_for_good(&mut self, tick: u32, notices: &mut Notices) {
+        let Some(mut run) = self.run else { return };
+        let mut baseline = self.zeroing.trend;
+        let known = run.reasons;
+        let Some((bridged, arrived)) = self.settle(&mut run, &mut baseline) else { return };
+        if bridged == Bridged::Guessed && !known.contains(Reason::DeadTime) {
+            notices.push(tick, Event::Fault(Reason::DeadTime));
+        }
+        if !arrived && run.reasons.insert(Reason::ResetNotArrived) {
+            notices.push(tick, Event::Fault(Reason::ResetNotArrived));
+        }
+        self.zeroing.trend = baseline;
+        self.run = Some(run);
+    }
+}

@@ -1,0 +1,346 @@
+//! What the zeros tell: level and drift, how they bracket the run before, and whether the input really was zero.
+
+use crate::estimate::{Block, BlockMean, Bracket, Cusum, Trend, Walk};
+use crate::math;
+use crate::setup::Derived;
+
+/// How the run before stopped, for its bracket.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Stop {
+    /// Its last sample, and what that adds to the variance of a total that ends on it.
+    pub(crate) last_counts: i32,
+    pub(crate) last_var: f32,
+    /// Whether the level went on into the zero without an interruption.
+    pub(crate) unbroken: bool,
+}
+
+/// What came of a zero sample.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub(crate) enum Taken {
+    Used,
+    /// Too far off for noise, and left out.
+    Spike,
+    /// The input was not zero, from this tick on. What was learned since is forgotten, and the zero is over.
+    Onset {
+        /// When, at the latest found.
+        since: u32,
+        /// Whether that is as good as the beginning of the zero: then the drift may have changed before, in the run.
+        contradicts_run: bool,
+    },
+}
+
+/// Level, drift and bracket as they were before anything gathered in the sums that look for an onset.
+#[derive(Clone, Copy, Debug)]
+struct Checkpoint {
+    trend: Trend,
+    bracket: Option<Bracket>,
+    tick: u32,
+    /// Ticks from the trend's instant to the present trend's.
+    age: u64,
+    /// Innovations in the zero before it.
+    known: u16,
+}
+
+/// The filter of the zeros, which carries the baseline through the runs.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Zeroing {
+    /// In a zero the level and its drift; in a run the baseline and the drift.
+    pub(crate) trend: Trend,
+    /// How the run before is bracketed; `None` before the zero has found the level.
+    pub(crate) bracket: Option<Bracket>,
+    /// Ticks by which the latest sample is ahead of the trend.
+    pub(crate) pending: u64,
+    /// Ticks in which only the rate wandered.
+    pub(crate) resting: u64,
+    level_known: bool,
+    /// Whether the input was found not to be zero: the rest of the zero is not used.
+    disturbed: bool,
+    block: Block,
+    cusum: Cusum,
+    checkpoint: Option<Checkpoint>,
+    /// Samples in a row, of the sign of the number, too far off for noise; and when they began.
+    astray: i8,
+    astray_since: u32,
+    /// Variance of single samples as the blocks show it, and the degrees of freedom it rests on.
+    sample_var: f32,
+    freedom: f32,
+    /// Mean square of the innovations over what was expected, and the number of them that it rests on.
+    dispersion: f32,
+    innovations: f32,
+    /// Ticks and innovations since the zero found its level.
+    known_ticks: u64,
+    known_innovations: u16,
+}
+
+/// What the zeros have shown of the noise, as far as it goes into a run's variance.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Shown {
+    /// Variance of a single sample, counts^2.
+    pub(crate) sample_var: f32,
+    /// Factor on variances that rest on the zeros; at least 1.
+    pub(crate) widening: f32,
+    /// Added to the variance of a level and of the drift for rounding that no noise dithers, counts^2 and (counts/s)^2.
+    pub(crate) rounding: (f32, f32),
+}
+
+/// Samples in a row and of one sign that are no spike but an onset.
+const ONSET_SAMPLES: i8 = 3;
+/// How far a sample may lie off, standard deviations.
+const SPIKE_DEVIATIONS: f32 = 6.0;
+/// Degrees of freedom that the set-up's readout noise is worth against the blocks' scatter, and the most that these are
+/// given, so that a change is followed.
+const SETUP_FREEDOM: f32 = 16.0;
+const MOST_FREEDOM: f32 = 4096.0;
+/// An onset before so many innovations is as good as the beginning of the zero.
+const EARLY_INNOVATIONS: u16 = 16;
+/// Innovations that the set-up's figures are worth against the observed ones, and the most that these are given.
+const SETUP_INNOVATIONS: f32 = 16.0;
+const MOST_INNOVATIONS: f32 = 512.0;
+
+impl Zeroing {
+    pub(crate) fn new(derived: &Derived) -> Self {
+        Self {
+            trend: Trend::new(0, derived.readout_var, 0.0, derived.rate_prior_var),
+            bracket: None,
+            pending: 0,
+            resting: 0,
+            level_known: false,
+            disturbed: false,
+            block: Block::default(),
+            cusum: Cusum::default(),
+            checkpoint: None,
+            astray: 0,
+            astray_since: 0,
+            sample_var: derived.readout_var,
+            freedom: SETUP_FREEDOM,
+            dispersion: 1.0,
+            innovations: SETUP_INNOVATIONS,
+            known_ticks: 0,
+            known_innovations: 0,
+        }
+    }
+
+    /// A zero begins: the level is to be found. After a zero in which the input was not zero, or the drift not what was
+    /// thought, the drift is as uncertain again as the data sheet.
+    pub(crate) fn enter(&mut self, derived: &Derived) {
+        if self.disturbed {
+            self.trend.doubt_rate(derived.rate_prior_var);
+        }
+        self.disturbed = false;
+        self.forget_level();
+    }
+
+    /// Lets the level go, and with it what a bracket could learn from it.
+    pub(crate) fn forget_level(&mut self) {
+        self.level_known = false;
+        self.known_ticks = 0;
+        self.known_innovations = 0;
+        self.block = Block::default();
+        self.cusum = Cusum::default();
+        self.checkpoint = None;
+        self.astray = 0;
+        self.resting = self.resting.saturating_add(self.pending);
+        self.pending = 0;
+        if let Some(bracket) = self.bracket.as_mut() {
+            bracket.release_level();
+        }
+    }
+
+    /// Whether a run can start on this level.
+    pub(crate) fn level_known(&self) -> bool {
+        self.level_known
+    }
+
+    /// What the zeros have shown of the noise.
+    pub(crate) fn shown(&self, derived: &Derived) -> Shown {
+        let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
+        let known_s = math::seconds(self.known_ticks, derived.tick_s);
+        let rate = if known_s > 0.0 { 2.0 * level / (known_s * known_s) } else { 0.0 };
+        let widening = if self.noise_percent().is_some() { self.dispersion.max(1.0) } else { 1.0 };
+        Shown { sample_var: self.sample_var, widening, rounding: (level, rate) }
+    }
+
+    /// Scatter of the innovations in per cent of the expected, if it is clearly another: the mean square is 4 of its
+    /// standard deviations, `sqrt(2 / n)`, from 1.
+    pub(crate) fn noise_percent(&self) -> Option<u16> {
+        let off = self.dispersion - 1.0;
+        let enough = self.innovations >= 2.0 * SETUP_INNOVATIONS;
+        (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
+    }
+
+    /// Time in a zero without a usable sample.
+    pub(crate) fn skip(&mut self, ticks: u32) {
+        self.pending = self.pending.saturating_add(u64::from(ticks));
+        self.block.skip(ticks);
+    }
+
+    /// A sample in a zero, `ticks` after the one before.
+    pub(crate) fn take(&mut self, tick: u32, counts: i32, ticks: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
+        if self.disturbed {
+            self.skip(ticks);
+            return Taken::Used;
+        }
+        if let Some(taken) = self.judge(tick, counts, ticks, derived) {
+            self.skip(ticks);
+            if let Taken::Onset { .. } = taken {
+                self.roll_back();
+            }
+            return taken;
+        }
+        self.pending = self.pending.saturating_add(u64::from(ticks));
+        if self.block.push(counts, ticks, derived.block_ticks) {
+            return self.finish_block(tick, stop, derived);
+        }
+        Taken::Used
+    }
+
+    /// The zero ends or is asked about before its first block was full: what there is of it has to do.
+    pub(crate) fn finish(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
+        if !self.level_known && !self.disturbed {
+            self.finish_block(tick, stop, derived);
+        }
+    }
+
+    /// Brings the trend up to the latest sample: what is drift from here on belongs to a run.
+    pub(crate) fn catch_up(&mut self, derived: &Derived) {
+        let pending = core::mem::take(&mut self.pending);
+        advance(&mut self.trend, pending, derived);
+    }
+
+    /// Lets the rate wander for the time in which it could not be seen.
+    pub(crate) fn rest(&mut self, derived: &Derived) {
+        let resting = core::mem::take(&mut self.resting);
+        self.trend.rest(derived.rate_walk * math::seconds(resting, derived.tick_s));
+    }
+
+    /// Whether a sample is too far off to be noise; `None` if it is not, or while too little is known to tell.
+    fn judge(&mut self, tick: u32, counts: i32, ticks: u32, derived: &Derived) -> Option<Taken> {
+        if !self.level_known || (derived.block_ticks > 0 && self.freedom <= SETUP_FREEDOM) {
+            return None;
+        }
+        let ahead_s = math::seconds(self.pending.saturating_add(u64::from(ticks)), derived.tick_s);
+        let expected = self.trend.residual() + self.trend.rate() * ahead_s;
+        let off = i64::from(counts).saturating_sub(self.trend.anchor()) as f32 - expected;
+        let spread = ahead_s * (2.0 * self.trend.covariance() + ahead_s * self.trend.rate_variance());
+        let walked = derived.level_walk * ahead_s;
+        let variance = self.sample_var.max(derived.readout_var) + self.trend.level_variance() + spread + walked;
+        if off * off <= SPIKE_DEVIATIONS * SPIKE_DEVIATIONS * variance {
+            self.astray = 0;
+            return None;
+        }
+        let sign = if off > 0.0 { 1 } else { -1 };
+        if self.astray.signum() != sign {
+            self.astray = 0;
+            self.astray_since = tick;
+        }
+        self.astray = self.astray.saturating_add(sign);
+        Some(if self.astray.abs() >= ONSET_SAMPLES {
+            Taken::Onset { since: self.astray_since, contradicts_run: false }
+        } else {
+            Taken::Spike
+        })
+    }
+
+    fn finish_block(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
+        let Some(mean) = self.block.take() else { return Taken::Used };
+        self.learn_scatter(&mean, derived);
+        // Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
+        // what the walk does to a run longer than the block.
+        let variance = derived.readout_var / f32::from(mean.samples);
+        if !self.level_known {
+            self.find_level(&mean, variance, stop, derived);
+            return Taken::Used;
+        }
+        let elapsed = self.pending.saturating_sub(mean.age);
+        self.pending -= elapsed;
+        advance(&mut self.trend, elapsed, derived);
+        if let Some(bracket) = self.bracket.as_mut() {
+            bracket.advance(math::seconds(elapsed, derived.tick_s));
+        }
+        let innovation = self.trend.update(mean.counts, mean.rest, variance);
+        if let Some(bracket) = self.bracket.as_mut() {
+            bracket.update(&innovation);
+        }
+        if let Some(checkpoint) = self.checkpoint.as_mut() {
+            checkpoint.age = checkpoint.age.saturating_add(elapsed);
+        }
+        self.known_ticks = self.known_ticks.saturating_add(elapsed);
+        self.known_innovations = self.known_innovations.saturating_add(1);
+        let deviation = innovation.residual * math::sqrt(innovation.precision / self.dispersion.max(1.0));
+        self.learn_dispersion(deviation);
+        if self.cusum.take(deviation, derived.onset_threshold) {
+            let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
+            self.roll_back();
+            return Taken::Onset { since, contradicts_run: known < EARLY_INNOVATIONS };
+        }
+        if self.cusum.is_quiet() || self.checkpoint.is_none() {
+            let known = self.known_innovations;
+            self.checkpoint = Some(Checkpoint { trend: self.trend, bracket: self.bracket, tick, age: 0, known });
+        }
+        Taken::Used
+    }
+
+    /// The first block of a zero: the level starts from it, and a run that has just stopped is bracketed.
+    fn find_level(&mut self, mean: &BlockMean, variance: f32, stop: Option<Stop>, derived: &Derived) {
+        let elapsed = self.pending.saturating_sub(mean.age);
+        self.pending -= elapsed;
+        match stop {
+            // Level and baseline drift together from the stop on.
+            Some(stop) if stop.unbroken => {
+                advance(&mut self.trend, elapsed, derived);
+                self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, variance, &self.trend));
+            }
+            Some(stop) => {
+                self.bracket = Some(Bracket::on_rate(stop.last_counts, stop.last_var, &self.trend));
+                self.resting = self.resting.saturating_add(elapsed);
+            }
+            None => self.resting = self.resting.saturating_add(elapsed),
+        }
+        self.rest(derived);
+        self.trend.restart(mean.counts, mean.rest, variance);
+        self.level_known = true;
+    }
+
+    /// What is left of a block when a line and the walk are taken off is the noise of single samples, hum
+    /// included.
+    fn learn_scatter(&mut self, mean: &BlockMean, derived: &Derived) {
+        let n = f32::from(mean.samples);
+        if n < 4.0 {
+            return;
+        }
+        // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; h is the spacing.
+        let spacing_s = math::seconds(mean.span, derived.tick_s) / n;
+        let expected = derived.level_walk * spacing_s * (n * n - 4.0) * (1.0 / 15.0);
+        let freedom = self.freedom + (n - 2.0);
+        let sum = self.sample_var * self.freedom + (mean.scatter - expected);
+        self.sample_var = (sum / freedom).max(QUANTISATION_VAR);
+        self.freedom = freedom.min(MOST_FREEDOM);
+    }
+
+    /// Follows the mean square of the innovations; a large one counts as 3 standard deviations, so that an onset is not
+    /// taken for noise.
+    fn learn_dispersion(&mut self, deviation: f32) {
+        let square = (deviation * deviation).min(9.0) * self.dispersion.max(1.0);
+        self.dispersion += (square - self.dispersion) / (self.innovations + 1.0);
+        self.innovations = (self.innovations + 1.0).min(MOST_INNOVATIONS);
+    }
+
+    /// Forgets what was learned since the sums were last empty.
+    fn roll_back(&mut self) {
+        self.disturbed = true;
+        if let Some(checkpoint) = self.checkpoint.take() {
+            self.trend = checkpoint.trend;
+            self.bracket = checkpoint.bracket;
+            self.pending = self.pending.saturating_add(checkpoint.age);
+        }
+    }
+}
+
+/// Variance of rounding to whole counts (IEEE Std 1241).
+pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
+
+/// Lets `ticks` pass for a level that drifts.
+pub(crate) fn advance(trend: &mut Trend, ticks: u64, derived: &Derived) {
+    let dt_s = math::seconds(ticks, derived.tick_s);
+    trend.advance(dt_s, Walk::over(dt_s, derived.level_walk, derived.rate_walk));
+}
