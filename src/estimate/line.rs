@@ -2,6 +2,7 @@
 
 /// One point of a straight-line fit: the abscissa is exact, the ordinate has a weight.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Point {
     /// Abscissa.
     pub x: f32,
@@ -25,6 +26,7 @@ pub struct Point {
 /// assert!(line.variance_at(10.0) > line.variance_at(1.0));
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Line {
     /// Weighted mean of the abscissas.
     pub centre: f32,

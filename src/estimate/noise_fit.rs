@@ -21,6 +21,7 @@ const Z_95: f32 = 1.96;
 
 /// A noise figure with its uncertainty.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Figure {
     /// Best value, 0 or above.
     pub value: f32,
@@ -70,6 +71,7 @@ impl Figure {
 /// assert_eq!(noise.level_walk.low, 0.0, "no walk is claimed");
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct NoiseFigures {
     /// Variance `r` of the readout, white from sample to sample, counts^2.
     pub readout_var: Figure,

@@ -32,6 +32,7 @@ use crate::math;
 /// assert_eq!(zeros.octave(0), Some(shortest));
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Octaves<const N: usize> {
     chains: [Chain; N],
     /// Samples since the last break, wrapping: 2^32 is a multiple of every lag.
@@ -40,6 +41,7 @@ pub struct Octaves<const N: usize> {
 
 /// One octave's pending samples and sums.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 struct Chain {
     last: i64,
     before: i64,
@@ -109,6 +111,7 @@ impl Chain {
 
 /// The second differences found at one lag.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Octave {
     /// The lag `tau`, sample periods.
     pub lag: u32,

@@ -4,6 +4,7 @@ use crate::math;
 
 /// How far level and rate may have walked over a step: the process noise, as variances.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Walk {
     /// Variance added to the level, counts^2.
     pub level: f32,
@@ -26,6 +27,7 @@ impl Walk {
 
 /// What one sample told a [`Trend`]: how far it fell from the prediction and how it was weighed.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Innovation {
     /// Sample minus prediction, counts.
     pub residual: f32,
@@ -55,6 +57,7 @@ const RATE_VARIANCE_MAX: f32 = 1e20;
 /// matrix cannot lose positive definiteness. Method: Bierman 1977, Factorization Methods for Discrete Sequential
 /// Estimation (from memory), worked out by hand for two states.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Trend {
     anchor: i64,
     level: f32,

@@ -6,6 +6,7 @@ use crate::estimate::cusum_threshold;
 
 /// The set-up in counts, seconds and ticks.
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub(crate) struct Derived {
     /// Seconds per tick.
     pub(crate) tick_s: f32,

@@ -32,6 +32,7 @@ use crate::quantity::Integral;
 /// assert_eq!(LAMP_MONITOR.circuit().capacitance_f, 470e-9);
 /// ```
 #[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Setup<Q> {
     circuit: Circuit,
     converter: Converter,

@@ -67,10 +67,46 @@ impl Model {
 }
 
 pub(crate) fn optimum(board: &Board, record: &Record, using: Using) -> Optimum {
+    Plan::new(board, record, using).apply(record)
+}
+
+/// The estimate as the linear function of the samples that it is. Records with the same instants share it.
+#[derive(Clone, Debug)]
+pub(crate) struct Plan {
+    /// Indices of the samples used.
+    used: Vec<usize>,
+    first: usize,
+    /// What a sample's level above the first zero sample's adds to the integral, C or V s, and the drift, V/s, per count.
+    integral: DVector<f64>,
+    drift: DVector<f64>,
+    integral_u: f64,
+    drift_u: f64,
+    level_u: f64,
+}
+
+impl Plan {
+    pub(crate) fn apply(&self, record: &Record) -> Optimum {
+        let counts = |index: usize| record.samples.get(index).map_or(f64::NAN, |sample| f64::from(sample.counts));
+        let levels = DVector::from_iterator(self.used.len(), self.used.iter().map(|&i| counts(i) - counts(self.first)));
+        Optimum {
+            integral: Claim { value: self.integral.dot(&levels), u: self.integral_u },
+            drift: Claim { value: self.drift.dot(&levels), u: self.drift_u },
+            level_u: self.level_u,
+        }
+    }
+
+    pub(crate) fn new(board: &Board, record: &Record, using: Using) -> Self {
+        plan(board, record, using)
+    }
+}
+
+fn plan(board: &Board, record: &Record, using: Using) -> Plan {
     let model = Model::of(board);
     let tick_s = 1.0 / board.converter.tick_hz;
     let Some(power_up) = record.samples.first() else { panic!("an empty record") };
-    let Some(first) = record.samples.iter().find(|s| s.mode == Mode::Zero) else { panic!("no zero") };
+    let Some((first_index, first)) = record.samples.iter().enumerate().find(|(_, s)| s.mode == Mode::Zero) else {
+        panic!("no zero")
+    };
     let since = |sample: &Sample, origin: &Sample| f64::from(sample.tick.wrapping_sub(origin.tick)) * tick_s;
 
     let used = |index: usize, sample: &Sample| match sample.mode {
@@ -78,22 +114,21 @@ pub(crate) fn optimum(board: &Board, record: &Record, using: Using) -> Optimum {
         Mode::Integrate => index == record.run_end && using != Using::BothZeros,
         _ => false,
     };
-    // Time, level, and whether the run's input is in it.
-    let rows: Vec<(f64, f64, f64)> = record
+    // Index, time, and whether the run's input is in it.
+    let rows: Vec<(usize, f64, f64)> = record
         .samples
         .iter()
         .enumerate()
         .filter(|&(index, sample)| used(index, sample))
         .map(|(index, sample)| {
             let after_run = if index >= record.run_end { 1.0 } else { 0.0 };
-            (since(sample, first), f64::from(sample.counts - first.counts), after_run)
+            (index, since(sample, first), after_run)
         })
         .collect();
-    let times: Vec<f64> = rows.iter().map(|row| row.0).collect();
-    let levels = DVector::from_iterator(rows.len(), rows.iter().map(|row| row.1));
+    let times: Vec<f64> = rows.iter().map(|row| row.1).collect();
     // Unknowns: level and drift at the first zero sample, movement by the run's input.
     let design = DMatrix::from_fn(rows.len(), 3, |row, unknown| match (rows.get(row), unknown) {
-        (Some(row), 1) => row.0,
+        (Some(row), 1) => row.1,
         (Some(row), 2) => row.2,
         _ => 1.0,
     });
@@ -110,29 +145,34 @@ pub(crate) fn optimum(board: &Board, record: &Record, using: Using) -> Optimum {
     let mut information: Matrix3<f64> = (design.transpose() * &weighted).fixed_view::<3, 3>(0, 0).into_owned();
     information.m22 += 1.0 / prior_var;
     let Some(variance) = information.try_inverse() else { panic!("three unknowns are determined") };
-    let projected: Vector3<f64> = (weighted.transpose() * &levels).fixed_view::<3, 1>(0, 0).into_owned();
-    let unknowns = variance * projected;
+    // Rows: unknowns; columns: samples.
+    let unknowns = variance * weighted.transpose();
 
     let last_zero = if using == Using::UntilStop { record.opening_end } else { record.samples.len() - 1 };
     let Some(end) = record.samples.get(last_zero).map(|sample| since(sample, first)) else { panic!("no zero") };
-    let residuals = noise.solve(&(&levels - &design * unknowns));
     // Prediction of `share . unknowns` plus a wandering part of known variance and covariance with the samples' noise.
     let predict = |share: Vector3<f64>, own_var: f64, shared: DVector<f64>| {
+        let whitened = noise.solve(&shared);
         let seen: Vector3<f64> = (weighted.transpose() * &shared).fixed_view::<3, 1>(0, 0).into_owned();
         let lever = share - seen;
-        let var = own_var - shared.dot(&noise.solve(&shared)) + (lever.transpose() * variance * lever).x;
-        Claim { value: share.dot(&unknowns) + shared.dot(&residuals), u: var.sqrt() }
+        let var = own_var - shared.dot(&whitened) + (lever.transpose() * variance * lever).x;
+        (unknowns.transpose() * lever + whitened, var.sqrt())
     };
     let with_rate = DVector::from_fn(rows.len(), |row, _| model.level_rate_covariance(time(row), end));
-    let drift = predict(Vector3::y(), model.rate_walk * end, with_rate);
+    let (drift, drift_u) = predict(Vector3::y(), model.rate_walk * end, with_rate);
     let with_level = DVector::from_fn(rows.len(), |row, _| model.level_covariance(time(row), end));
     let after_run = if using == Using::UntilStop { 0.0 } else { 1.0 };
-    let level = predict(Vector3::new(1.0, end, after_run), model.level_covariance(end, end), with_level);
+    let (_, level_u) = predict(Vector3::new(1.0, end, after_run), model.level_covariance(end, end), with_level);
 
     let (per_count, lsb_v) = (board.input_per_count(), board.converter.lsb_v);
-    Optimum {
-        integral: Claim { value: unknowns.z * board.sign() * per_count, u: variance.m33.sqrt() * per_count },
-        drift: Claim { value: drift.value * lsb_v, u: drift.u * lsb_v },
-        level_u: level.u * per_count,
+    let integral = unknowns.row(2).transpose() * (board.sign() * per_count);
+    Plan {
+        used: rows.iter().map(|row| row.0).collect(),
+        first: first_index,
+        integral,
+        drift: drift * lsb_v,
+        integral_u: variance.m33.sqrt() * per_count,
+        drift_u: drift_u * lsb_v,
+        level_u: level_u * per_count,
     }
 }

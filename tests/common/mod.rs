@@ -9,7 +9,7 @@ pub(crate) mod plant;
 pub(crate) mod tally;
 pub(crate) mod textbook;
 
-use brimline::{Channel, Charge, Flux, Integral, Measured, Reading, Setup, VoltageRate};
+use brimline::{Channel, Charge, Flux, Integral, Measured, Notice, Reading, Setup, VoltageRate};
 use plant::Record;
 
 /// A reading's quantity as a bare number in its SI unit.
@@ -60,11 +60,17 @@ pub(crate) struct Answer<Q> {
 
 /// Feeds a whole record to a new channel.
 pub(crate) fn answer<Q: Plain>(setup: &Setup<Q>, record: &Record) -> Answer<Q> {
+    answer_with_notices(setup, record).0
+}
+
+/// The same, with all that the channel had to say; each notice with the index of the sample that brought it.
+pub(crate) fn answer_with_notices<Q: Plain>(setup: &Setup<Q>, record: &Record) -> (Answer<Q>, Vec<(usize, Notice)>) {
     let mut channel = Channel::new(setup);
+    let mut notices = Vec::new();
     let mut at_stop = None;
     let mut drift_opening = None;
     for (index, &sample) in record.samples.iter().enumerate() {
-        channel.feed(sample);
+        notices.extend(channel.feed(sample).notices.iter().map(|&notice| (index, notice)));
         if index == record.opening_end {
             drift_opening = Some(channel.drift());
         }
@@ -77,11 +83,12 @@ pub(crate) fn answer<Q: Plain>(setup: &Setup<Q>, record: &Record) -> Answer<Q> {
     };
     assert_eq!(reading.at_stop, at_stop, "the value at stop does not change when the zero begins");
     let Some(closed) = reading.closed else { panic!("the record holds a closing zero") };
-    Answer {
+    let answer = Answer {
         reading,
         at_stop: Claim::of(&at_stop.integral),
         closed: Claim::of(&closed.integral),
         drift_opening: Claim::of_drift(&drift_opening),
         drift_closing: Claim::of_drift(&channel.drift()),
-    }
+    };
+    (answer, notices)
 }

@@ -63,6 +63,25 @@ pub(crate) struct Resets {
     pub(crate) periods: u32,
 }
 
+/// What goes wrong around a measurement; by default nothing.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Trouble {
+    pub(crate) hum: Option<Hum>,
+    /// Input that gets in whatever the switches say, `Reset` excepted.
+    pub(crate) stray: Option<Input>,
+    /// An instant, s from power-up, at which the drift changes, and by how much, counts/s.
+    pub(crate) drift_change: Option<(f64, f64)>,
+}
+
+/// Mains hum on the readings.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Hum {
+    pub(crate) peak_v: f64,
+    pub(crate) hz: f64,
+    /// At power-up, rad.
+    pub(crate) phase: f64,
+}
+
 /// A finished trace with its truth.
 #[derive(Clone, Debug)]
 pub(crate) struct Record {
@@ -76,6 +95,8 @@ pub(crate) struct Record {
     pub(crate) drift_opening: f64,
     pub(crate) drift_closing: f64,
     pub(crate) resets: u32,
+    /// True integral of the stray input over the whole record, C or V s.
+    pub(crate) stray: f64,
 }
 
 /// Durations of a simple measurement, s.
@@ -104,6 +125,8 @@ pub(crate) struct Plant {
     samples: Vec<Sample>,
     integral: f64,
     resets: u32,
+    trouble: Trouble,
+    stray_integral: f64,
 }
 
 impl Plant {
@@ -132,7 +155,14 @@ impl Plant {
             samples: Vec::new(),
             integral: 0.0,
             resets: 0,
+            trouble: Trouble::default(),
+            stray_integral: 0.0,
         }
+    }
+
+    pub(crate) fn with(mut self, trouble: Trouble) -> Self {
+        self.trouble = trouble;
+        self
     }
 
     /// Power-up reset, opening zero, run, closing zero.
@@ -151,6 +181,7 @@ impl Plant {
             samples: self.samples,
             integral: self.integral,
             resets: self.resets,
+            stray: self.stray_integral,
         }
     }
 
@@ -223,17 +254,25 @@ impl Plant {
         self.offset += wandered;
         let signal = if mode == Mode::Integrate { self.input.integral(from_s, to_s) } else { 0.0 };
         self.integral += signal;
+        let stray = self.trouble.stray.filter(|_| mode != Mode::Reset).map_or(0.0, |stray| stray.integral(from_s, to_s));
+        self.stray_integral += stray;
         self.level_v = match mode {
             Mode::Reset => circuit.reset_level_v,
-            _ => self.level_v + self.gain * (signal + noise + mean_offset * dt),
+            _ => self.level_v + self.gain * (signal + stray + noise + mean_offset * dt),
         };
+        if let Some((_, counts_per_s)) = self.trouble.drift_change.filter(|&(at_s, _)| from_s < at_s && at_s <= to_s) {
+            self.offset += counts_per_s * self.board.converter.lsb_v / self.gain;
+        }
         self.mode = mode;
         self.ticks = ticks;
     }
 
     fn take(&mut self, mode: Mode) {
         let converter = self.board.converter;
-        let exact = (self.level_v - converter.code_zero_v) / converter.lsb_v;
+        let hum_v = self.trouble.hum.map_or(0.0, |hum| {
+            hum.peak_v * (core::f64::consts::TAU * hum.hz * self.seconds(self.ticks) + hum.phase).sin()
+        });
+        let exact = (self.level_v + hum_v - converter.code_zero_v) / converter.lsb_v;
         let noisy = exact + self.board.noise.readout_counts * self.normal();
         let counts = (noisy.round() as i32).clamp(converter.code_min, converter.code_max);
         let tick = self.first_tick.wrapping_add(self.ticks as u32);

@@ -10,6 +10,7 @@ pub(crate) struct Tally {
     z_sum: f64,
     z_squares: f64,
     u_sum: f64,
+    error_squares: f64,
 }
 
 impl Tally {
@@ -22,6 +23,19 @@ impl Tally {
         self.z_sum += z;
         self.z_squares += z * z;
         self.u_sum += claim.u;
+        self.error_squares += (claim.value - truth).powi(2);
+    }
+
+    pub(crate) fn trials(&self) -> u32 {
+        self.trials
+    }
+
+    pub(crate) fn mean_u(&self) -> f64 {
+        self.u_sum / f64::from(self.trials)
+    }
+
+    pub(crate) fn rms_error(&self) -> f64 {
+        (self.error_squares / f64::from(self.trials)).sqrt()
     }
 
     /// Share of the intervals `value +- u` that hold the truth, %; 68.27 for an honest `u`.

@@ -1,5 +1,12 @@
 //! What the zeros tell: level and drift, how they bracket the run before, and whether the input really was zero.
 
+mod gate;
+mod noise;
+
+use gate::{Gate, Verdict};
+use noise::NoiseSeen;
+pub(crate) use noise::QUANTISATION_VAR;
+
 use crate::estimate::{Block, BlockMean, Bracket, Cusum, Trend, Walk};
 use crate::math;
 use crate::setup::Derived;
@@ -58,15 +65,8 @@ pub(crate) struct Zeroing {
     block: Block,
     cusum: Cusum,
     checkpoint: Option<Checkpoint>,
-    /// Samples in a row, of the sign of the number, too far off for noise; and when they began.
-    astray: i8,
-    astray_since: u32,
-    /// Variance of single samples as the blocks show it, and the degrees of freedom it rests on.
-    sample_var: f32,
-    freedom: f32,
-    /// Mean square of the innovations over what was expected, and the number of them that it rests on.
-    dispersion: f32,
-    innovations: f32,
+    gate: Gate,
+    noise: NoiseSeen,
     /// Ticks and innovations since the zero found its level.
     known_ticks: u64,
     known_innovations: u16,
@@ -83,19 +83,8 @@ pub(crate) struct Shown {
     pub(crate) rounding: (f32, f32),
 }
 
-/// Samples in a row and of one sign that are no spike but an onset.
-const ONSET_SAMPLES: i8 = 3;
-/// How far a sample may lie off, standard deviations.
-const SPIKE_DEVIATIONS: f32 = 6.0;
-/// Degrees of freedom that the set-up's readout noise is worth against the blocks' scatter, and the most that these are
-/// given, so that a change is followed.
-const SETUP_FREEDOM: f32 = 16.0;
-const MOST_FREEDOM: f32 = 4096.0;
 /// An onset before so many innovations is as good as the beginning of the zero.
 const EARLY_INNOVATIONS: u16 = 16;
-/// Innovations that the set-up's figures are worth against the observed ones, and the most that these are given.
-const SETUP_INNOVATIONS: f32 = 16.0;
-const MOST_INNOVATIONS: f32 = 512.0;
 
 impl Zeroing {
     pub(crate) fn new(derived: &Derived) -> Self {
@@ -109,12 +98,8 @@ impl Zeroing {
             block: Block::default(),
             cusum: Cusum::default(),
             checkpoint: None,
-            astray: 0,
-            astray_since: 0,
-            sample_var: derived.readout_var,
-            freedom: SETUP_FREEDOM,
-            dispersion: 1.0,
-            innovations: SETUP_INNOVATIONS,
+            gate: Gate::default(),
+            noise: NoiseSeen::new(derived),
             known_ticks: 0,
             known_innovations: 0,
         }
@@ -138,7 +123,7 @@ impl Zeroing {
         self.block = Block::default();
         self.cusum = Cusum::default();
         self.checkpoint = None;
-        self.astray = 0;
+        self.gate = Gate::default();
         self.resting = self.resting.saturating_add(self.pending);
         self.pending = 0;
         if let Some(bracket) = self.bracket.as_mut() {
@@ -156,16 +141,12 @@ impl Zeroing {
         let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
         let known_s = math::seconds(self.known_ticks, derived.tick_s);
         let rate = if known_s > 0.0 { 2.0 * level / (known_s * known_s) } else { 0.0 };
-        let widening = if self.noise_percent().is_some() { self.dispersion.max(1.0) } else { 1.0 };
-        Shown { sample_var: self.sample_var, widening, rounding: (level, rate) }
+        Shown { sample_var: self.noise.sample_var(), widening: self.noise.widening(), rounding: (level, rate) }
     }
 
-    /// Scatter of the innovations in per cent of the expected, if it is clearly another: the mean square is 4 of its
-    /// standard deviations, `sqrt(2 / n)`, from 1.
+    /// Scatter of the innovations in per cent of the expected, if it is clearly another.
     pub(crate) fn noise_percent(&self) -> Option<u16> {
-        let off = self.dispersion - 1.0;
-        let enough = self.innovations >= 2.0 * SETUP_INNOVATIONS;
-        (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
+        self.noise.percent()
     }
 
     /// Time in a zero without a usable sample.
@@ -180,12 +161,17 @@ impl Zeroing {
             self.skip(ticks);
             return Taken::Used;
         }
-        if let Some(taken) = self.judge(tick, counts, ticks, derived) {
-            self.skip(ticks);
-            if let Taken::Onset { .. } = taken {
-                self.roll_back();
+        match self.judge(tick, counts, ticks, derived) {
+            Verdict::Noise => {}
+            Verdict::Spike => {
+                self.skip(ticks);
+                return Taken::Spike;
             }
-            return taken;
+            Verdict::Onset(since) => {
+                self.skip(ticks);
+                self.roll_back();
+                return Taken::Onset { since, contradicts_run: false };
+            }
         }
         self.pending = self.pending.saturating_add(u64::from(ticks));
         if self.block.push(counts, ticks, derived.block_ticks) {
@@ -213,37 +199,23 @@ impl Zeroing {
         self.trend.rest(derived.rate_walk * math::seconds(resting, derived.tick_s));
     }
 
-    /// Whether a sample is too far off to be noise; `None` if it is not, or while too little is known to tell.
-    fn judge(&mut self, tick: u32, counts: i32, ticks: u32, derived: &Derived) -> Option<Taken> {
-        if !self.level_known || (derived.block_ticks > 0 && self.freedom <= SETUP_FREEDOM) {
-            return None;
+    /// Whether a sample is too far off to be noise; while too little is known to tell, none is.
+    fn judge(&mut self, tick: u32, counts: i32, ticks: u32, derived: &Derived) -> Verdict {
+        if !self.level_known || (derived.block_ticks > 0 && !self.noise.has_scatter()) {
+            return Verdict::Noise;
         }
         let ahead_s = math::seconds(self.pending.saturating_add(u64::from(ticks)), derived.tick_s);
         let expected = self.trend.residual() + self.trend.rate() * ahead_s;
         let off = i64::from(counts).saturating_sub(self.trend.anchor()) as f32 - expected;
         let spread = ahead_s * (2.0 * self.trend.covariance() + ahead_s * self.trend.rate_variance());
         let walked = derived.level_walk * ahead_s;
-        let variance = self.sample_var.max(derived.readout_var) + self.trend.level_variance() + spread + walked;
-        if off * off <= SPIKE_DEVIATIONS * SPIKE_DEVIATIONS * variance {
-            self.astray = 0;
-            return None;
-        }
-        let sign = if off > 0.0 { 1 } else { -1 };
-        if self.astray.signum() != sign {
-            self.astray = 0;
-            self.astray_since = tick;
-        }
-        self.astray = self.astray.saturating_add(sign);
-        Some(if self.astray.abs() >= ONSET_SAMPLES {
-            Taken::Onset { since: self.astray_since, contradicts_run: false }
-        } else {
-            Taken::Spike
-        })
+        let sample_var = self.noise.sample_var().max(derived.readout_var);
+        self.gate.judge(tick, off, sample_var + self.trend.level_variance() + spread + walked)
     }
 
     fn finish_block(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
         let Some(mean) = self.block.take() else { return Taken::Used };
-        self.learn_scatter(&mean, derived);
+        self.noise.take_block(&mean, derived);
         // Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
         // what the walk does to a run longer than the block.
         let variance = derived.readout_var / f32::from(mean.samples);
@@ -266,8 +238,8 @@ impl Zeroing {
         }
         self.known_ticks = self.known_ticks.saturating_add(elapsed);
         self.known_innovations = self.known_innovations.saturating_add(1);
-        let deviation = innovation.residual * math::sqrt(innovation.precision / self.dispersion.max(1.0));
-        self.learn_dispersion(deviation);
+        let deviation = innovation.residual * math::sqrt(innovation.precision / self.noise.dispersion());
+        self.noise.take_innovation(deviation);
         if self.cusum.take(deviation, derived.onset_threshold) {
             let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
             self.roll_back();
@@ -301,30 +273,6 @@ impl Zeroing {
         self.level_known = true;
     }
 
-    /// What is left of a block when a line and the walk are taken off is the noise of single samples, hum
-    /// included.
-    fn learn_scatter(&mut self, mean: &BlockMean, derived: &Derived) {
-        let n = f32::from(mean.samples);
-        if n < 4.0 {
-            return;
-        }
-        // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; h is the spacing.
-        let spacing_s = math::seconds(mean.span, derived.tick_s) / n;
-        let expected = derived.level_walk * spacing_s * (n * n - 4.0) * (1.0 / 15.0);
-        let freedom = self.freedom + (n - 2.0);
-        let sum = self.sample_var * self.freedom + (mean.scatter - expected);
-        self.sample_var = (sum / freedom).max(QUANTISATION_VAR);
-        self.freedom = freedom.min(MOST_FREEDOM);
-    }
-
-    /// Follows the mean square of the innovations; a large one counts as 3 standard deviations, so that an onset is not
-    /// taken for noise.
-    fn learn_dispersion(&mut self, deviation: f32) {
-        let square = (deviation * deviation).min(9.0) * self.dispersion.max(1.0);
-        self.dispersion += (square - self.dispersion) / (self.innovations + 1.0);
-        self.innovations = (self.innovations + 1.0).min(MOST_INNOVATIONS);
-    }
-
     /// Forgets what was learned since the sums were last empty.
     fn roll_back(&mut self) {
         self.disturbed = true;
@@ -335,9 +283,6 @@ impl Zeroing {
         }
     }
 }
-
-/// Variance of rounding to whole counts (IEEE Std 1241).
-pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
 
 /// Lets `ticks` pass for a level that drifts.
 pub(crate) fn advance(trend: &mut Trend, ticks: u64, derived: &Derived) {

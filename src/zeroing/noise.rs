@@ -1,0 +1,89 @@
+//! What the zeros show of the noise, beside what the set-up says.
+
+use crate::estimate::BlockMean;
+use crate::math;
+use crate::setup::Derived;
+
+/// Variance of rounding to whole counts (IEEE Std 1241).
+pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
+
+/// Degrees of freedom that the set-up's readout noise is worth against the blocks' scatter, and the most that these are
+/// given, so that a change is followed.
+const SETUP_FREEDOM: f32 = 16.0;
+const MOST_FREEDOM: f32 = 4096.0;
+/// Innovations that the set-up's figures are worth against the observed ones, and the most that these are given.
+const SETUP_INNOVATIONS: f32 = 16.0;
+const MOST_INNOVATIONS: f32 = 512.0;
+
+/// The noise as observed.
+#[derive(Clone, Copy, Debug)]
+pub(super) struct NoiseSeen {
+    /// Variance of single samples as the blocks show it, and the degrees of freedom it rests on.
+    sample_var: f32,
+    freedom: f32,
+    /// Mean square of the innovations over what was expected, and the number of them that it rests on.
+    dispersion: f32,
+    innovations: f32,
+}
+
+impl NoiseSeen {
+    pub(super) fn new(derived: &Derived) -> Self {
+        Self {
+            sample_var: derived.readout_var,
+            freedom: SETUP_FREEDOM,
+            dispersion: 1.0,
+            innovations: SETUP_INNOVATIONS,
+        }
+    }
+
+    /// Variance of a single sample, hum included, counts^2.
+    pub(super) fn sample_var(&self) -> f32 {
+        self.sample_var
+    }
+
+    /// Whether a block has shown how single samples scatter.
+    pub(super) fn has_scatter(&self) -> bool {
+        self.freedom > SETUP_FREEDOM
+    }
+
+    /// Mean square of the innovations over the expected one, where it is more.
+    pub(super) fn dispersion(&self) -> f32 {
+        self.dispersion.max(1.0)
+    }
+
+    /// Factor on variances that rest on the zeros: the dispersion, if it is clearly not 1.
+    pub(super) fn widening(&self) -> f32 {
+        if self.percent().is_some() { self.dispersion() } else { 1.0 }
+    }
+
+    /// Scatter of the innovations in per cent of the expected, if it is clearly another: the mean square is 4 of its
+    /// standard deviations, `sqrt(2 / n)`, from 1.
+    pub(super) fn percent(&self) -> Option<u16> {
+        let off = self.dispersion - 1.0;
+        let enough = self.innovations >= 2.0 * SETUP_INNOVATIONS;
+        (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
+    }
+
+    /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
+    pub(super) fn take_block(&mut self, mean: &BlockMean, derived: &Derived) {
+        let n = f32::from(mean.samples);
+        if n < 4.0 {
+            return;
+        }
+        // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; h is the spacing.
+        let spacing_s = math::seconds(mean.span, derived.tick_s) / n;
+        let expected = derived.level_walk * spacing_s * (n * n - 4.0) * (1.0 / 15.0);
+        let freedom = self.freedom + (n - 2.0);
+        let sum = self.sample_var * self.freedom + (mean.scatter - expected);
+        self.sample_var = (sum / freedom).max(QUANTISATION_VAR);
+        self.freedom = freedom.min(MOST_FREEDOM);
+    }
+
+    /// Takes an innovation in standard deviations, the dispersion included; a large one counts as 3, so that an onset is not
+    /// taken for noise.
+    pub(super) fn take_innovation(&mut self, deviation: f32) {
+        let square = (deviation * deviation).min(9.0) * self.dispersion();
+        self.dispersion += (square - self.dispersion) / (self.innovations + 1.0);
+        self.innovations = (self.innovations + 1.0).min(MOST_INNOVATIONS);
+    }
+}
