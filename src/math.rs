@@ -10,6 +10,11 @@ pub(crate) fn sqrt_f64(x: f64) -> f64 {
     libm::sqrt(x)
 }
 
+/// Natural logarithm of a number above 0.
+pub(crate) fn ln(x: f32) -> f32 {
+    libm::logf(x)
+}
+
 /// Magnitude.
 pub(crate) fn abs(x: f32) -> f32 {
     libm::fabsf(x)

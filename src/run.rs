@@ -1,6 +1,6 @@
 //! One run: from leaving zero to the end of the next zero, through resets and holds.
 
-use crate::estimate::{Bracket, Edge, Trend, movement_q16};
+use crate::estimate::{Bracket, Edge, Trend, Walk, movement_q16};
 use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
@@ -71,6 +71,8 @@ pub(crate) struct Run {
     pub(crate) driven: u64,
     /// Ticks in holds.
     pub(crate) held: u64,
+    /// How long the zero before it had known its level, ticks.
+    pub(crate) zeroed: u64,
     /// What the drift has moved the baseline by, 2^-16 counts; known once stopped.
     pub(crate) drift_q16: i64,
     /// Samples of the zero after it that were left out.
@@ -109,6 +111,7 @@ impl Run {
             last_counts: 0,
             driven: 0,
             held: 0,
+            zeroed: 0,
             drift_q16: 0,
             spikes: 0,
             warming: None,
@@ -203,6 +206,12 @@ impl Run {
             drift: rest - readout,
             dead_time: self.ledger.dead_time_var,
         }
+    }
+
+    /// What flicker did to the baseline since the zero.
+    pub(crate) fn flicker(&self, derived: &Derived) -> Walk {
+        let seconds = |ticks| math::seconds(ticks, derived.tick_s);
+        Walk::of_flicker(derived.flicker, seconds(self.zeroed), seconds(self.driven))
     }
 
     /// How far the drift has moved `baseline` since the start, 2^-16 counts.

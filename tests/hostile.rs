@@ -76,7 +76,8 @@ fn the_extremes_of_a_set_up() {
     for (capacitance_f, limit, noise) in [(1e-15, 0.0, 0.0), (1e-15, 1e-12, 1e-9), (1.0, 1.0, 1.0), (1e-9, 1e-3, 1e-13)]
     {
         let circuit = brimline::Circuit { capacitance_f, offset_limit_v: limit, bias_limit_a: 0.0, ..CIRCUIT };
-        let figures = brimline::Noise { readout_counts: 0.0, input_density: noise, offset_wander: noise };
+        let figures =
+            brimline::Noise { readout_counts: 0.0, input_density: noise, offset_wander: noise, input_flicker: noise };
         let policy = brimline::Policy { worst_input: None, ..POLICY };
         let Ok(setup) = Setup::try_new(circuit, converter, figures, policy) else { continue };
         for seed in 0..50 {

@@ -99,7 +99,7 @@ fn relative_uncertainty_of_a_radiant_exposure_adds_in_squares() {
 fn noiseless<Q: Integral>(circuit: Circuit, lsb_v: f64) -> Setup<Q> {
     let circuit = Circuit { offset_limit_v: 0.0, bias_limit_a: 0.0, ..circuit };
     let converter = Converter { code_zero_v: -32768.0 * lsb_v, lsb_v, code_min: 0, code_max: 65535, tick_hz: 1e6 };
-    let noise = Noise { readout_counts: 0.0, input_density: 0.0, offset_wander: 0.0 };
+    let noise = Noise { readout_counts: 0.0, input_density: 0.0, offset_wander: 0.0, ..Noise::NONE };
     match Setup::try_new(circuit, converter, noise, Policy::DEFAULT) {
         Ok(setup) => setup,
         Err(e) => panic!("{e}"),

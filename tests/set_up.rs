@@ -49,6 +49,7 @@ fn each_parameter_is_refused_by_name() {
         converter.tick_hz: [0.5, 5e9, nan]
         noise.readout_counts: [-0.1, 2e6, nan]
         noise.input_density: [-1e-15, 1.1, nan, 1e-3]
+        noise.input_flicker: [-1e-15, 1.1, nan, 1e-3]
         noise.offset_wander: [-1e-15, 1.1, nan, 1e-3]
         policy.edge_samples: [0, 1, 17]
         policy.gap_limit_s: [0.0, -1.0, 2147.5, nan]

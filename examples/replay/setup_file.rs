@@ -122,6 +122,7 @@ fn board(file: &SetupFile) -> Result<Board, Refusal> {
         readout_counts: file.noise.readout_counts,
         input_density: file.noise.input_density,
         offset_wander: file.noise.offset_wander.unwrap_or(0.0),
+        input_flicker: file.noise.input_flicker.unwrap_or(0.0),
     };
     let policy = policy(&file.policy);
     let detector = detector(&file.scale, circuit.input_resistance_ohm.is_some())?;

@@ -57,6 +57,7 @@ pub(crate) struct NoiseKeys {
     pub(crate) readout_counts: f64,
     pub(crate) input_density: f64,
     pub(crate) offset_wander: Option<f64>,
+    pub(crate) input_flicker: Option<f64>,
 }
 
 #[derive(Default, Deserialize)]
@@ -112,6 +113,7 @@ const KEYS: &[(&str, &str, &str)] = &[
     ("converter", "tick_hz", "the rate of the tick counter in hertz, 1 to 4e9"),
     ("noise", "readout_counts", "the noise of one sample in rms counts, 0 to 1e6"),
     ("noise", "input_density", "the input's white noise, A (or V) per square root of hertz, 0 to 1"),
+    ("noise", "input_flicker", "the input's 1/f noise at 1 Hz, A (or V) per square root of hertz, 0 to 1 (default 0)"),
     ("noise", "offset_wander", "the offset's random walk, A (or V) per square root of second, 0 to 1 (default 0)"),
     ("scale", "responsivity_a_per_w", "the detector's responsivity in A/W, above 0"),
     ("scale", "responsivity_u_rel", "the responsivity's relative standard uncertainty, 0 to 1"),

@@ -115,6 +115,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             let mut baseline = self.zeroing.trend;
             self.settle(&mut run, &mut baseline);
             advance(&mut baseline, self.zeroing.pending, derived);
+            baseline.advance(0.0, run.flicker(derived));
             run.drift_q16 = run.drifted_q16(&baseline);
             return Some(Reading::new(self.setup, &run, &run.total(&baseline, &shown, derived), None));
         };

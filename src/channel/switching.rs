@@ -60,6 +60,9 @@ impl<Q: Integral> Channel<'_, Q> {
         self.zero_reasons = Reasons::default();
         match self.run.as_mut() {
             Some(run) if run.is_running() => {
+                // The drift has stepped by flicker once on the way into the run, and does so again on the way out of it.
+                let flicker = run.flicker(derived);
+                self.zeroing.trend.advance(0.0, flicker);
                 run.drift_q16 = run.drifted_q16(&self.zeroing.trend);
                 let at_stop = run.total(&self.zeroing.trend, &shown, derived);
                 let unbroken = matches!(run.stage, Stage::Integrating);
@@ -69,6 +72,7 @@ impl<Q: Integral> Channel<'_, Q> {
                         self.zeroing.resting.saturating_add(crossing.dead).saturating_add(crossing.held);
                 }
                 self.zeroing.bracket = None;
+                self.zeroing.rate_step = flicker.rate;
                 notices.push(run.end_tick, Event::RunStopped);
             }
             // The level did not go on into this zero.
@@ -89,6 +93,7 @@ impl<Q: Integral> Channel<'_, Q> {
                 self.zeroing.rest(derived);
                 run.crossing = Some(Crossing::default());
             }
+            run.zeroed = self.zeroing.known_ticks();
             self.run = Some(run);
             notices.push(tick, Event::RunStarted);
             return;

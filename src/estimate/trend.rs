@@ -25,6 +25,24 @@ impl Walk {
     }
 }
 
+impl Walk {
+    /// A step of the rate by flicker noise, `flicker` in (counts/s)^2, between a zero of `zero_s` seconds and a run of `run_s`
+    /// seconds, and what it did to the level over the run.
+    ///
+    /// The mean rates over the two differ with the variance `K (1 + p)/p [(1 + p) ln(1 + p) - p ln p]`, `p = run / zero`:
+    /// for equal lengths `4 ln2 K`, twice the Allan variance of flicker frequency noise (IEEE Std 1139-2008). It grows
+    /// only as the logarithm of `p`, so the error of the run grows as its length.
+    pub fn of_flicker(flicker: f32, zero_s: f32, run_s: f32) -> Self {
+        if flicker <= 0.0 || run_s <= 0.0 {
+            return Self::default();
+        }
+        let p = run_s / zero_s.max(run_s * 1e-6);
+        let q = p + 1.0;
+        let rate = flicker * (q / p) * (q * math::ln(q) - p * math::ln(p));
+        Self { level: rate * run_s * run_s, cross: rate * run_s, rate }
+    }
+}
+
 /// What one sample told a [`Trend`]: how far it fell from the prediction and how it was weighed.
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]

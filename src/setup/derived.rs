@@ -18,6 +18,8 @@ pub(crate) struct Derived {
     pub(crate) level_walk: f32,
     /// Growth of the drift's variance, (counts/s)^2/s.
     pub(crate) rate_walk: f32,
+    /// Flicker of the drift: its one-sided density times the frequency, (counts/s)^2.
+    pub(crate) flicker: f32,
     /// Drift that the data sheet allows, counts/s.
     pub(crate) rate_limit: f32,
     /// Variance of the drift before anything is measured: rectangular within the limit, `limit^2 / 3` (GUM 4.3.7).
@@ -80,6 +82,8 @@ impl Derived {
             "offset_wander",
             "small enough to change the drift by at most 1e6 counts/s per square root of second"
         );
+        let flicker = noise.input_flicker * per_input;
+        check!(flicker <= 1e6, "input_flicker", "small enough to change the drift by at most 1e6 counts/s");
         let rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
         check!(rate_limit <= 1e9, "offset_limit_v", "such that, with bias_limit_a, the drift is at most 1e9 counts/s");
 
@@ -139,6 +143,7 @@ impl Derived {
             readout_var: (noise.readout_counts * noise.readout_counts + 1.0 / 12.0) as f32,
             level_walk: (density * density / 2.0) as f32,
             rate_walk: (wander * wander) as f32,
+            flicker: (flicker * flicker) as f32,
             rate_limit: rate_limit as f32,
             rate_prior_var: (rate_limit * rate_limit / 3.0) as f32,
             usable,

@@ -26,7 +26,7 @@ use crate::quantity::Integral;
 /// const LAMP_MONITOR: Setup<Charge> = Setup::new(
 ///     Circuit { capacitance_f: 470e-9, rail_low_v: -2.4, rail_high_v: 2.4, ..Circuit::DEFAULT },
 ///     Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, code_min: 0, code_max: 65535, tick_hz: 1e6 },
-///     Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0 },
+///     Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0, ..Noise::NONE },
 ///     Policy { worst_input: Some(0.5e-6), ..Policy::DEFAULT },
 /// );
 /// assert_eq!(LAMP_MONITOR.circuit().capacitance_f, 470e-9);

@@ -57,6 +57,8 @@ pub(crate) struct Zeroing {
     pub(crate) bracket: Option<Bracket>,
     /// Ticks by which the latest sample is ahead of the trend.
     pub(crate) pending: u64,
+    /// Variance of a step that the rate has made since the run, (counts/s)^2.
+    pub(crate) rate_step: f32,
     /// Ticks in which only the rate wandered.
     pub(crate) resting: u64,
     level_known: bool,
@@ -86,12 +88,17 @@ pub(crate) struct Shown {
 /// An onset before so many innovations is as good as the beginning of the zero.
 const EARLY_INNOVATIONS: u16 = 16;
 
+/// Variance by which flicker parts the mean rates of two equal stretches of time side by side, 4 ln 2 (IEEE Std 1139-2008:
+/// twice the Allan variance); taken for what is new in each e-fold of a zero's age. Simulated zeros bear it out.
+const FLICKER_SHARE: f32 = 2.772_588_7;
+
 impl Zeroing {
     pub(crate) fn new(derived: &Derived) -> Self {
         Self {
             trend: Trend::new(0, derived.readout_var, 0.0, derived.rate_prior_var),
             bracket: None,
             pending: 0,
+            rate_step: 0.0,
             resting: 0,
             level_known: false,
             disturbed: false,
@@ -129,6 +136,11 @@ impl Zeroing {
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.release_level();
         }
+    }
+
+    /// How long the zero has known its level, ticks.
+    pub(crate) fn known_ticks(&self) -> u64 {
+        self.known_ticks
     }
 
     /// Whether a run can start on this level.
@@ -196,7 +208,8 @@ impl Zeroing {
     /// Lets the rate wander for the time in which it could not be seen.
     pub(crate) fn rest(&mut self, derived: &Derived) {
         let resting = core::mem::take(&mut self.resting);
-        self.trend.rest(derived.rate_walk * math::seconds(resting, derived.tick_s));
+        let step = core::mem::take(&mut self.rate_step);
+        self.trend.rest(derived.rate_walk * math::seconds(resting, derived.tick_s) + step);
     }
 
     /// Whether a sample is too far off to be noise; while too little is known to tell, none is.
@@ -225,7 +238,9 @@ impl Zeroing {
         }
         let elapsed = self.pending.saturating_sub(mean.age);
         self.pending -= elapsed;
+        let wandered = self.flicker_walk(elapsed, derived);
         advance(&mut self.trend, elapsed, derived);
+        self.trend.rest(wandered);
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.advance(math::seconds(elapsed, derived.tick_s));
         }
@@ -271,6 +286,13 @@ impl Zeroing {
         self.rest(derived);
         self.trend.restart(mean.counts, mean.rest, variance);
         self.level_known = true;
+    }
+
+    /// How far flicker makes the rate wander in the next `ticks` of a zero: it has as much variance in each octave of time, so
+    /// the older the zero the less is new.
+    fn flicker_walk(&self, ticks: u64, derived: &Derived) -> f32 {
+        let age = self.known_ticks.saturating_add(ticks).max(1);
+        FLICKER_SHARE * derived.flicker * (ticks as f32 / age as f32)
     }
 
     /// Forgets what was learned since the sums were last empty.

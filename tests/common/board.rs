@@ -63,6 +63,7 @@ impl Board {
                 // One-sided: the walk's variance in a second is half the density squared.
                 input_density: character.walk * input_per_count * 2.0_f64.sqrt(),
                 offset_wander: character.wander * input_per_count,
+                input_flicker: 0.0,
             },
         }
     }

@@ -254,7 +254,8 @@ impl Plant {
         self.offset += wandered;
         let signal = if mode == Mode::Integrate { self.input.integral(from_s, to_s) } else { 0.0 };
         self.integral += signal;
-        let stray = self.trouble.stray.filter(|_| mode != Mode::Reset).map_or(0.0, |stray| stray.integral(from_s, to_s));
+        let stray =
+            self.trouble.stray.filter(|_| mode != Mode::Reset).map_or(0.0, |stray| stray.integral(from_s, to_s));
         self.stray_integral += stray;
         self.level_v = match mode {
             Mode::Reset => circuit.reset_level_v,

@@ -11,21 +11,21 @@ const CONVERTER: Converter =
 pub(crate) static HATCHERY: Setup<Charge> = Setup::new(
     Circuit { capacitance_f: 470e-9, source_resistance_ohm: 5e9, pedestal_v: -0.8e-3, pedestal_u_v: 40e-6, ..CIRCUIT },
     CONVERTER,
-    Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0 },
+    Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0, ..Noise::NONE },
     Policy { worst_input: Some(0.2e-6), ..Policy::DEFAULT },
 );
 
 pub(crate) static DIM_LAMP: Setup<Charge> = Setup::new(
     Circuit { capacitance_f: 22e-9, source_resistance_ohm: 20e9, ..CIRCUIT },
     CONVERTER,
-    Noise { readout_counts: 1.1, input_density: 8e-14, offset_wander: 0.0 },
+    Noise { readout_counts: 1.1, input_density: 8e-14, offset_wander: 0.0, ..Noise::NONE },
     Policy { worst_input: Some(1e-9), ..Policy::DEFAULT },
 );
 
 pub(crate) static WANDERING_OFFSET: Setup<Flux> = Setup::new(
     Circuit { capacitance_f: 220e-9, input_resistance_ohm: Some(47e3), ..CIRCUIT },
     CONVERTER,
-    Noise { readout_counts: 1.0, input_density: 1.5e-6, offset_wander: 6e-6 },
+    Noise { readout_counts: 1.0, input_density: 1.5e-6, offset_wander: 6e-6, ..Noise::NONE },
     Policy::DEFAULT,
 );
 
@@ -38,6 +38,6 @@ pub(crate) static SEARCH_COIL: Setup<Flux> = Setup::new(
         ..CIRCUIT
     },
     Converter { code_zero_v: -5.0, lsb_v: 10.0 / 262144.0, code_min: 0, code_max: 262143, tick_hz: 1e6 },
-    Noise { readout_counts: 1.4, input_density: 40e-9, offset_wander: 0.0 },
+    Noise { readout_counts: 1.4, input_density: 40e-9, offset_wander: 0.0, ..Noise::NONE },
     Policy { worst_input: Some(0.05), ..Policy::DEFAULT },
 );
