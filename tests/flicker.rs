@@ -73,12 +73,10 @@ fn intervals_cover_runs_from_1_to_30_times_the_zero() {
     println!("run/zero   at stop 1.96 u   rms/u   closed 1.96 u   rms/u   not good");
     for ratio in [1.0, 3.0, 10.0, 30.0] {
         let outcomes: Vec<_> = (0..TRIALS).map(|seed| scaled_errors(ratio, seed)).collect();
-        let share = |hit: &dyn Fn(&([f64; 2], Trust)) -> bool| {
-            100.0 * outcomes.iter().filter(|o| hit(o)).count() as f64 / TRIALS as f64
-        };
+        let share = |hits: usize| 100.0 * hits as f64 / TRIALS as f64;
         let rms = |k: usize| (outcomes.iter().map(|o| o.0[k] * o.0[k]).sum::<f64>() / TRIALS as f64).sqrt();
-        let covered = [0, 1].map(|k| share(&|o| o.0[k].abs() <= 1.96));
-        let not_good = share(&|o| o.1 != Trust::Good);
+        let covered = [0, 1].map(|k| share(outcomes.iter().filter(|o| o.0[k].abs() <= 1.96).count()));
+        let not_good = share(outcomes.iter().filter(|o| o.1 != Trust::Good).count());
         println!(
             "{ratio:>8}   {:>12.1} % {:>7.3}   {:>11.1} % {:>7.3}   {not_good:>6.1} %",
             covered[0],
