@@ -30,6 +30,6 @@ pub use notice::{Event, Notice, Notices, Reason, Reasons, Trust};
 pub use quantity::{Charge, Flux, Integral, Measured, RadiantExposure, Temperature, VoltageRate};
 pub use reading::{Budget, Estimate, Reading};
 pub use sample::{Mode, Sample, Step};
-pub use setup::{Circuit, Converter, Noise, Policy, Setup};
+pub use setup::{Circuit, Converter, Noise, Policy, Setup, TemperatureLaw};
 #[cfg(feature = "embedded-hal")]
 pub use switches::Switches;

@@ -15,6 +15,11 @@ pub(crate) fn ln(x: f32) -> f32 {
     libm::logf(x)
 }
 
+/// Two to the power of `x`.
+pub(crate) fn exp2(x: f32) -> f32 {
+    libm::exp2f(x)
+}
+
 /// Magnitude.
 pub(crate) fn abs(x: f32) -> f32 {
     libm::fabsf(x)

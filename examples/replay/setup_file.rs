@@ -10,7 +10,7 @@ use std::fmt;
 use std::path::Path;
 
 use brimline::unit::Photodetector;
-use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup, SetupError};
+use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup, SetupError, TemperatureLaw};
 
 use self::setup_keys::{ConverterKeys, PolicyKeys, ScaleKeys, SetupFile, about};
 
@@ -114,6 +114,7 @@ fn board(file: &SetupFile) -> Result<Board, Refusal> {
         pedestal_v: c.pedestal_v.unwrap_or(d.pedestal_v),
         pedestal_u_v: c.pedestal_u_v.unwrap_or(d.pedestal_u_v),
         switch_resistance_ohm: c.switch_resistance_ohm.unwrap_or(d.switch_resistance_ohm),
+        temperature_law: temperature_law(c)?,
         gain_u_rel: file.scale.gain_u_rel.unwrap_or(d.gain_u_rel),
     };
     let ConverterKeys { code_zero_v, lsb_v, code_min, code_max, tick_hz } = file.converter;
@@ -131,6 +132,18 @@ fn board(file: &SetupFile) -> Result<Board, Refusal> {
         Some(_) => AnySetup::Flux(Setup::try_new(circuit, converter, noise, policy)?),
     };
     Ok(Board { setup, detector })
+}
+
+fn temperature_law(c: &CircuitKeys) -> Result<TemperatureLaw, Refusal> {
+    match (c.offset_tempco_v_per_k, c.bias_doubling_k) {
+        (None, None) => Ok(TemperatureLaw::Unknown),
+        (Some(limit_v_per_k), None) => Ok(TemperatureLaw::Offset { limit_v_per_k }),
+        (None, Some(doubling_k)) => Ok(TemperatureLaw::Junction { doubling_k }),
+        (Some(_), Some(_)) => {
+            let why = "it stands beside offset_tempco_v_per_k. Give the one that makes most of the drift.".to_owned();
+            Err(Refusal { key: "bias_doubling_k", why })
+        }
+    }
 }
 
 fn unsupported(key: &'static str, what: &str) -> Refusal {

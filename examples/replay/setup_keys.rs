@@ -32,6 +32,8 @@ pub(crate) struct CircuitKeys {
     pub(crate) pedestal_v: Option<f64>,
     pub(crate) pedestal_u_v: Option<f64>,
     pub(crate) switch_resistance_ohm: Option<f64>,
+    pub(crate) offset_tempco_v_per_k: Option<f64>,
+    pub(crate) bias_doubling_k: Option<f64>,
 }
 
 #[derive(Deserialize)]
@@ -101,6 +103,16 @@ const KEYS: &[(&str, &str, &str)] = &[
     ("circuit", "offset_limit_v", "the data sheet's limit of the offset voltage in volt, 0 to 1"),
     ("circuit", "bias_limit_a", "the data sheet's limit of the bias current in ampere, 0 to 1"),
     ("circuit", "source_resistance_ohm", "the resistance of the source in ohm, above 0 and at most 1e18"),
+    (
+        "circuit",
+        "offset_tempco_v_per_k",
+        "the data sheet's limit of the offset's change with temperature, V/K, above 0",
+    ),
+    (
+        "circuit",
+        "bias_doubling_k",
+        "kelvin for a doubling of the bias current, 5 to 20; not beside offset_tempco_v_per_k",
+    ),
     ("circuit", "leak_time_constant_s", "absent"),
     ("circuit", "soakage", "absent or an empty list"),
     ("circuit", "pedestal_v", "a voltage within -1 and 1, V (default 0)"),

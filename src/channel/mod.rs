@@ -90,6 +90,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         if ticks > self.setup.derived().gap_limit_ticks {
             self.gap(was_running, sample.tick, &mut notices);
         }
+        self.zeroing.take_temperature(sample.temperature, self.setup.derived());
         match sample.mode {
             Mode::Zero => self.zero(sample, ticks, &mut notices),
             Mode::Integrate => self.integrate(sample, ticks, &mut notices),
@@ -115,6 +116,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             let mut baseline = self.zeroing.trend;
             self.settle(&mut run, &mut baseline);
             advance(&mut baseline, self.zeroing.pending, derived);
+            self.zeroing.warm(&mut baseline, run.driven, derived);
             baseline.advance(0.0, run.flicker(derived));
             run.drift_q16 = run.drifted_q16(&baseline);
             return Some(Reading::new(self.setup, &run, &run.total(&baseline, &shown, derived), None));

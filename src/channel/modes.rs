@@ -41,6 +41,7 @@ impl<Q: Integral> Channel<'_, Q> {
     pub(super) fn integrate(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.zeroing.pending = self.zeroing.pending.saturating_add(u64::from(ticks));
+        self.zeroing.drive(ticks);
         let filled = self.window.push(sample.tick, sample.counts, derived);
         let Some(run) = self.run.as_mut() else { return };
         run.driven = run.driven.saturating_add(u64::from(ticks));
@@ -67,6 +68,9 @@ impl<Q: Integral> Channel<'_, Q> {
 
     pub(super) fn reset(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
+        if !self.run.and_then(|run| run.crossing).is_some_and(|crossing| crossing.input_open) {
+            self.zeroing.drive(ticks);
+        }
         self.interrupted(ticks, |crossing, ticks| {
             let booked = if crossing.input_open { &mut crossing.held } else { &mut crossing.dead };
             *booked = booked.saturating_add(ticks);

@@ -62,6 +62,7 @@ impl<Q: Integral> Channel<'_, Q> {
             Some(run) if run.is_running() => {
                 // The drift has stepped by flicker once on the way into the run, and does so again on the way out of it.
                 let flicker = run.flicker(derived);
+                self.zeroing.warm_for_good(run.driven, derived);
                 self.zeroing.trend.advance(0.0, flicker);
                 run.drift_q16 = run.drifted_q16(&self.zeroing.trend);
                 let at_stop = run.total(&self.zeroing.trend, &shown, derived);
@@ -94,6 +95,7 @@ impl<Q: Integral> Channel<'_, Q> {
                 run.crossing = Some(Crossing::default());
             }
             run.zeroed = self.zeroing.known_ticks();
+            self.zeroing.begin_run();
             self.run = Some(run);
             notices.push(tick, Event::RunStarted);
             return;

@@ -5,6 +5,7 @@
 
 mod block;
 mod bracket;
+mod constant;
 mod edge;
 mod line;
 mod noise_fit;
@@ -14,6 +15,7 @@ mod trend;
 
 pub(crate) use block::{Block, BlockMean};
 pub(crate) use bracket::{Bracket, movement_q16};
+pub(crate) use constant::Constant;
 pub(crate) use edge::{Edge, EdgeNoise, Side, Weights};
 pub use line::{Line, Point};
 pub use noise_fit::{Figure, NoiseFigures};

@@ -123,6 +123,26 @@ impl Trend {
         self.rate_variance = (self.rate_variance + walk.rate).min(RATE_VARIANCE_MAX);
     }
 
+    /// Moves level and rate by what is known to have happened; the covariance stays.
+    pub fn shift(&mut self, level: f32, rate: f32) {
+        self.level += level;
+        self.rate += rate;
+        self.recentre();
+    }
+
+    /// Adds to the covariance what something with which level and rate are correlated did to them. The sum must be positive
+    /// definite but for rounding.
+    pub(crate) fn absorb(&mut self, added: Walk) {
+        let level = (self.level_variance() + added.level).max(0.0);
+        let cross = self.covariance() + added.cross;
+        let rate = (self.rate_variance + added.rate).min(RATE_VARIANCE_MAX);
+        if rate > 0.0 {
+            self.coupling = cross / rate;
+            self.level_given_rate = (level - cross * self.coupling).max(level * 1e-4);
+            self.rate_variance = rate;
+        }
+    }
+
     /// Lets the rate alone walk by `rate_walk`, (counts/s)^2, while the level is held: the switch is closed or the
     /// input open.
     pub fn rest(&mut self, rate_walk: f32) {

@@ -1,5 +1,6 @@
 //! The analog side: capacitor, input, rails, data-sheet limits.
 
+use super::temperature::TemperatureLaw;
 use crate::error::{SetupError, check};
 
 /// The integrator's circuit, in SI units.
@@ -34,6 +35,8 @@ pub struct Circuit {
     pub pedestal_u_v: f64,
     /// On-resistance of the reset switch, ohm: 0 to 1e6.
     pub switch_resistance_ohm: f64,
+    /// How the drift follows the board's temperature. Only used where samples carry a temperature.
+    pub temperature_law: TemperatureLaw,
     /// Relative standard uncertainty of the whole gain (capacitor, resistor, converter reference): 0 to 1.
     pub gain_u_rel: f64,
 }
@@ -54,6 +57,7 @@ impl Circuit {
         pedestal_v: 0.0,
         pedestal_u_v: 0.0,
         switch_resistance_ohm: 100.0,
+        temperature_law: TemperatureLaw::Unknown,
         gain_u_rel: 0.0,
     };
 
@@ -69,11 +73,15 @@ impl Circuit {
     /// Largest drift that offset voltage and bias current within their limits can cause, V/s:
     /// `(offset / R + bias) / C`, with the input or source resistance for `R`.
     pub const fn drift_limit_v_per_s(&self) -> f64 {
-        let resistance = match self.input_resistance_ohm {
+        (self.offset_limit_v / self.offset_resistance_ohm() + self.bias_limit_a) / self.capacitance_f
+    }
+
+    /// Resistance through which the offset voltage drives a current.
+    pub(super) const fn offset_resistance_ohm(&self) -> f64 {
+        match self.input_resistance_ohm {
             None => self.source_resistance_ohm,
             Some(r) => r,
-        };
-        (self.offset_limit_v / resistance + self.bias_limit_a) / self.capacitance_f
+        }
     }
 
     pub(super) const fn validate(&self, voltage_input: bool) -> Result<(), SetupError> {
@@ -116,6 +124,9 @@ impl Circuit {
             "switch_resistance_ohm",
             "0 to 1e6 (ohm)"
         );
+        if let Err(e) = self.temperature_law.validate() {
+            return Err(e);
+        }
         check!(self.gain_u_rel >= 0.0 && self.gain_u_rel <= 1.0, "gain_u_rel", "0 to 1");
         Ok(())
     }

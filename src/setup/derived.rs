@@ -1,8 +1,25 @@
 //! What the estimator needs of a set-up, worked out once so that no sample pays for a division.
 
-use super::{Circuit, Converter, Noise, Policy};
+use super::{Circuit, Converter, Noise, Policy, TemperatureLaw};
 use crate::error::{SetupError, check};
 use crate::estimate::cusum_threshold;
+
+/// How the drift follows the temperature: variance of the change of the rate for each thousandth, before anything is
+/// measured, (counts/s)^2, rectangular within the data sheet's limit.
+#[derive(Clone, Copy, Debug, PartialEq)]
+#[cfg_attr(feature = "defmt", derive(defmt::Format))]
+pub(crate) enum WarmthLaw {
+    Unknown,
+    /// For each thousandth of a kelvin.
+    Linear {
+        coefficient_var: f32,
+    },
+    /// For each thousandth of the current at 25 degrees Celsius.
+    Junction {
+        coefficient_var: f32,
+        doublings_per_millikelvin: f32,
+    },
+}
 
 /// The set-up in counts, seconds and ticks.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -24,6 +41,8 @@ pub(crate) struct Derived {
     pub(crate) rate_limit: f32,
     /// Variance of the drift before anything is measured: rectangular within the limit, `limit^2 / 3` (GUM 4.3.7).
     pub(crate) rate_prior_var: f32,
+    /// How the drift follows the temperature.
+    pub(crate) warmth: WarmthLaw,
     /// Lowest and highest code that is neither an end code nor past a rail.
     pub(crate) usable: (i32, i32),
     /// Where the level must be while the reset switch is closed.
@@ -87,6 +106,21 @@ impl Derived {
         let rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
         check!(rate_limit <= 1e9, "offset_limit_v", "such that, with bias_limit_a, the drift is at most 1e9 counts/s");
 
+        let per_current = 1.0 / (circuit.capacitance_f * converter.lsb_v);
+        let warmth = match circuit.temperature_law {
+            TemperatureLaw::Unknown => WarmthLaw::Unknown,
+            TemperatureLaw::Offset { limit_v_per_k } => {
+                let limit = limit_v_per_k / circuit.offset_resistance_ohm() * per_current / 1000.0;
+                WarmthLaw::Linear { coefficient_var: (limit * limit / 3.0) as f32 }
+            }
+            TemperatureLaw::Junction { doubling_k } => {
+                let limit = circuit.bias_limit_a * per_current / 1000.0;
+                WarmthLaw::Junction {
+                    coefficient_var: (limit * limit / 3.0) as f32,
+                    doublings_per_millikelvin: (1.0 / (1000.0 * doubling_k)) as f32,
+                }
+            }
+        };
         let low = ceil(converter.code(circuit.rail_low_v));
         let high = floor(converter.code(circuit.rail_high_v));
         let usable = (
@@ -146,6 +180,7 @@ impl Derived {
             flicker: (flicker * flicker) as f32,
             rate_limit: rate_limit as f32,
             rate_prior_var: (rate_limit * rate_limit / 3.0) as f32,
+            warmth,
             usable,
             reset_window: (floor(reset_code - tolerance), ceil(reset_code + tolerance)),
             opened_window: (floor(opened_code - opened_tolerance), ceil(opened_code + opened_tolerance)),

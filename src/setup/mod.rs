@@ -5,15 +5,17 @@ mod converter;
 mod derived;
 mod noise;
 mod policy;
+mod temperature;
 
 use core::marker::PhantomData;
 
 pub use circuit::Circuit;
 pub use converter::Converter;
-pub(crate) use derived::Derived;
+pub(crate) use derived::{Derived, WarmthLaw};
 pub use noise::Noise;
 pub(crate) use policy::EDGE_SAMPLES_MAX;
 pub use policy::Policy;
+pub use temperature::TemperatureLaw;
 
 use crate::error::SetupError;
 use crate::quantity::Integral;

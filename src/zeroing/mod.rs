@@ -2,13 +2,16 @@
 
 mod gate;
 mod noise;
+mod warmth;
 
 use gate::{Gate, Verdict};
 use noise::NoiseSeen;
 pub(crate) use noise::QUANTISATION_VAR;
+use warmth::Warmth;
 
 use crate::estimate::{Block, BlockMean, Bracket, Cusum, Trend, Walk};
 use crate::math;
+use crate::quantity::Temperature;
 use crate::setup::Derived;
 
 /// How the run before stopped, for its bracket.
@@ -41,6 +44,7 @@ pub(crate) enum Taken {
 struct Checkpoint {
     trend: Trend,
     bracket: Option<Bracket>,
+    warmth: Warmth,
     tick: u32,
     /// Ticks from the trend's instant to the present trend's.
     age: u64,
@@ -69,6 +73,7 @@ pub(crate) struct Zeroing {
     checkpoint: Option<Checkpoint>,
     gate: Gate,
     noise: NoiseSeen,
+    warmth: Warmth,
     /// Ticks and innovations since the zero found its level.
     known_ticks: u64,
     known_innovations: u16,
@@ -107,6 +112,7 @@ impl Zeroing {
             checkpoint: None,
             gate: Gate::default(),
             noise: NoiseSeen::new(derived),
+            warmth: Warmth::new(derived),
             known_ticks: 0,
             known_innovations: 0,
         }
@@ -133,6 +139,7 @@ impl Zeroing {
         self.gate = Gate::default();
         self.resting = self.resting.saturating_add(self.pending);
         self.pending = 0;
+        self.warmth.release_level();
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.release_level();
         }
@@ -205,6 +212,32 @@ impl Zeroing {
         advance(&mut self.trend, pending, derived);
     }
 
+    /// Takes the board's temperature, if it is measured.
+    pub(crate) fn take_temperature(&mut self, temperature: Option<Temperature>, derived: &Derived) {
+        self.warmth.take(temperature, derived);
+    }
+
+    /// Time of a run in which the baseline drifts, whatever the temperature.
+    pub(crate) fn drive(&mut self, ticks: u32) {
+        self.warmth.drive(ticks);
+    }
+
+    /// What the warming in a run has done to the baseline.
+    pub(crate) fn warm(&self, baseline: &mut Trend, driven: u64, derived: &Derived) {
+        let mut warmth = self.warmth;
+        warmth.apply(baseline, math::seconds(driven, derived.tick_s), derived);
+    }
+
+    /// The same, for good: the run has ended.
+    pub(crate) fn warm_for_good(&mut self, driven: u64, derived: &Derived) {
+        self.warmth.apply(&mut self.trend, math::seconds(driven, derived.tick_s), derived);
+    }
+
+    /// A run begins.
+    pub(crate) fn begin_run(&mut self) {
+        self.warmth.follow();
+    }
+
     /// Lets the rate wander for the time in which it could not be seen.
     pub(crate) fn rest(&mut self, derived: &Derived) {
         let resting = core::mem::take(&mut self.resting);
@@ -239,7 +272,10 @@ impl Zeroing {
         let elapsed = self.pending.saturating_sub(mean.age);
         self.pending -= elapsed;
         let wandered = self.flicker_walk(elapsed, derived);
+        self.warmth.half_step(&mut self.trend);
         advance(&mut self.trend, elapsed, derived);
+        self.warmth.half_step(&mut self.trend);
+        self.warmth.follow();
         self.trend.rest(wandered);
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.advance(math::seconds(elapsed, derived.tick_s));
@@ -248,6 +284,7 @@ impl Zeroing {
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.update(&innovation);
         }
+        self.warmth.update(math::seconds(elapsed, derived.tick_s), &innovation);
         if let Some(checkpoint) = self.checkpoint.as_mut() {
             checkpoint.age = checkpoint.age.saturating_add(elapsed);
         }
@@ -262,7 +299,8 @@ impl Zeroing {
         }
         if self.cusum.is_quiet() || self.checkpoint.is_none() {
             let known = self.known_innovations;
-            self.checkpoint = Some(Checkpoint { trend: self.trend, bracket: self.bracket, tick, age: 0, known });
+            self.checkpoint =
+                Some(Checkpoint { trend: self.trend, bracket: self.bracket, warmth: self.warmth, tick, age: 0, known });
         }
         Taken::Used
     }
@@ -301,6 +339,7 @@ impl Zeroing {
         if let Some(checkpoint) = self.checkpoint.take() {
             self.trend = checkpoint.trend;
             self.bracket = checkpoint.bracket;
+            self.warmth = checkpoint.warmth;
             self.pending = self.pending.saturating_add(checkpoint.age);
         }
     }

@@ -1,0 +1,119 @@
+//! The drift's dependence on temperature.
+
+use crate::estimate::{Constant, Innovation, Trend, Walk};
+use crate::math;
+use crate::quantity::Temperature;
+use crate::setup::{Derived, WarmthLaw};
+
+/// The drift is a rate at a reference temperature and a coefficient times what the temperature has changed since.
+///
+/// Temperatures enter as a *heat* in whole thousandths: of a kelvin for an offset that changes in proportion, of the
+/// current at 25 degrees Celsius for a junction's.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Warmth {
+    /// Change of the rate for each thousandth, counts/s.
+    coefficient: f32,
+    /// Its variance and what it has in common with the present zero.
+    row: Constant,
+    /// Heat that the rate belongs to; `None` before the first temperature.
+    reference: Option<i32>,
+    latest: i32,
+    temperature: Option<Temperature>,
+    /// Time integral of the heat above the reference during a run, thousandths times ticks.
+    area: i64,
+}
+
+impl Warmth {
+    pub(super) fn new(derived: &Derived) -> Self {
+        let variance = match derived.warmth {
+            WarmthLaw::Unknown => 0.0,
+            WarmthLaw::Linear { coefficient_var } | WarmthLaw::Junction { coefficient_var, .. } => coefficient_var,
+        };
+        Self { row: Constant { variance, ..Constant::default() }, ..Self::default() }
+    }
+
+    /// Takes the temperature of a sample.
+    pub(super) fn take(&mut self, temperature: Option<Temperature>, derived: &Derived) {
+        let Some(temperature) = temperature else { return };
+        if derived.warmth == WarmthLaw::Unknown {
+            return;
+        }
+        if self.temperature != Some(temperature) {
+            self.temperature = Some(temperature);
+            self.latest = heat(temperature, &derived.warmth);
+        }
+        self.reference.get_or_insert(self.latest);
+    }
+
+    /// How far the heat is above the reference.
+    fn risen(&self) -> i32 {
+        self.reference.map_or(0, |reference| self.latest.saturating_sub(reference))
+    }
+
+    /// Time in which the baseline drifts.
+    pub(super) fn drive(&mut self, ticks: u32) {
+        self.area = self.area.saturating_add(i64::from(self.risen()).saturating_mul(i64::from(ticks)));
+    }
+
+    /// What the warming in a run of `driven_s` seconds has done to a baseline, and how uncertain that is.
+    pub(super) fn apply(&mut self, baseline: &mut Trend, driven_s: f32, derived: &Derived) {
+        let area = core::mem::take(&mut self.area) as f32 * derived.tick_s;
+        self.row.advance(driven_s);
+        let risen = self.risen() as f32;
+        self.step(baseline, area, risen);
+        self.follow();
+    }
+
+    /// Half of what the warming since the block before does to a zero's rate: once before the time passes, once after.
+    pub(super) fn half_step(&mut self, trend: &mut Trend) {
+        if self.risen() != 0 {
+            let half = 0.5 * self.risen() as f32;
+            self.step(trend, 0.0, half);
+        }
+    }
+
+    /// Level and rate move by what the coefficient makes of `area` and `risen`, and have that in common with it.
+    fn step(&mut self, trend: &mut Trend, area: f32, risen: f32) {
+        let Constant { variance: v, with_level, with_rate, .. } = self.row;
+        trend.shift(self.coefficient * area, self.coefficient * risen);
+        trend.absorb(Walk {
+            level: area * (area * v + 2.0 * with_level),
+            cross: area * with_rate + risen * with_level + area * risen * v,
+            rate: risen * (risen * v + 2.0 * with_rate),
+        });
+        self.row.with_level += area * v;
+        self.row.with_rate += risen * v;
+    }
+
+    /// The rate belongs to the present heat from here on.
+    pub(super) fn follow(&mut self) {
+        self.area = 0;
+        if self.reference.is_some() {
+            self.reference = Some(self.latest);
+        }
+    }
+
+    /// The level of a zero is found anew.
+    pub(super) fn release_level(&mut self) {
+        self.row.with_level = 0.0;
+    }
+
+    /// A block of a zero, `dt_s` after the one before.
+    pub(super) fn update(&mut self, dt_s: f32, innovation: &Innovation) {
+        self.row.advance(dt_s);
+        self.row.update(innovation);
+        self.coefficient += core::mem::take(&mut self.row.correction);
+    }
+}
+
+/// The heat of a temperature, in whole thousandths.
+fn heat(temperature: Temperature, law: &WarmthLaw) -> i32 {
+    let millidegrees = temperature.as_millidegrees_celsius().clamp(-80_000, 200_000);
+    match *law {
+        WarmthLaw::Unknown => 0,
+        WarmthLaw::Linear { .. } => millidegrees,
+        WarmthLaw::Junction { doublings_per_millikelvin, .. } => {
+            (1000.0 * math::exp2((millidegrees - 25_000) as f32 * doublings_per_millikelvin)) as i32
+        }
+    }
+}
