@@ -12,7 +12,7 @@ use std::path::Path;
 use brimline::unit::Photodetector;
 use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup, SetupError, TemperatureLaw};
 
-use self::setup_keys::{ConverterKeys, PolicyKeys, ScaleKeys, SetupFile, about};
+use self::setup_keys::{CircuitKeys, ConverterKeys, PolicyKeys, ScaleKeys, SetupFile, about};
 
 /// A set-up of either kind of input.
 #[derive(Clone, Copy, Debug, PartialEq)]
