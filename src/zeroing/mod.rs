@@ -261,10 +261,18 @@ impl Zeroing {
 
     fn finish_block(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
         let Some(mean) = self.block.take() else { return Taken::Used };
+        if !self.level_known && self.noise.is_torn(&mean) {
+            return Taken::Spike;
+        }
         self.noise.take_block(&mean, derived);
         // Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
         // what the walk does to a run longer than the block.
-        let variance = derived.readout_var / f32::from(mean.samples);
+        let variance = if derived.dithered {
+            derived.readout_var / f32::from(mean.samples)
+        } else {
+            // Rounding that nothing dithers does not average, and keeps its sign over many blocks.
+            4.0 * derived.readout_var
+        };
         if !self.level_known {
             self.find_level(&mean, variance, stop, derived);
             return Taken::Used;

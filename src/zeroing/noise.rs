@@ -11,6 +11,8 @@ pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
 /// given, so that a change is followed.
 const SETUP_FREEDOM: f32 = 16.0;
 const MOST_FREEDOM: f32 = 4096.0;
+/// Scatter of a block over that of the others, as a ratio of variances.
+const TORN_RATIO: f32 = 9.0;
 /// Innovations that the set-up's figures are worth against the observed ones, and the most that these are given.
 const SETUP_INNOVATIONS: f32 = 16.0;
 const MOST_INNOVATIONS: f32 = 512.0;
@@ -62,6 +64,12 @@ impl NoiseSeen {
         let off = self.dispersion - 1.0;
         let enough = self.innovations >= 2.0 * SETUP_INNOVATIONS;
         (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
+    }
+
+    /// Whether a block scatters so much more than those before it that a spike must be in it: its mean is of no use.
+    pub(super) fn is_torn(&self, mean: &BlockMean) -> bool {
+        let n = f32::from(mean.samples);
+        self.has_scatter() && n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * self.sample_var
     }
 
     /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
