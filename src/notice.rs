@@ -36,6 +36,13 @@ pub enum Event {
         /// Observed over expected standard deviation, per cent.
         percent: u16,
     },
+    /// The drifts of successive zeros differ by so many per cent of what the set-up's walks allow, clearly more than 100: the
+    /// offset wanders more than stated, or something else moves it. Uncertainties are widened by as much. Stated at the end
+    /// of a zero.
+    DriftWander {
+        /// Observed over expected standard deviation, per cent.
+        percent: u16,
+    },
     /// Something that takes the trust from a reading; stated once for each run, or for each zero.
     Fault(Reason),
 }

@@ -163,7 +163,7 @@ impl Run {
         let own = 1.0 - weight;
         let counted_twice = shown.sample_var * weight * weight;
         let start_var = (self.start_var * shown.widening).max(shown.rounding.0);
-        let drift = not_negative(baseline.level_variance() - self.start_var - walk) * shown.widening;
+        let drift = not_negative(baseline.level_variance() - self.start_var - walk) * shown.rate_widening;
         let (of_start, of_dead_time) = match self.ledger.dead_time_var >= counted_twice {
             true => (0.0, counted_twice),
             false => (counted_twice, 0.0),
@@ -197,7 +197,8 @@ impl Run {
         // Rounding without dither: of the level at both ends, and of the drift of the two zeros together.
         let rounding = 2.0 * shown.rounding.0 + 0.5 * shown.rounding.1 * driven_s * driven_s;
         let input_noise = not_negative(walk + self.ledger.walk_var);
-        let rest = not_negative(bracket.variance() + self.ledger.walk_var - input_noise) * shown.widening + rounding;
+        let rest =
+            not_negative(bracket.variance() + self.ledger.walk_var - input_noise) * shown.rate_widening + rounding;
         let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {
             movement_q16: bracket.movement_q16().saturating_add(self.ledger.total_q16()),

@@ -66,6 +66,8 @@ struct Notice {
     kind: &'static str,
     #[serde(skip_serializing_if = "Option::is_none")]
     reason: Option<&'static str>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    percent: Option<u16>,
 }
 
 #[derive(Serialize)]
@@ -131,5 +133,9 @@ fn notice(notice: &NoticeRecord) -> Notice {
         Event::Fault(reason) => Some(reason.name()),
         _ => None,
     };
-    Notice { tick: notice.tick, time_s: notice.time_s, kind: words::event_name(notice.event), reason }
+    let percent = match notice.event {
+        Event::NoiseFigures { percent } | Event::DriftWander { percent } => Some(percent),
+        _ => None,
+    };
+    Notice { tick: notice.tick, time_s: notice.time_s, kind: words::event_name(notice.event), reason, percent }
 }

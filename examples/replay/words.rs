@@ -107,6 +107,7 @@ pub(crate) fn event_name(event: Event) -> &'static str {
         Event::Spike => "spike",
         Event::InputInZero => "input_in_zero",
         Event::NoiseFigures { .. } => "noise_figures",
+        Event::DriftWander { .. } => "drift_wander",
         Event::Fault(_) => "fault",
         _ => "other",
     }
@@ -124,6 +125,9 @@ pub(crate) fn event(event: Event) -> String {
         Event::InputInZero => "input began during a zero".to_owned(),
         Event::NoiseFigures { percent } => {
             format!("the zeros scatter by {percent} % of what the set-up's noise figures say")
+        }
+        Event::DriftWander { percent } => {
+            format!("the drifts of the zeros differ by {percent} % of what the set-up's noise figures allow")
         }
         Event::Fault(cause) => format!("FAULT {}: {}", cause.name(), reason(cause).0),
         _ => "something that this program does not know".to_owned(),

@@ -140,7 +140,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         let lsb_v = self.setup.converter().lsb_v;
         let trend = &self.zeroing.trend;
         let shown = self.zeroing.shown(self.setup.derived());
-        let u = math::sqrt(trend.rate_variance() * shown.widening + shown.rounding.1);
+        let u = math::sqrt(trend.rate_variance() * shown.rate_widening + shown.rounding.1);
         Measured::new(
             VoltageRate::from_volts_per_second(f64::from(trend.rate()) * lsb_v),
             VoltageRate::from_volts_per_second(f64::from(u) * lsb_v),

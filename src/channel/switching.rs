@@ -29,10 +29,12 @@ impl<Q: Integral> Channel<'_, Q> {
     /// The zero has told what it could.
     fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
-        self.zeroing.finish(tick, self.stop(), derived);
-        self.zeroing.catch_up(derived);
+        self.zeroing.leave(tick, self.stop(), derived);
         if let Some(percent) = self.zeroing.noise_percent() {
             notices.push(tick, Event::NoiseFigures { percent });
+        }
+        if let Some(percent) = self.zeroing.drift_percent() {
+            notices.push(tick, Event::DriftWander { percent });
         }
         if self.drift_outside_limits() {
             self.fault(Reason::DriftOutsideLimits, tick, notices);

@@ -74,6 +74,8 @@ pub(crate) struct Zeroing {
     gate: Gate,
     noise: NoiseSeen,
     warmth: Warmth,
+    /// The drift and its variance as expected when the zero found its level.
+    expected_rate: Option<(f32, f32)>,
     /// Ticks and innovations since the zero found its level.
     known_ticks: u64,
     known_innovations: u16,
@@ -84,8 +86,9 @@ pub(crate) struct Zeroing {
 pub(crate) struct Shown {
     /// Variance of a single sample, counts^2.
     pub(crate) sample_var: f32,
-    /// Factor on variances that rest on the zeros; at least 1.
+    /// Factors on variances that rest on the zeros' level and on their drift; at least 1.
     pub(crate) widening: f32,
+    pub(crate) rate_widening: f32,
     /// Added to the variance of a level and of the drift for rounding that no noise dithers, counts^2 and (counts/s)^2.
     pub(crate) rounding: (f32, f32),
 }
@@ -113,6 +116,7 @@ impl Zeroing {
             gate: Gate::default(),
             noise: NoiseSeen::new(derived),
             warmth: Warmth::new(derived),
+            expected_rate: None,
             known_ticks: 0,
             known_innovations: 0,
         }
@@ -160,12 +164,22 @@ impl Zeroing {
         let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
         let known_s = math::seconds(self.known_ticks, derived.tick_s);
         let rate = if known_s > 0.0 { 2.0 * level / (known_s * known_s) } else { 0.0 };
-        Shown { sample_var: self.noise.sample_var(), widening: self.noise.widening(), rounding: (level, rate) }
+        Shown {
+            sample_var: self.noise.sample_var(),
+            widening: self.noise.widening(),
+            rate_widening: self.noise.rate_widening(),
+            rounding: (level, rate),
+        }
     }
 
     /// Scatter of the innovations in per cent of the expected, if it is clearly another.
     pub(crate) fn noise_percent(&self) -> Option<u16> {
         self.noise.percent()
+    }
+
+    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more.
+    pub(crate) fn drift_percent(&self) -> Option<u16> {
+        self.noise.rate_percent()
     }
 
     /// Time in a zero without a usable sample.
@@ -203,6 +217,26 @@ impl Zeroing {
     pub(crate) fn finish(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
         if !self.level_known && !self.disturbed {
             self.finish_block(tick, stop, derived);
+        }
+    }
+
+    /// The zero is over.
+    pub(crate) fn leave(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
+        self.finish(tick, stop, derived);
+        self.judge_rate();
+        self.catch_up(derived);
+    }
+
+    /// The zero is over: how far was the drift from what was expected?
+    fn judge_rate(&mut self) {
+        let Some((rate, variance)) = self.expected_rate.take().filter(|_| self.level_known && !self.disturbed) else {
+            return;
+        };
+        // What the zero added to the knowledge of the rate has the variance that it took away.
+        let learned = variance - self.trend.rate_variance();
+        if learned > 0.1 * variance {
+            let off = self.trend.rate() - rate;
+            self.noise.take_rate(off * off / learned);
         }
     }
 
@@ -270,8 +304,8 @@ impl Zeroing {
         let variance = if derived.dithered {
             derived.readout_var / f32::from(mean.samples)
         } else {
-            // Rounding that nothing dithers does not average, and keeps its sign over many blocks.
-            4.0 * derived.readout_var
+            // Rounding that nothing dithers does not average ...
+            derived.readout_var
         };
         if !self.level_known {
             self.find_level(&mean, variance, stop, derived);
@@ -288,6 +322,8 @@ impl Zeroing {
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.advance(math::seconds(elapsed, derived.tick_s));
         }
+        // ... and keeps its sign over many blocks.
+        let variance = if derived.dithered { variance } else { 4.0 * variance };
         let innovation = self.trend.update(mean.counts, mean.rest, variance);
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.update(&innovation);
@@ -331,6 +367,7 @@ impl Zeroing {
         }
         self.rest(derived);
         self.trend.restart(mean.counts, mean.rest, variance);
+        self.expected_rate = Some((self.trend.rate(), self.trend.rate_variance()));
         self.level_known = true;
     }
 

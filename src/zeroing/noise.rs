@@ -11,6 +11,11 @@ pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
 /// given, so that a change is followed.
 const SETUP_FREEDOM: f32 = 16.0;
 const MOST_FREEDOM: f32 = 4096.0;
+/// Zeros that the set-up's wander is worth against the observed one, the most that these are given, and the most that a
+/// single zero may surprise, as a ratio of variances.
+const SETUP_ZEROS: f32 = 4.0;
+const MOST_ZEROS: f32 = 32.0;
+const MOST_SURPRISE: f32 = 25.0;
 /// Scatter of a block over that of the others, as a ratio of variances.
 const TORN_RATIO: f32 = 9.0;
 /// Innovations that the set-up's figures are worth against the observed ones, and the most that these are given.
@@ -26,6 +31,11 @@ pub(super) struct NoiseSeen {
     /// Mean square of the innovations over what was expected, and the number of them that it rests on.
     dispersion: f32,
     innovations: f32,
+    /// The same for the drift that each zero found over what the zeros before it said, and the number of zeros.
+    rate_dispersion: f32,
+    zeros: f32,
+    /// Whether there was any block yet.
+    seen: bool,
 }
 
 impl NoiseSeen {
@@ -35,6 +45,9 @@ impl NoiseSeen {
             freedom: SETUP_FREEDOM,
             dispersion: 1.0,
             innovations: SETUP_INNOVATIONS,
+            rate_dispersion: 1.0,
+            zeros: SETUP_ZEROS,
+            seen: false,
         }
     }
 
@@ -58,6 +71,27 @@ impl NoiseSeen {
         if self.percent().is_some() { self.dispersion() } else { 1.0 }
     }
 
+    /// Factor on variances that rest on the drift: what the drifts of successive zeros differ by over what the walks of the
+    /// set-up allow. It follows from zero to zero, and only widens.
+    pub(super) fn rate_widening(&self) -> f32 {
+        let rate = if self.rate_percent().is_some() { self.rate_dispersion } else { 1.0 };
+        rate.max(self.widening())
+    }
+
+    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more: the mean square is 3 of its standard
+    /// deviations, `sqrt(2 / n)`, above 1.
+    pub(super) fn rate_percent(&self) -> Option<u16> {
+        let off = self.rate_dispersion - 1.0;
+        let clear = off > 0.0 && off * off * self.zeros > 18.0;
+        clear.then(|| (100.0 * math::sqrt(self.rate_dispersion)) as u16)
+    }
+
+    /// Takes how far the drift that a zero found lies off the one expected, squared, over the variance of that.
+    pub(super) fn take_rate(&mut self, square: f32) {
+        self.rate_dispersion += (square.min(MOST_SURPRISE) - self.rate_dispersion) / (self.zeros + 1.0);
+        self.zeros = (self.zeros + 1.0).min(MOST_ZEROS);
+    }
+
     /// Scatter of the innovations in per cent of the expected, if it is clearly another: the mean square is 4 of its
     /// standard deviations, `sqrt(2 / n)`, from 1.
     pub(super) fn percent(&self) -> Option<u16> {
@@ -66,10 +100,13 @@ impl NoiseSeen {
         (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
     }
 
-    /// Whether a block scatters so much more than those before it that a spike must be in it: its mean is of no use.
-    pub(super) fn is_torn(&self, mean: &BlockMean) -> bool {
+    /// Whether a block scatters so much more than expected that a spike must be in it: its mean is of no use. Before any block
+    /// has shown the scatter this may be hum as well: then only the first is left out.
+    pub(super) fn is_torn(&mut self, mean: &BlockMean) -> bool {
         let n = f32::from(mean.samples);
-        self.has_scatter() && n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * self.sample_var
+        let scattered = n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * self.sample_var;
+        let first = !core::mem::replace(&mut self.seen, true);
+        scattered && (first || self.has_scatter())
     }
 
     /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
