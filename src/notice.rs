@@ -164,9 +164,9 @@ pub enum Trust {
     Invalid,
 }
 
-/// The notices of one step, oldest first; never more than 8.
+/// The notices of one step, oldest first; never more than 10.
 #[derive(Clone, Debug, Default)]
-pub struct Notices(heapless::Vec<Notice, 8>);
+pub struct Notices(heapless::Vec<Notice, 10>);
 
 impl Notices {
     /// The notices, oldest first.
@@ -180,7 +180,7 @@ impl Notices {
     }
 
     pub(crate) fn push(&mut self, tick: u32, event: Event) {
-        // A mode change has at most 5 notices, a sample 3: the ninth cannot come.
+        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the eleventh cannot come.
         let _ = self.0.push(Notice { tick, event });
     }
 }
