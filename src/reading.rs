@@ -91,6 +91,9 @@ pub struct Reading<Q> {
     pub elapsed_s: f64,
     /// How much warmer the board was at the last integrating sample than at the zero before, mK; `None` if not measured.
     pub warming_mk: Option<i32>,
+    /// Whether the zeros so far were enough to show noise figures of the set-up that are wrong by a factor of 3: 64 blocks
+    /// and 6 zeros that have ended. Until then `u` is as true as the figures.
+    pub noise_tested: bool,
     /// How far the reading can be trusted.
     pub trust: Trust,
     /// Why it is not good.
@@ -98,7 +101,13 @@ pub struct Reading<Q> {
 }
 
 impl<Q: Integral> Reading<Q> {
-    pub(crate) fn new(setup: &Setup<Q>, run: &Run, at_stop: &Total, closed: Option<&Total>) -> Self {
+    pub(crate) fn new(
+        setup: &Setup<Q>,
+        run: &Run,
+        at_stop: &Total,
+        closed: Option<&Total>,
+        noise_tested: bool,
+    ) -> Self {
         let latest = closed.unwrap_or(at_stop);
         let integral = |q16: i64| Q::from_si_value(from_q16(q16) * setup.derived().integral_per_count);
         let interpolated_q16 = run.ledger.interpolated_q16.saturating_sub(run.ledger.dead_drift_q16);
@@ -115,6 +124,7 @@ impl<Q: Integral> Reading<Q> {
             end_tick: run.end_tick,
             elapsed_s: ticks as f64 / setup.converter().tick_hz,
             warming_mk: run.warming,
+            noise_tested,
             trust: run.reasons.trust(),
             reasons: run.reasons,
         }

@@ -49,6 +49,8 @@ struct Run {
     variance: Variance,
     #[serde(skip_serializing_if = "Option::is_none")]
     warming_mk: Option<i32>,
+    noise_tested: bool,
+    spikes: u16,
     #[serde(skip_serializing_if = "Option::is_none")]
     radiant_exposure: Option<Exposure>,
 }
@@ -116,6 +118,8 @@ fn run(run: &RunRecord, unit: &'static str) -> Run {
             scale: latest.scale * latest.scale,
         },
         warming_mk: run.warming_mk,
+        noise_tested: run.noise_tested,
+        spikes: run.spikes,
         radiant_exposure: run.exposure.map(|(value, u)| Exposure { value, u, unit: "J/m^2" }),
     }
 }

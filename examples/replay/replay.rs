@@ -83,6 +83,8 @@ pub(crate) struct RunRecord {
     pub(crate) drift_removed: f64,
     pub(crate) resets: u32,
     pub(crate) warming_mk: Option<i32>,
+    pub(crate) noise_tested: bool,
+    pub(crate) spikes: u16,
     pub(crate) trust: Trust,
     pub(crate) reasons: Vec<Reason>,
     /// Of the latest estimate, J/m^2 with its standard uncertainty.
@@ -265,6 +267,8 @@ impl<'s, Q: Amount> Replay<'s, Q> {
             drift_removed: reading.drift_removed.number(),
             resets: reading.resets,
             warming_mk: reading.warming_mk,
+            noise_tested: reading.noise_tested,
+            spikes: reading.spikes,
             trust: reading.trust,
             reasons: reading.reasons.iter().collect(),
             exposure,

@@ -112,6 +112,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         let derived = self.setup.derived();
         let mut run = self.run?;
         let shown = self.zeroing.shown(derived);
+        let noise_tested = self.zeroing.noise_is_tested();
         let Stage::Stopped { at_stop, .. } = run.stage else {
             let mut baseline = self.zeroing.trend;
             self.settle(&mut run, &mut baseline);
@@ -119,7 +120,8 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             self.zeroing.warm(&mut baseline, run.driven, derived);
             baseline.advance(0.0, run.flicker(derived));
             run.drift_q16 = run.drifted_q16(&baseline);
-            return Some(Reading::new(self.setup, &run, &run.total(&baseline, &shown, derived), None));
+            let at_stop = run.total(&baseline, &shown, derived);
+            return Some(Reading::new(self.setup, &run, &at_stop, None, noise_tested));
         };
         let mut zeroing = self.zeroing;
         zeroing.finish(self.clock.tick(), self.stop(), derived);
@@ -132,7 +134,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
                 run.reasons.insert(Reason::Inconsistent);
             }
         }
-        Some(Reading::new(self.setup, &run, &at_stop, closed.as_ref()))
+        Some(Reading::new(self.setup, &run, &at_stop, closed.as_ref(), noise_tested))
     }
 
     /// The drift of the output and its standard uncertainty, as of the latest zero.

@@ -172,6 +172,11 @@ impl Zeroing {
         }
     }
 
+    /// Whether the zeros were enough to show noise figures that are wrong.
+    pub(crate) fn noise_is_tested(&self) -> bool {
+        self.noise.is_tested()
+    }
+
     /// Scatter of the innovations in per cent of the expected, if it is clearly another.
     pub(crate) fn noise_percent(&self) -> Option<u16> {
         self.noise.percent()

@@ -86,6 +86,12 @@ impl NoiseSeen {
         clear.then(|| (100.0 * math::sqrt(self.rate_dispersion)) as u16)
     }
 
+    /// Whether there was enough of zeros for noise figures that are wrong by a factor of 3 to have shown: 64 blocks for the
+    /// readout and the walk, 6 zeros after others for the wander. Simulated; see `tests/adaptation.rs`.
+    pub(super) fn is_tested(&self) -> bool {
+        self.innovations >= SETUP_INNOVATIONS + 64.0 && self.zeros >= SETUP_ZEROS + 6.0
+    }
+
     /// Takes how far the drift that a zero found lies off the one expected, squared, over the variance of that.
     pub(super) fn take_rate(&mut self, square: f32) {
         self.rate_dispersion += (square.min(MOST_SURPRISE) - self.rate_dispersion) / (self.zeros + 1.0);
