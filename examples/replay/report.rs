@@ -74,6 +74,12 @@ fn write_run(out: &mut impl Write, run: &RunRecord, number: usize, outcome: &Out
     if let Some(warming) = run.warming_mk {
         line(out, "board", &format!("{:+.2} K from the zero before to the end of the run", f64::from(warming) / 1e3))?;
     }
+    if run.spikes > 0 {
+        line(out, "left out", &format!("{} samples of the zero after the run, too far off for noise", run.spikes))?;
+    }
+    if !run.noise_tested {
+        line(out, "noise figures", "from the set-up: too few zeros yet to show whether they are true")?;
+    }
     let uncorrected = run.at_stop.value + run.drift_removed;
     let off = uncorrected - latest.value;
     line(

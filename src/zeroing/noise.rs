@@ -87,7 +87,7 @@ impl NoiseSeen {
     }
 
     /// Whether there was enough of zeros for noise figures that are wrong by a factor of 3 to have shown: 64 blocks for the
-    /// readout and the walk, 6 zeros after others for the wander. Simulated; see `tests/adaptation.rs`.
+    /// readout and the walk, 6 zeros that said something of the drift for the wander. Simulated; see `tests/adaptation.rs`.
     pub(super) fn is_tested(&self) -> bool {
         self.innovations >= SETUP_INNOVATIONS + 64.0 && self.zeros >= SETUP_ZEROS + 6.0
     }
