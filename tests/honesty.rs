@@ -1,5 +1,5 @@
-//! How true the uncertainty is: seeded Monte Carlo over noise mixes, disturbances and wrong figures. `--nocapture` shows
-//! the tables as Markdown; `BRIMLINE_TRIALS=2000` makes the coverage table full-size.
+//! How true the uncertainty is: seeded Monte Carlo over noise mixes, disturbances and wrong figures. `--nocapture`
+//! shows the tables as Markdown; `BRIMLINE_TRIALS=2000` makes them full-size.
 #![allow(clippy::disallowed_methods, reason = "a reference on the host computes in f64; only src must give equal bits")]
 
 mod common;
@@ -34,6 +34,25 @@ fn trials(suite: u64) -> u64 {
 /// Index of the sample that brought the first notice of a kind, and its tick.
 fn first_of(notices: &[(usize, Notice)], event: Event) -> Option<(usize, u32)> {
     notices.iter().find(|(_, notice)| notice.event == event).map(|&(index, notice)| (index, notice.tick))
+}
+
+/// A Markdown table that is printed in one piece, since tests run side by side.
+struct Table(String);
+
+impl Table {
+    fn new(heading: &str) -> Self {
+        let columns = heading.matches('|').count() - 1;
+        Self(format!("\n{heading}\n|---{}|\n", "|--:".repeat(columns - 1)))
+    }
+
+    fn row(&mut self, row: String) {
+        self.0.push_str(&row);
+        self.0.push('\n');
+    }
+
+    fn print(&self) {
+        println!("{}", self.0);
+    }
 }
 
 fn percent(part: u32, of: u32) -> f64 {

@@ -76,7 +76,7 @@ pub(crate) struct Plan {
     /// Indices of the samples used.
     used: Vec<usize>,
     first: usize,
-    /// What a sample's level above the first zero sample's adds to the integral, C or V s, and the drift, V/s, per count.
+    /// What a sample adds to the integral, C or V s, and the drift, V/s, per count above the first zero sample.
     integral: DVector<f64>,
     drift: DVector<f64>,
     integral_u: f64,

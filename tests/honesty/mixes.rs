@@ -7,7 +7,7 @@ use crate::common::board::{Board, Character};
 use crate::common::plant::{Input, Plant, Record, Resets, Sampling, Timing};
 use crate::common::tally::Tally;
 use crate::common::{Claim, answer, textbook};
-use crate::{TIMING, WHITE_AND_WALK, trials};
+use crate::{TIMING, Table, WHITE_AND_WALK, trials};
 
 struct Mix {
     name: &'static str,
@@ -38,7 +38,7 @@ const MIXES: [Mix; 8] = [
     Mix {
         name: "strong wander",
         // In 40 s the drift wanders by 6 counts/s; the data sheet has room for it.
-        character: Character { readout: 1.0, walk: 0.0, wander: 1.0, drift_limit: 60.0 },
+        character: Character { readout: 1.0, walk: 0.0, wander: 1.0, drift_limit: 200.0 },
         ..PLAIN
     },
     Mix {
@@ -102,7 +102,10 @@ impl Mix {
         for seed in 0..trials {
             let record = self.record(&board, seed);
             let answer = answer(&setup, &record);
-            if answer.reading.trust != Trust::Good {
+            // A drift that has wandered out of the data sheet's limits is rightly not called good.
+            let drift = record.drift_opening.abs().max(record.drift_closing.abs());
+            let within_limits = drift <= board.circuit.drift_limit_v_per_s();
+            if answer.reading.trust != Trust::Good && within_limits {
                 not_good.push((seed, answer.reading.reasons.iter().next()));
             }
             let truths = [record.integral, record.integral, record.drift_opening, record.drift_closing];
@@ -140,7 +143,7 @@ fn certain(claim: Claim) -> Claim {
 }
 
 impl Row {
-    fn print(&self, mix: &str, what: &str) {
+    fn row(&self, mix: &str, what: &str) -> String {
         let best = self.best.rms_error();
         let relative = |tally: &Tally| match self.best.trials() {
             0 => "–".to_owned(),
@@ -150,7 +153,7 @@ impl Row {
             0 => "–".to_owned(),
             _ => format!("{:.0} %, {}", tally.coverage_95(), relative(tally)),
         };
-        println!(
+        format!(
             "| {mix} | {what} | {:.1} % | {:.1} % | {:.2} | {} | {} | {} | {} |",
             self.ours.coverage_95(),
             self.ours.coverage_68(),
@@ -162,11 +165,11 @@ impl Row {
             naive(&self.line),
             naive(&self.two_points),
             naive(&self.uncorrected),
-        );
+        )
     }
 
-    /// At full size the bounds are those claimed. Fewer trials scatter more: then they are 3.5 standard errors of the share,
-    /// and an rms error relative to the optimum's is allowed 2 % more.
+    /// At full size the bounds are those claimed. Fewer trials scatter more: then they are 3.5 standard errors of the
+    /// share, and an rms error relative to the optimum's is allowed 2 % more.
     fn faults(&self, what: &str, may_over_cover: bool) -> Vec<String> {
         let n = f64::from(self.ours.trials());
         let (near_95, near_68, near_best) = match n < 2000.0 {
@@ -192,18 +195,21 @@ impl Row {
 #[test]
 fn intervals_hold_the_truth_as_often_as_they_say() {
     let trials = trials(500);
-    println!("| noise | estimate | 95 % holds | 68 % holds | rms/u | rms/best | least squares | two points | none |");
-    println!("|---|---|--:|--:|--:|--:|--:|--:|--:|");
+    let mut table = Table::new(
+        "| noise | estimate | 95 % holds | 68 % holds | rms/u | rms/best | least squares | two points | none |",
+    );
     let mut faults = Vec::new();
     for mix in &MIXES {
         let (rows, not_good) = mix.score(trials);
-        if !not_good.is_empty() {
-            faults.push(format!("{}: {} of {trials} sound runs not good: {not_good:?}", mix.name, not_good.len()));
+        if let Some((seed, why)) = not_good.first() {
+            let share = 100.0 * not_good.len() as f64 / trials as f64;
+            faults.push(format!("{}: {share:.1} % of sound runs are not good, seed {seed} for {why:?}", mix.name));
         }
         for (row, what) in rows.iter().zip(WHAT) {
-            row.print(mix.name, what);
+            table.row(row.row(mix.name, what));
             faults.extend(row.faults(&format!("{}, {what}", mix.name), mix.may_over_cover));
         }
     }
+    table.print();
     assert!(faults.is_empty(), "{faults:#?}");
 }
