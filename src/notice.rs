@@ -71,7 +71,7 @@ pub enum Reason {
     ClockStalled = 7,
     /// A zero beside the run was no zero: input began, or the drift had changed. The zero was not used from there on.
     InputInZero = 8,
-    /// The value at stop and the closed one differ by more than 5 of their uncertainties.
+    /// The value at stop and the closed one differ by more than the closing zero can have added.
     Inconsistent = 9,
 }
 

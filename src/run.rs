@@ -88,10 +88,13 @@ impl Total {
         self.readout + self.input_noise + self.drift + self.dead_time
     }
 
-    /// Whether two totals of a run differ by no more than 5 standard deviations of a difference between independent ones.
-    pub(crate) fn agrees_with(&self, other: &Self) -> bool {
-        let difference = self.movement_q16.saturating_sub(other.movement_q16) as f32 * (1.0 / 65536.0);
-        difference * difference <= 25.0 * (self.variance() + other.variance())
+    /// Whether a closed total differs from the one at stop by no more than 4 standard deviations: what the closing zero has
+    /// added has the variance that it has taken away, but for the last sample, which only the one at stop rests on.
+    /// `self` is the closed total as if nothing had been widened; what was gained is, as the zeros have shown since.
+    pub(crate) fn agrees_with(&self, at_stop: &Self, shown: &Shown) -> bool {
+        let difference = self.movement_q16.saturating_sub(at_stop.movement_q16) as f32 * (1.0 / 65536.0);
+        let gained = (at_stop.variance() - self.variance()).max(0.0);
+        difference * difference <= 16.0 * (gained * shown.rate_widening + 2.0 * shown.sample_var)
     }
 }
 

@@ -125,12 +125,14 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         };
         let mut zeroing = self.zeroing;
         zeroing.finish(self.clock.tick(), self.stop(), derived);
-        let closed = zeroing.bracket.map(|bracket| run.closed_total(&bracket, &zeroing.trend, &shown, derived));
-        if let Some(closed) = closed {
+        let closed_as =
+            |shown| zeroing.bracket.map(|bracket| run.closed_total(&bracket, &zeroing.trend, shown, derived));
+        let closed = closed_as(&shown);
+        if let Some(plain) = closed_as(&shown.not_widened()) {
             if self.drift_outside_limits() {
                 run.reasons.insert(Reason::DriftOutsideLimits);
             }
-            if !closed.agrees_with(&at_stop) {
+            if !plain.agrees_with(&at_stop, &shown) {
                 run.reasons.insert(Reason::Inconsistent);
             }
         }

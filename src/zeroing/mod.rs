@@ -93,6 +93,13 @@ pub(crate) struct Shown {
     pub(crate) rounding: (f32, f32),
 }
 
+impl Shown {
+    /// The same as if the zeros had borne out the set-up.
+    pub(crate) fn not_widened(self) -> Self {
+        Self { widening: 1.0, rate_widening: 1.0, ..self }
+    }
+}
+
 /// An onset before so many innovations is as good as the beginning of the zero.
 const EARLY_INNOVATIONS: u16 = 16;
 
@@ -141,6 +148,7 @@ impl Zeroing {
         self.cusum = Cusum::default();
         self.checkpoint = None;
         self.gate = Gate::default();
+        self.noise.drop_sum();
         self.resting = self.resting.saturating_add(self.pending);
         self.pending = 0;
         self.warmth.release_level();

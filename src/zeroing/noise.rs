@@ -11,6 +11,10 @@ pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
 /// given, so that a change is followed.
 const SETUP_FREEDOM: f32 = 16.0;
 const MOST_FREEDOM: f32 = 4096.0;
+/// Innovations in a sum; the sums that the set-up's figures are worth, and the most that the observed ones are given.
+const SUMMED: u8 = 16;
+const SETUP_SUMS: f32 = 8.0;
+const MOST_SUMS: f32 = 64.0;
 /// Zeros that the set-up's wander is worth against the observed one, the most that these are given, and the most that a
 /// single zero may surprise, as a ratio of variances.
 const SETUP_ZEROS: f32 = 4.0;
@@ -31,6 +35,11 @@ pub(super) struct NoiseSeen {
     /// Mean square of the innovations over what was expected, and the number of them that it rests on.
     dispersion: f32,
     innovations: f32,
+    /// The same for sums of so many innovations in a row; and the sum being made.
+    slow_dispersion: f32,
+    sums: f32,
+    sum: f32,
+    summed: u8,
     /// The same for the drift that each zero found over what the zeros before it said, and the number of zeros.
     rate_dispersion: f32,
     zeros: f32,
@@ -45,6 +54,10 @@ impl NoiseSeen {
             freedom: SETUP_FREEDOM,
             dispersion: 1.0,
             innovations: SETUP_INNOVATIONS,
+            slow_dispersion: 1.0,
+            sums: SETUP_SUMS,
+            sum: 0.0,
+            summed: 0,
             rate_dispersion: 1.0,
             zeros: SETUP_ZEROS,
             seen: false,
@@ -72,17 +85,19 @@ impl NoiseSeen {
     }
 
     /// Factor on variances that rest on the drift: what the drifts of successive zeros differ by over what the walks of the
-    /// set-up allow. It follows from zero to zero, and only widens.
+    /// set-up allow, or sums of innovations over what they should be. It only widens.
     pub(super) fn rate_widening(&self) -> f32 {
         let rate = if self.rate_percent().is_some() { self.rate_dispersion } else { 1.0 };
-        rate.max(self.widening())
+        let off = self.slow_dispersion - 1.0;
+        let slow = if off > 0.0 && off * off * self.sums > 32.0 { self.slow_dispersion } else { 1.0 };
+        rate.max(slow).max(self.widening())
     }
 
-    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more: the mean square is 3 of its standard
+    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more: the mean square is 5 of its standard
     /// deviations, `sqrt(2 / n)`, above 1.
     pub(super) fn rate_percent(&self) -> Option<u16> {
         let off = self.rate_dispersion - 1.0;
-        let clear = off > 0.0 && off * off * self.zeros > 18.0;
+        let clear = off > 0.0 && off * off * self.zeros > 50.0;
         clear.then(|| (100.0 * math::sqrt(self.rate_dispersion)) as u16)
     }
 
@@ -136,5 +151,20 @@ impl NoiseSeen {
         let square = (deviation * deviation).min(9.0) * self.dispersion();
         self.dispersion += (square - self.dispersion) / (self.innovations + 1.0);
         self.innovations = (self.innovations + 1.0).min(MOST_INNOVATIONS);
+        // Walks that are understated show in sums of innovations, which should be as independent as single ones.
+        self.sum += deviation.clamp(-3.0, 3.0);
+        self.summed += 1;
+        if self.summed >= SUMMED {
+            let square = self.sum * self.sum * (1.0 / SUMMED as f32);
+            self.slow_dispersion += (square.min(MOST_SURPRISE) - self.slow_dispersion) / (self.sums + 1.0);
+            self.sums = (self.sums + 1.0).min(MOST_SUMS);
+            self.drop_sum();
+        }
+    }
+
+    /// A sum must not reach over a break in the zero.
+    pub(super) fn drop_sum(&mut self) {
+        self.sum = 0.0;
+        self.summed = 0;
     }
 }
