@@ -30,6 +30,14 @@ pub enum Event {
     /// Input began during a zero, at this tick at the latest found. The zero is not used from there on; what arrives is
     /// kept in the run that follows.
     InputInZero,
+    /// Single samples scatter clearly otherwise than `readout_counts` says: by more than a fifth, either way. Readings use
+    /// the observed figure. Hum counts as scatter. Stated at the end of a zero.
+    ReadoutNoise {
+        /// Of the set-up with rounding, hundredths of a count rms.
+        stated_centicounts: u16,
+        /// As the blocks of zero samples show it, hundredths of a count rms.
+        observed_centicounts: u16,
+    },
     /// The zeros scatter by so many per cent of what the set-up's noise figures say, clearly not 100. Where it is more,
     /// uncertainties are widened by as much. Stated at the end of a zero.
     NoiseFigures {
@@ -164,9 +172,9 @@ pub enum Trust {
     Invalid,
 }
 
-/// The notices of one step, oldest first; never more than 10.
+/// The notices of one step, oldest first; never more than 12.
 #[derive(Clone, Debug, Default)]
-pub struct Notices(heapless::Vec<Notice, 10>);
+pub struct Notices(heapless::Vec<Notice, 12>);
 
 impl Notices {
     /// The notices, oldest first.
@@ -180,7 +188,7 @@ impl Notices {
     }
 
     pub(crate) fn push(&mut self, tick: u32, event: Event) {
-        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the eleventh cannot come.
+        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the thirteenth cannot come.
         let _ = self.0.push(Notice { tick, event });
     }
 }

@@ -1,6 +1,6 @@
 //! A wander of the offset that the set-up understates: successive zeros show it, and uncertainties follow.
 
-use brimline::{Channel, Charge, Circuit, Converter, Mode, Noise, Policy, Sample, Setup};
+use brimline::{Channel, Charge, Circuit, Converter, Event, Mode, Noise, Policy, Sample, Setup};
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, StandardNormal};
@@ -57,5 +57,34 @@ fn coverage_recovers_from_an_understated_wander_within_a_few_zeros() {
         let (early, late) = (share(0, 3), share(10, 30));
         println!("{name:<20} {early:>11.1} % {late:>13.1} %");
         assert!(late >= least, "{name}: {late} %");
+    }
+}
+
+/// What the set-up says of the readout and what the zeros show, both in the notice; and the reading goes by what they show.
+#[test]
+fn a_readout_noise_that_is_not_as_stated_is_told_with_both_figures() {
+    for (noise, expected) in [(3.0, Some(301)), (1.0, None), (0.5, Some(58))] {
+        let mut rng = ChaCha8Rng::seed_from_u64(5);
+        let setup = setup(0.0);
+        let mut channel = Channel::new(&setup);
+        let mut told = None;
+        for k in 1..=1001_u32 {
+            let mode = if k <= 1000 { Mode::Zero } else { Mode::Integrate };
+            let scatter: f64 = StandardNormal.sample(&mut rng);
+            let counts = (noise * scatter).round() as i32;
+            let step = channel.feed(Sample { tick: k * 10_000, counts, mode, temperature: None });
+            for notice in step.notices.iter() {
+                if let Event::ReadoutNoise { stated_centicounts, observed_centicounts } = notice.event {
+                    told = Some((stated_centicounts, observed_centicounts));
+                }
+            }
+        }
+        // One count and its rounding: the root of 1 + 1/12.
+        assert_eq!(told.map(|(stated, _)| stated), expected.map(|_| 104), "{noise}");
+        if let (Some((_, observed)), Some(expected)) = (told, expected) {
+            assert!(observed.abs_diff(expected) <= expected / 10, "{observed} {expected}");
+        }
+        let readout = channel.reading().expect("a run").at_stop.budget.readout.as_coulombs() / 1e-12;
+        assert!((readout / (noise * noise + 1.0 / 12.0_f64).sqrt() - 1.0).abs() < 0.1, "{noise}: {readout}");
     }
 }

@@ -38,7 +38,7 @@ fn wander(
             mode = MODES[rng.random_range(0..4)];
         }
         let step = channel.feed(Sample { tick, counts: codes(&mut rng), mode, temperature: None });
-        assert!(step.notices.iter().count() <= 10);
+        assert!(step.notices.iter().count() <= 12);
         if let Some(reading) = channel.reading() {
             assert_sound(&reading);
         }

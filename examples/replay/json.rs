@@ -70,6 +70,10 @@ struct Notice {
     reason: Option<&'static str>,
     #[serde(skip_serializing_if = "Option::is_none")]
     percent: Option<u16>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    stated_counts: Option<f64>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    observed_counts: Option<f64>,
 }
 
 #[derive(Serialize)]
@@ -137,9 +141,23 @@ fn notice(notice: &NoticeRecord) -> Notice {
         Event::Fault(reason) => Some(reason.name()),
         _ => None,
     };
+    let (stated_counts, observed_counts) = match notice.event {
+        Event::ReadoutNoise { stated_centicounts, observed_centicounts } => {
+            (Some(f64::from(stated_centicounts) / 100.0), Some(f64::from(observed_centicounts) / 100.0))
+        }
+        _ => (None, None),
+    };
     let percent = match notice.event {
         Event::NoiseFigures { percent } | Event::DriftWander { percent } => Some(percent),
         _ => None,
     };
-    Notice { tick: notice.tick, time_s: notice.time_s, kind: words::event_name(notice.event), reason, percent }
+    Notice {
+        tick: notice.tick,
+        time_s: notice.time_s,
+        kind: words::event_name(notice.event),
+        reason,
+        percent,
+        stated_counts,
+        observed_counts,
+    }
 }

@@ -106,6 +106,7 @@ pub(crate) fn event_name(event: Event) -> &'static str {
         Event::ResetDue => "reset_due",
         Event::Spike => "spike",
         Event::InputInZero => "input_in_zero",
+        Event::ReadoutNoise { .. } => "readout_noise",
         Event::NoiseFigures { .. } => "noise_figures",
         Event::DriftWander { .. } => "drift_wander",
         Event::Fault(_) => "fault",
@@ -123,6 +124,11 @@ pub(crate) fn event(event: Event) -> String {
         Event::ResetDue => "reset due: the level could reach a rail before the next sample".to_owned(),
         Event::Spike => "a sample too far off for noise was left out".to_owned(),
         Event::InputInZero => "input began during a zero".to_owned(),
+        Event::ReadoutNoise { stated_centicounts, observed_centicounts } => format!(
+            "single samples scatter by {:.2} counts rms, not {:.2} as readout_counts and rounding say",
+            f64::from(observed_centicounts) / 100.0,
+            f64::from(stated_centicounts) / 100.0
+        ),
         Event::NoiseFigures { percent } => {
             format!("the zeros scatter by {percent} % of what the set-up's noise figures say")
         }

@@ -30,6 +30,9 @@ impl<Q: Integral> Channel<'_, Q> {
     fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.zeroing.leave(tick, self.stop(), derived);
+        if let Some((stated_centicounts, observed_centicounts)) = self.zeroing.readout_centicounts(derived) {
+            notices.push(tick, Event::ReadoutNoise { stated_centicounts, observed_centicounts });
+        }
         if let Some(percent) = self.zeroing.noise_percent() {
             notices.push(tick, Event::NoiseFigures { percent });
         }

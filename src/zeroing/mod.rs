@@ -185,6 +185,11 @@ impl Zeroing {
         self.noise.is_tested()
     }
 
+    /// Noise of single samples, stated and observed, in hundredths of a count rms, if the two are clearly different.
+    pub(crate) fn readout_centicounts(&self, derived: &Derived) -> Option<(u16, u16)> {
+        self.noise.readout_centicounts(derived)
+    }
+
     /// Scatter of the innovations in per cent of the expected, if it is clearly another.
     pub(crate) fn noise_percent(&self) -> Option<u16> {
         self.noise.percent()

@@ -69,6 +69,15 @@ impl NoiseSeen {
         self.sample_var
     }
 
+    /// Noise of single samples, stated and observed, in hundredths of a count rms, if the two are clearly different.
+    pub(super) fn readout_centicounts(&self, derived: &Derived) -> Option<(u16, u16)> {
+        let (stated, observed) = (derived.readout_var, self.sample_var);
+        // 1.44 is 1.2 squared; with 250 degrees of freedom a variance is known to 9 per cent.
+        let differs = observed > 1.44 * stated || 1.44 * observed < stated;
+        let centicounts = |variance| (100.0 * math::sqrt(variance)) as u16;
+        (self.freedom >= 250.0 && differs).then(|| (centicounts(stated), centicounts(observed)))
+    }
+
     /// Whether a block has shown how single samples scatter.
     pub(super) fn has_scatter(&self) -> bool {
         self.freedom > SETUP_FREEDOM
