@@ -76,6 +76,8 @@ pub(crate) struct Zeroing {
     warmth: Warmth,
     /// The drift and its variance as expected when the zero found its level.
     expected_rate: Option<(f32, f32)>,
+    /// How long the latest zero that is over had known its level, ticks.
+    told_ticks: u64,
     /// Ticks and innovations since the zero found its level.
     known_ticks: u64,
     known_innovations: u16,
@@ -124,6 +126,7 @@ impl Zeroing {
             noise: NoiseSeen::new(derived),
             warmth: Warmth::new(derived),
             expected_rate: None,
+            told_ticks: 0,
             known_ticks: 0,
             known_innovations: 0,
         }
@@ -157,9 +160,9 @@ impl Zeroing {
         }
     }
 
-    /// How long the zero has known its level, ticks.
+    /// How long the zero that the drift rests on has known its level, ticks: this one, or the one before while that is longer.
     pub(crate) fn known_ticks(&self) -> u64 {
-        self.known_ticks
+        self.known_ticks.max(self.told_ticks)
     }
 
     /// Whether a run can start on this level.
@@ -170,7 +173,7 @@ impl Zeroing {
     /// What the zeros have shown of the noise.
     pub(crate) fn shown(&self, derived: &Derived) -> Shown {
         let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
-        let known_s = math::seconds(self.known_ticks, derived.tick_s);
+        let known_s = math::seconds(self.known_ticks(), derived.tick_s);
         let rate = if known_s > 0.0 { 2.0 * level / (known_s * known_s) } else { 0.0 };
         Shown {
             sample_var: self.noise.sample_var(),
@@ -242,6 +245,9 @@ impl Zeroing {
     pub(crate) fn leave(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
         self.finish(tick, stop, derived);
         self.judge_rate();
+        if self.known_ticks > 0 {
+            self.told_ticks = self.known_ticks;
+        }
         self.catch_up(derived);
     }
 
@@ -334,6 +340,7 @@ impl Zeroing {
         let wandered = self.flicker_walk(elapsed, derived);
         self.warmth.half_step(&mut self.trend);
         advance(&mut self.trend, elapsed, derived);
+        self.warmth.advance(math::seconds(elapsed, derived.tick_s));
         self.warmth.half_step(&mut self.trend);
         self.warmth.follow();
         self.trend.rest(wandered);
@@ -346,7 +353,7 @@ impl Zeroing {
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.update(&innovation);
         }
-        self.warmth.update(math::seconds(elapsed, derived.tick_s), &innovation);
+        self.warmth.update(&innovation);
         if let Some(checkpoint) = self.checkpoint.as_mut() {
             checkpoint.age = checkpoint.age.saturating_add(elapsed);
         }
@@ -384,6 +391,7 @@ impl Zeroing {
             None => self.resting = self.resting.saturating_add(elapsed),
         }
         self.rest(derived);
+        self.warmth.whole_step(&mut self.trend);
         self.trend.restart(mean.counts, mean.rest, variance);
         self.expected_rate = Some((self.trend.rate(), self.trend.rate_variance()));
         self.level_known = true;

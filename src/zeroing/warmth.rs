@@ -72,6 +72,14 @@ impl Warmth {
         }
     }
 
+    /// The same for warming that no sample of a zero has followed: while the input was open or the switch closed.
+    pub(super) fn whole_step(&mut self, trend: &mut Trend) {
+        self.half_step(trend);
+        self.half_step(trend);
+        self.follow();
+        self.row.with_level = 0.0;
+    }
+
     /// Level and rate move by what the coefficient makes of `area` and `risen`, and have that in common with it.
     fn step(&mut self, trend: &mut Trend, area: f32, risen: f32) {
         let Constant { variance: v, with_level, with_rate, .. } = self.row;
@@ -98,9 +106,13 @@ impl Warmth {
         self.row.with_level = 0.0;
     }
 
-    /// A block of a zero, `dt_s` after the one before.
-    pub(super) fn update(&mut self, dt_s: f32, innovation: &Innovation) {
+    /// Time passes in a zero.
+    pub(super) fn advance(&mut self, dt_s: f32) {
         self.row.advance(dt_s);
+    }
+
+    /// A block of a zero.
+    pub(super) fn update(&mut self, innovation: &Innovation) {
         self.row.update(innovation);
         self.coefficient += core::mem::take(&mut self.row.correction);
     }
