@@ -2,14 +2,15 @@
 
 mod gate;
 mod noise;
+mod samples;
 mod warmth;
 
-use gate::{Gate, Verdict};
+use gate::Gate;
 use noise::NoiseSeen;
 pub(crate) use noise::QUANTISATION_VAR;
 use warmth::Warmth;
 
-use crate::estimate::{Block, BlockMean, Bracket, Cusum, Trend, Walk};
+use crate::estimate::{Block, Bracket, Cusum, Trend, Walk};
 use crate::math;
 use crate::quantity::Temperature;
 use crate::setup::Derived;
@@ -101,13 +102,6 @@ impl Shown {
         Self { widening: 1.0, rate_widening: 1.0, ..self }
     }
 }
-
-/// An onset before so many innovations is as good as the beginning of the zero.
-const EARLY_INNOVATIONS: u16 = 16;
-
-/// Variance by which flicker parts the mean rates of two equal stretches of time side by side, 4 ln 2 (IEEE Std 1139-2008:
-/// twice the Allan variance); taken for what is new in each e-fold of a zero's age. Simulated zeros bear it out.
-const FLICKER_SHARE: f32 = 2.772_588_7;
 
 impl Zeroing {
     pub(crate) fn new(derived: &Derived) -> Self {
@@ -203,44 +197,6 @@ impl Zeroing {
         self.noise.rate_percent()
     }
 
-    /// Time in a zero without a usable sample.
-    pub(crate) fn skip(&mut self, ticks: u32) {
-        self.pending = self.pending.saturating_add(u64::from(ticks));
-        self.block.skip(ticks);
-    }
-
-    /// A sample in a zero, `ticks` after the one before.
-    pub(crate) fn take(&mut self, tick: u32, counts: i32, ticks: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
-        if self.disturbed {
-            self.skip(ticks);
-            return Taken::Used;
-        }
-        match self.judge(tick, counts, ticks, derived) {
-            Verdict::Noise => {}
-            Verdict::Spike => {
-                self.skip(ticks);
-                return Taken::Spike;
-            }
-            Verdict::Onset(since) => {
-                self.skip(ticks);
-                self.roll_back();
-                return Taken::Onset { since, contradicts_run: false };
-            }
-        }
-        self.pending = self.pending.saturating_add(u64::from(ticks));
-        if self.block.push(counts, ticks, derived.block_ticks) {
-            return self.finish_block(tick, stop, derived);
-        }
-        Taken::Used
-    }
-
-    /// The zero ends or is asked about before its first block was full: what there is of it has to do.
-    pub(crate) fn finish(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
-        if !self.level_known && !self.disturbed {
-            self.finish_block(tick, stop, derived);
-        }
-    }
-
     /// The zero is over.
     pub(crate) fn leave(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
         self.finish(tick, stop, derived);
@@ -301,118 +257,6 @@ impl Zeroing {
         let resting = core::mem::take(&mut self.resting);
         let step = core::mem::take(&mut self.rate_step);
         self.trend.rest(derived.rate_walk * math::seconds(resting, derived.tick_s) + step);
-    }
-
-    /// Whether a sample is too far off to be noise; while too little is known to tell, none is.
-    fn judge(&mut self, tick: u32, counts: i32, ticks: u32, derived: &Derived) -> Verdict {
-        if !self.level_known || (derived.block_ticks > 0 && !self.noise.has_scatter()) {
-            return Verdict::Noise;
-        }
-        let ahead_s = math::seconds(self.pending.saturating_add(u64::from(ticks)), derived.tick_s);
-        let expected = self.trend.residual() + self.trend.rate() * ahead_s;
-        let off = i64::from(counts).saturating_sub(self.trend.anchor()) as f32 - expected;
-        let spread = ahead_s * (2.0 * self.trend.covariance() + ahead_s * self.trend.rate_variance());
-        let walked = derived.level_walk * ahead_s;
-        let sample_var = self.noise.sample_var().max(derived.readout_var);
-        self.gate.judge(tick, off, sample_var + self.trend.level_variance() + spread + walked)
-    }
-
-    fn finish_block(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
-        let Some(mean) = self.block.take() else { return Taken::Used };
-        if !self.level_known && self.noise.is_torn(&mean) {
-            return Taken::Spike;
-        }
-        self.noise.take_block(&mean, derived);
-        // Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
-        // what the walk does to a run longer than the block.
-        let variance = if derived.dithered {
-            derived.readout_var / f32::from(mean.samples)
-        } else {
-            // Rounding that nothing dithers does not average ...
-            derived.readout_var
-        };
-        if !self.level_known {
-            self.find_level(&mean, variance, stop, derived);
-            return Taken::Used;
-        }
-        let elapsed = self.pending.saturating_sub(mean.age);
-        self.pending -= elapsed;
-        let wandered = self.flicker_walk(elapsed, derived);
-        self.warmth.half_step(&mut self.trend);
-        advance(&mut self.trend, elapsed, derived);
-        self.warmth.advance(math::seconds(elapsed, derived.tick_s));
-        self.warmth.half_step(&mut self.trend);
-        self.warmth.follow();
-        self.trend.rest(wandered);
-        if let Some(bracket) = self.bracket.as_mut() {
-            bracket.advance(math::seconds(elapsed, derived.tick_s));
-        }
-        // ... and keeps its sign over many blocks.
-        let variance = if derived.dithered { variance } else { 4.0 * variance };
-        let innovation = self.trend.update(mean.counts, mean.rest, variance);
-        if let Some(bracket) = self.bracket.as_mut() {
-            bracket.update(&innovation);
-        }
-        self.warmth.update(&innovation);
-        if let Some(checkpoint) = self.checkpoint.as_mut() {
-            checkpoint.age = checkpoint.age.saturating_add(elapsed);
-        }
-        self.known_ticks = self.known_ticks.saturating_add(elapsed);
-        self.known_innovations = self.known_innovations.saturating_add(1);
-        let deviation = innovation.residual * math::sqrt(innovation.precision / self.noise.dispersion());
-        self.noise.take_innovation(deviation);
-        if self.cusum.take(deviation, derived.onset_threshold) {
-            let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
-            self.roll_back();
-            return Taken::Onset { since, contradicts_run: known < EARLY_INNOVATIONS };
-        }
-        if self.cusum.is_quiet() || self.checkpoint.is_none() {
-            let known = self.known_innovations;
-            self.checkpoint =
-                Some(Checkpoint { trend: self.trend, bracket: self.bracket, warmth: self.warmth, tick, age: 0, known });
-        }
-        Taken::Used
-    }
-
-    /// The first block of a zero: the level starts from it, and a run that has just stopped is bracketed.
-    fn find_level(&mut self, mean: &BlockMean, variance: f32, stop: Option<Stop>, derived: &Derived) {
-        let elapsed = self.pending.saturating_sub(mean.age);
-        self.pending -= elapsed;
-        match stop {
-            // Level and baseline drift together from the stop on.
-            Some(stop) if stop.unbroken => {
-                advance(&mut self.trend, elapsed, derived);
-                self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, variance, &self.trend));
-            }
-            Some(stop) => {
-                self.bracket = Some(Bracket::on_rate(stop.last_counts, stop.last_var, &self.trend));
-                self.resting = self.resting.saturating_add(elapsed);
-            }
-            None => self.resting = self.resting.saturating_add(elapsed),
-        }
-        self.rest(derived);
-        self.warmth.whole_step(&mut self.trend);
-        self.trend.restart(mean.counts, mean.rest, variance);
-        self.expected_rate = Some((self.trend.rate(), self.trend.rate_variance()));
-        self.level_known = true;
-    }
-
-    /// How far flicker makes the rate wander in the next `ticks` of a zero: it has as much variance in each octave of time, so
-    /// the older the zero the less is new.
-    fn flicker_walk(&self, ticks: u64, derived: &Derived) -> f32 {
-        let age = self.known_ticks.saturating_add(ticks).max(1);
-        FLICKER_SHARE * derived.flicker * (ticks as f32 / age as f32)
-    }
-
-    /// Forgets what was learned since the sums were last empty.
-    fn roll_back(&mut self) {
-        self.disturbed = true;
-        if let Some(checkpoint) = self.checkpoint.take() {
-            self.trend = checkpoint.trend;
-            self.bracket = checkpoint.bracket;
-            self.warmth = checkpoint.warmth;
-            self.pending = self.pending.saturating_add(checkpoint.age);
-        }
     }
 }
 
