@@ -163,3 +163,21 @@ fn noise_is_tested_once_there_were_blocks_and_zeros_enough() {
         assert_eq!(zeros, after, "zeros of {samples} samples");
     }
 }
+
+/// A level that wanders by less than half a block's noise, but for seconds on end: single innovations do not show it, sums
+/// of them do, and the drift is less certain for it.
+#[test]
+fn what_only_sums_of_innovations_show_widens_the_drift() {
+    let of = |wander: f64| {
+        let setup = Setup::new(CIRCUIT, CONVERTER, NOISE, POLICY);
+        let mut script = Script::new(&setup);
+        for k in 0..18 {
+            script.level += if k % 2 == 0 { wander } else { -wander };
+            script.zero(320);
+        }
+        assert_eq!(told(&script, Event::InputInZero), 0);
+        drift(&script).1
+    };
+    let (still, wandering) = (of(0.0), of(0.3));
+    assert!(wandering > 1.3 * still, "{wandering} and {still}");
+}
