@@ -35,6 +35,8 @@ pub(crate) enum Stage {
     Stopped {
         /// What was known then.
         at_stop: Total,
+        /// Its variance if nothing had been widened, counts^2.
+        plain_var: f32,
         /// Whether the level went on into the zero without an interruption.
         unbroken: bool,
     },
@@ -84,16 +86,16 @@ pub(crate) struct Run {
 }
 
 impl Total {
-    fn variance(&self) -> f32 {
+    pub(crate) fn variance(&self) -> f32 {
         self.readout + self.input_noise + self.drift + self.dead_time
     }
 
     /// Whether a closed total differs from the one at stop by no more than 4 standard deviations: what the closing zero has
     /// added has the variance that it has taken away, but for the last sample, which only the one at stop rests on.
-    /// `self` is the closed total as if nothing had been widened; what was gained is, as the zeros have shown since.
-    pub(crate) fn agrees_with(&self, at_stop: &Self, shown: &Shown) -> bool {
+    /// `self` and `plain_var` are as if nothing had been widened; what was gained is, as the zeros have shown since.
+    pub(crate) fn agrees_with(&self, at_stop: &Self, plain_var: f32, shown: &Shown) -> bool {
         let difference = self.movement_q16.saturating_sub(at_stop.movement_q16) as f32 * (1.0 / 65536.0);
-        let gained = (at_stop.variance() - self.variance()).max(0.0);
+        let gained = (plain_var - self.variance()).max(0.0);
         difference * difference <= 16.0 * (gained * shown.rate_widening + 2.0 * shown.sample_var)
     }
 }

@@ -113,7 +113,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         let mut run = self.run?;
         let shown = self.zeroing.shown(derived);
         let noise_tested = self.zeroing.noise_is_tested();
-        let Stage::Stopped { at_stop, .. } = run.stage else {
+        let Stage::Stopped { at_stop, plain_var, .. } = run.stage else {
             let mut baseline = self.zeroing.trend;
             self.settle(&mut run, &mut baseline);
             advance(&mut baseline, self.zeroing.pending, derived);
@@ -132,7 +132,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             if self.drift_outside_limits() {
                 run.reasons.insert(Reason::DriftOutsideLimits);
             }
-            if !plain.agrees_with(&at_stop, &shown) {
+            if !plain.agrees_with(&at_stop, plain_var, &shown) {
                 run.reasons.insert(Reason::Inconsistent);
             }
         }

@@ -72,7 +72,8 @@ impl<Q: Integral> Channel<'_, Q> {
                 run.drift_q16 = run.drifted_q16(&self.zeroing.trend);
                 let at_stop = run.total(&self.zeroing.trend, &shown, derived);
                 let unbroken = matches!(run.stage, Stage::Integrating);
-                run.stage = Stage::Stopped { at_stop, unbroken };
+                let plain_var = run.total(&self.zeroing.trend, &shown.not_widened(), derived).variance();
+                run.stage = Stage::Stopped { at_stop, plain_var, unbroken };
                 if let Some(crossing) = run.crossing.take() {
                     self.zeroing.resting =
                         self.zeroing.resting.saturating_add(crossing.dead).saturating_add(crossing.held);

@@ -138,7 +138,7 @@ impl Trend {
         let rate = (self.rate_variance + added.rate).min(RATE_VARIANCE_MAX);
         if rate > 0.0 {
             self.coupling = cross / rate;
-            self.level_given_rate = (level - cross * self.coupling).max(level * 1e-4);
+            self.level_given_rate = (level - cross * self.coupling).max(level * 1e-6);
             self.rate_variance = rate;
         }
     }
