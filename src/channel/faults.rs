@@ -31,11 +31,7 @@ impl<Q: Integral> Channel<'_, Q> {
     /// The counter began anew: nobody knows how much time passed.
     pub(super) fn lose_time(&mut self, tick: u32, notices: &mut Notices) {
         self.window.clear();
-        if self.is_running() {
-            self.mark_run(Reason::Gap, tick, notices);
-        } else {
-            self.lose_level();
-        }
+        self.gap(false, tick, notices);
     }
 
     fn lose_level(&mut self) {

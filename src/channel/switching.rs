@@ -127,11 +127,9 @@ impl<Q: Integral> Channel<'_, Q> {
         self.reset_ticks = 0;
         self.reset_failed = false;
         self.reset_advised = false;
-        let in_hold = self.mode == Some(Mode::Hold);
         if let Some(run) = self.run.as_mut().filter(|run| run.is_running()) {
             if let Some(crossing) = run.crossing.as_mut() {
                 crossing.reset = true;
-                crossing.input_open |= in_hold;
             }
             notices.push(tick, Event::ResetClosed);
         }

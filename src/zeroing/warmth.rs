@@ -89,7 +89,7 @@ impl Warmth {
             cross: area * with_rate + risen * with_level + area * risen * v,
             rate: risen * (risen * v + 2.0 * with_rate),
         });
-        self.row.with_level += area * v;
+        // An area comes only with the end of a run, where the level is let go: no covariance with it is kept.
         self.row.with_rate += risen * v;
     }
 
