@@ -13,6 +13,40 @@ pub(crate) enum Elapsed {
     Restarted,
 }
 
+/// A length of time, and how finely it was sampled.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub(crate) struct Span {
+    pub(crate) ticks: u64,
+    /// Sum of the squares of the steps between samples, ticks^2.
+    pub(crate) squares: u64,
+}
+
+impl Span {
+    /// Adds the step to another sample.
+    pub(crate) fn add(&mut self, ticks: u32) {
+        self.ticks = self.ticks.saturating_add(u64::from(ticks));
+        self.squares = self.squares.saturating_add(u64::from(ticks) * u64::from(ticks));
+    }
+
+    /// Adds a length that follows this one.
+    pub(crate) fn join(&mut self, other: Self) {
+        self.ticks = self.ticks.saturating_add(other.ticks);
+        self.squares = self.squares.saturating_add(other.squares);
+    }
+
+    /// Leaves the latest `ticks` and gives the time before them, with the samples of all of it.
+    pub(crate) fn leave(&mut self, ticks: u64) -> Self {
+        let left = Self { ticks: self.ticks.min(ticks), squares: 0 };
+        let all = core::mem::replace(self, left);
+        Self { ticks: all.ticks.saturating_sub(ticks), ..all }
+    }
+
+    /// Adds time in which no sample mattered.
+    pub(crate) fn add_blind(&mut self, ticks: u64) {
+        self.ticks = self.ticks.saturating_add(ticks);
+    }
+}
+
 /// A free-running 32-bit counter.
 ///
 /// A step of up to 2^31 - 1 ticks is time that passed; a longer one cannot be told from a counter that ran backwards.

@@ -15,6 +15,11 @@ impl Health {
         counts < derived.usable.0 || counts > derived.usable.1
     }
 
+    /// The latest reading, 2^-16 counts; 0 before the first.
+    pub(crate) fn last_q16(&self) -> i64 {
+        i64::from(self.last.unwrap_or(0)) << 16
+    }
+
     /// Takes a sample.
     pub(crate) fn take(&mut self, counts: i32) {
         self.repeats = if self.last == Some(counts) { self.repeats.saturating_add(1) } else { 1 };
@@ -37,10 +42,10 @@ impl Health {
         counts < i64::from(window.0) || counts > i64::from(window.1)
     }
 
-    /// Whether a drift lies outside the data-sheet limits by more than 4 of its own uncertainties. A limit of 0 means
-    /// that the drift is held at 0, and nothing can be told.
-    pub(crate) fn drift_outside_limits(rate: f32, rate_variance: f32, derived: &Derived) -> bool {
-        let excess = crate::math::abs(rate) - derived.rate_limit;
-        derived.rate_limit > 0.0 && excess > 0.0 && excess * excess > 16.0 * rate_variance
+    /// Whether a drift or droop lies outside the data-sheet limit by more than 4 of its own uncertainties. A limit of 0
+    /// means that the rate is held at 0, and nothing can be told.
+    pub(crate) fn rate_outside(rate: f32, rate_variance: f32, limit: f32) -> bool {
+        let excess = crate::math::abs(rate) - limit;
+        limit > 0.0 && excess > 0.0 && excess * excess > 16.0 * rate_variance
     }
 }

@@ -23,6 +23,8 @@ pub(crate) struct Ledger {
     pub(crate) dead_drift_q16: i64,
     /// Variance from the fits beside the interruptions and from the interpolation, counts^2.
     pub(crate) dead_time_var: f32,
+    /// How much of the pedestal is in the total: its error adds up from reset to reset.
+    pub(crate) pedestal_lever: f32,
     /// Change of the run's walk variance, counts^2; may be negative.
     pub(crate) walk_var: f32,
 }
@@ -64,7 +66,7 @@ impl Ledger {
             Bridged::Interpolated => difference * difference - noise,
             Bridged::Guessed => slopes.0 * slopes.0 * 12.0,
         };
-        let whole = whole_q16(i64::from(before.anchor).saturating_sub(i64::from(after.anchor)));
+        let whole = before.anchor_q16.saturating_sub(after.anchor_q16);
         let rest = to_q16(before.level(slopes.0)).saturating_sub(to_q16(after.level(slopes.1)));
         self.carried_q16 = self.carried_q16.saturating_add(whole.saturating_add(rest));
         self.interpolated_q16 = self.interpolated_q16.saturating_add(interpolated);
@@ -72,6 +74,7 @@ impl Ledger {
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
         let fits = before.readout_variance(half) + after.readout_variance(half);
         self.dead_time_var = (self.dead_time_var + fits + input).clamp(0.0, LEVEL_VARIANCE_MAX);
+        self.pedestal_lever += after.hinted(half);
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
         let walk = before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
         self.walk_var = (self.walk_var + walk).clamp(-LEVEL_VARIANCE_MAX, LEVEL_VARIANCE_MAX);

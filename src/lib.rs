@@ -7,10 +7,12 @@
 mod channel;
 mod clock;
 mod decide;
+mod droop;
 mod error;
 pub mod estimate;
 mod health;
 mod ledger;
+mod level;
 mod math;
 mod notice;
 mod quantity;
@@ -21,15 +23,16 @@ mod setup;
 #[cfg(feature = "embedded-hal")]
 mod switches;
 pub mod unit;
+mod verify;
 mod window;
 mod zeroing;
 
 pub use channel::Channel;
 pub use error::SetupError;
 pub use notice::{Event, Notice, Notices, Reason, Reasons, Trust};
-pub use quantity::{Charge, Flux, Integral, Measured, RadiantExposure, Temperature, VoltageRate};
+pub use quantity::{Charge, Current, Flux, Integral, Measured, RadiantExposure, Temperature, Voltage, VoltageRate};
 pub use reading::{Budget, Estimate, Reading};
 pub use sample::{Mode, Sample, Step};
-pub use setup::{Circuit, Converter, Noise, Policy, Setup, TemperatureLaw};
+pub use setup::{Absorption, Circuit, Converter, Linearity, Noise, Policy, Setup, SoakageBranch, TemperatureLaw};
 #[cfg(feature = "embedded-hal")]
 pub use switches::Switches;

@@ -20,6 +20,11 @@ pub(crate) fn exp2(x: f32) -> f32 {
     libm::exp2f(x)
 }
 
+/// `e^x - 1`, without loss near 0.
+pub(crate) fn exp_minus_1(x: f32) -> f32 {
+    libm::expm1f(x)
+}
+
 /// Magnitude.
 pub(crate) fn abs(x: f32) -> f32 {
     libm::fabsf(x)

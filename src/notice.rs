@@ -25,6 +25,25 @@ pub enum Event {
     ResetOpened,
     /// A reset was due by the headroom guard; stated once until the next reset.
     ResetDue,
+    /// A reset failed, and so did this many in a row with it. Another one is asked for until the policy's
+    /// `reset_attempts` are used up.
+    ResetFailed {
+        /// Failures in a row.
+        in_a_row: u8,
+    },
+    /// With the reset switch closed the output settled slowly: with so many per cent of `switch_resistance_ohm` times the
+    /// capacitance. A switch whose resistance grows from reset to reset will fail.
+    SettlingSlow {
+        /// Observed over expected time constant, per cent; at least the former.
+        percent: u16,
+    },
+    /// The drift of a zero differs from that of the zero before by more than 5 of its uncertainties, and in the way of a level
+    /// that decays toward the reset level: a leak of reset switch or board that the set-up does not know, or one that it
+    /// has wrong. Stated at the end of a zero.
+    Decay {
+        /// The time constant that would explain it, s.
+        time_constant_s: u32,
+    },
     /// A sample of a zero was too far off for noise, and was left out.
     Spike,
     /// Input began during a zero, at this tick at the latest found. The zero is not used from there on; what arrives is
@@ -81,11 +100,19 @@ pub enum Reason {
     InputInZero = 8,
     /// The value at stop and the closed one differ by more than the closing zero can have added.
     Inconsistent = 9,
+    /// The droop of a hold lies outside what the bias current can cause by more than 4 of its uncertainties: the input or
+    /// the reset switch leaks.
+    DroopOutsideLimits = 10,
+    /// After a reset the level stayed where the closed switch had held it, although drift, noise or pedestal should have
+    /// moved it.
+    SwitchStuckClosed = 11,
+    /// As many resets in a row as the policy allows have failed: the switch is given up until it is repaired.
+    SwitchFailed = 12,
 }
 
 impl Reason {
     /// All reasons, in the order of their bits.
-    pub const ALL: [Self; 10] = [
+    pub const ALL: [Self; 13] = [
         Self::AtRail,
         Self::Gap,
         Self::Jump,
@@ -96,6 +123,9 @@ impl Reason {
         Self::ClockStalled,
         Self::InputInZero,
         Self::Inconsistent,
+        Self::DroopOutsideLimits,
+        Self::SwitchStuckClosed,
+        Self::SwitchFailed,
     ];
 
     /// A stable name for logs: lower case, words joined by `_`.
@@ -111,6 +141,9 @@ impl Reason {
             Self::ClockStalled => "clock_stalled",
             Self::InputInZero => "input_in_zero",
             Self::Inconsistent => "inconsistent",
+            Self::DroopOutsideLimits => "droop_outside_limits",
+            Self::SwitchStuckClosed => "switch_stuck_closed",
+            Self::SwitchFailed => "switch_failed",
         }
     }
 
@@ -172,9 +205,9 @@ pub enum Trust {
     Invalid,
 }
 
-/// The notices of one step, oldest first; never more than 12.
+/// The notices of one step, oldest first; never more than 16.
 #[derive(Clone, Debug, Default)]
-pub struct Notices(heapless::Vec<Notice, 12>);
+pub struct Notices(heapless::Vec<Notice, 16>);
 
 impl Notices {
     /// The notices, oldest first.
@@ -188,7 +221,7 @@ impl Notices {
     }
 
     pub(crate) fn push(&mut self, tick: u32, event: Event) {
-        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the thirteenth cannot come.
+        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the seventeenth cannot come.
         let _ = self.0.push(Notice { tick, event });
     }
 }

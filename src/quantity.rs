@@ -54,6 +54,14 @@ quantity!(
     Flux, "V s", from_volt_seconds, as_volt_seconds
 );
 quantity!(
+    /// Voltage: the amplifier's offset, referred to the input.
+    Voltage, "V", from_volts, as_volts
+);
+quantity!(
+    /// Current: the amplifier's bias, referred to the input.
+    Current, "A", from_amperes, as_amperes
+);
+quantity!(
     /// Rate of change of the integrator's output voltage: the drift.
     VoltageRate, "V/s", from_volts_per_second, as_volts_per_second
 );

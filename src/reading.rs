@@ -22,6 +22,8 @@ pub struct Budget<Q> {
     pub drift: Q,
     /// Fits beside the resets and interpolation of the input while the switch was closed.
     pub dead_time: Q,
+    /// Uncertain figures of leak and soakage, and the readout noise that the leak integrates.
+    pub leak_and_soakage: Q,
     /// Relative uncertainty of the gain, times the value.
     pub scale: Q,
 }
@@ -40,9 +42,8 @@ impl<Q: Integral> Estimate<Q> {
     fn new(setup: &Setup<Q>, total: &Total) -> Self {
         let per_count = setup.derived().integral_per_count;
         let counts = from_q16(total.movement_q16);
-        let scale = (counts * setup.circuit().gain_u_rel) as f32;
-        let scale = scale * scale;
-        let variance = total.readout + total.input_noise + total.drift + total.dead_time + scale;
+        let scale = counts as f32 * counts as f32 * setup.derived().gain_var_rel;
+        let variance = total.variance() + scale;
         let u = |variance: f32| {
             let magnitude = f64::from(math::sqrt(variance)) * per_count;
             Q::from_si_value(if magnitude < 0.0 { -magnitude } else { magnitude })
@@ -54,6 +55,7 @@ impl<Q: Integral> Estimate<Q> {
                 input_noise: u(total.input_noise),
                 drift: u(total.drift),
                 dead_time: u(total.dead_time),
+                leak_and_soakage: u(total.leak_and_soakage),
                 scale: u(scale),
             },
         }
@@ -111,7 +113,7 @@ impl<Q: Integral> Reading<Q> {
         let latest = closed.unwrap_or(at_stop);
         let integral = |q16: i64| Q::from_si_value(from_q16(q16) * setup.derived().integral_per_count);
         let interpolated_q16 = run.ledger.interpolated_q16.saturating_sub(run.ledger.dead_drift_q16);
-        let ticks = run.driven.saturating_add(run.held);
+        let ticks = run.driven.ticks.saturating_add(run.held);
         Self {
             at_stop: Estimate::new(setup, at_stop),
             closed: closed.map(|total| Estimate::new(setup, total)),

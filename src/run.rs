@@ -1,12 +1,14 @@
 //! One run: from leaving zero to the end of the next zero, through resets and holds.
 
+use crate::clock::Span;
 use crate::estimate::{Bracket, Edge, Trend, Walk, movement_q16};
 use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
-use crate::setup::Derived;
-use crate::window::Opening;
-use crate::zeroing::{QUANTISATION_VAR, Shown, Stop};
+use crate::setup::{Derived, QUANTISATION_VAR};
+use crate::verify::Settled;
+use crate::window::{Opened, Opening};
+use crate::zeroing::{Shown, Stop};
 
 /// An interruption of a run that waits for the line after it.
 #[derive(Clone, Copy, Debug, Default)]
@@ -37,6 +39,8 @@ pub(crate) enum Stage {
         at_stop: Total,
         /// Its variance if nothing had been widened, counts^2.
         plain_var: f32,
+        /// What one standard uncertainty of leak and of soakage makes of it, counts.
+        considered: [f32; 2],
         /// Whether the level went on into the zero without an interruption.
         unbroken: bool,
     },
@@ -52,6 +56,7 @@ pub(crate) struct Total {
     pub(crate) input_noise: f32,
     pub(crate) drift: f32,
     pub(crate) dead_time: f32,
+    pub(crate) leak_and_soakage: f32,
 }
 
 /// A run's books.
@@ -68,9 +73,13 @@ pub(crate) struct Run {
     pub(crate) opening: Option<Opening>,
     /// When the present segment began.
     pub(crate) opened_tick: u32,
-    pub(crate) last_counts: i32,
-    /// Ticks up to the last integrating sample over which the baseline drifts (holds left out).
-    pub(crate) driven: u64,
+    /// Leak and soakage then, 2^-16 counts, and the settled reset level, where the segment began with a reset.
+    pub(crate) opened_terms_q16: i64,
+    pub(crate) settled: Option<Settled>,
+    /// The last integrating sample, 2^-16 counts.
+    pub(crate) last_q16: i64,
+    /// Time up to it over which the baseline drifts (holds left out).
+    pub(crate) driven: Span,
     /// Ticks in holds.
     pub(crate) held: u64,
     /// How long the zero before it had known its level, ticks.
@@ -87,16 +96,17 @@ pub(crate) struct Run {
 
 impl Total {
     pub(crate) fn variance(&self) -> f32 {
-        self.readout + self.input_noise + self.drift + self.dead_time
+        self.readout + self.input_noise + self.drift + self.dead_time + self.leak_and_soakage
     }
 
     /// Whether a closed total differs from the one at stop by no more than 4 standard deviations: what the closing zero has
     /// added has the variance that it has taken away, but for the last sample, which only the one at stop rests on.
     /// `self` and `plain_var` are as if nothing had been widened; what was gained is, as the zeros have shown since.
-    pub(crate) fn agrees_with(&self, at_stop: &Self, plain_var: f32, shown: &Shown) -> bool {
+    /// `considered` is the variance by which uncertain figures of leak and soakage part the two.
+    pub(crate) fn agrees_with(&self, at_stop: &Self, plain_var: f32, considered: f32, shown: &Shown) -> bool {
         let difference = self.movement_q16.saturating_sub(at_stop.movement_q16) as f32 * (1.0 / 65536.0);
         let gained = (plain_var - self.variance()).max(0.0);
-        difference * difference <= 16.0 * (gained * shown.rate_widening + 2.0 * shown.sample_var)
+        difference * difference <= 16.0 * (gained * shown.rate_widening + 2.0 * shown.sample_var + considered)
     }
 }
 
@@ -113,8 +123,10 @@ impl Run {
             crossing: None,
             opening: None,
             opened_tick: tick,
-            last_counts: 0,
-            driven: 0,
+            opened_terms_q16: 0,
+            settled: None,
+            last_q16: 0,
+            driven: Span::default(),
             held: 0,
             zeroed: 0,
             drift_q16: 0,
@@ -145,8 +157,11 @@ impl Run {
         let half_s = 0.5 * math::seconds(crossing.dead, derived.tick_s);
         self.opening = Some(Opening::new(&after, half_s, self.opened_tick, self.end_tick));
         let Some(before) = crossing.before else {
-            baseline.restart(after.anchor, after.level(baseline.rate()), after.readout_variance(0.0));
+            let rest = (after.anchor_q16 & 0xFFFF) as f32 * (1.0 / 65536.0);
+            let level = rest + after.level(baseline.rate());
+            baseline.restart(after.anchor_q16 >> 16, level, after.readout_variance(0.0));
             self.ledger.walk_var += after.walk_variance(0.0);
+            self.ledger.pedestal_lever += after.hinted(0.0);
             self.begin_on(baseline);
             if after.slope.is_some() {
                 return Bridged::Interpolated;
@@ -160,25 +175,28 @@ impl Run {
 
     /// The total up to the last integrating sample, with the baseline at that time.
     ///
-    /// What rests on the zeros is widened by what they have shown of the noise.
-    pub(crate) fn total(&self, baseline: &Trend, shown: &Shown, derived: &Derived) -> Total {
-        let driven_s = math::seconds(self.driven, derived.tick_s);
+    /// What rests on the zeros is widened by what they have shown of the noise. `considered` is the variance by uncertain
+    /// figures of leak and soakage.
+    pub(crate) fn total(&self, baseline: &Trend, considered: f32, shown: &Shown, derived: &Derived) -> Total {
+        let driven_s = math::seconds(self.driven.ticks, derived.tick_s);
         let walk = derived.level_walk * driven_s;
         let weight = self.last_sample_weight(derived);
         let own = 1.0 - weight;
         let counted_twice = shown.sample_var * weight * weight;
         let start_var = (self.start_var * shown.widening).max(shown.rounding.0);
-        let drift = not_negative(baseline.level_variance() - self.start_var - walk) * shown.rate_widening;
-        let (of_start, of_dead_time) = match self.ledger.dead_time_var >= counted_twice {
+        let leaked = self.leaked_readout(derived);
+        let drift = not_negative(baseline.level_variance() - self.start_var - walk - leaked) * shown.rate_widening;
+        let (of_start, of_dead_time) = match self.dead_time_var(derived) >= counted_twice {
             true => (0.0, counted_twice),
             false => (counted_twice, 0.0),
         };
         Total {
-            movement_q16: movement_q16(self.last_counts, baseline).saturating_add(self.ledger.total_q16()),
+            movement_q16: movement_q16(self.last_q16, baseline).saturating_add(self.ledger.total_q16()),
             readout: (shown.sample_var * own * own + start_var - of_start).max(QUANTISATION_VAR),
             input_noise: not_negative(walk + self.ledger.walk_var),
             drift: drift + shown.rounding.1 * driven_s * driven_s,
-            dead_time: self.ledger.dead_time_var - of_dead_time,
+            dead_time: self.dead_time_var(derived) - of_dead_time,
+            leak_and_soakage: leaked + considered,
         }
     }
 
@@ -192,32 +210,63 @@ impl Run {
         let Stage::Stopped { unbroken, .. } = self.stage else { return None };
         // Shortly after a reset the last sample is part of the opening line as well: r (1 - 2 w) instead of r.
         let last_var = shown.sample_var * (1.0 - 2.0 * self.last_sample_weight(derived));
-        Some(Stop { last_counts: self.last_counts, last_var, unbroken })
+        Some(Stop { last_q16: self.last_q16, last_var, unbroken })
     }
 
     /// The total as the closing zero sees it; `zero` is the level and drift there.
-    pub(crate) fn closed_total(&self, bracket: &Bracket, zero: &Trend, shown: &Shown, derived: &Derived) -> Total {
-        let driven_s = math::seconds(self.driven, derived.tick_s);
+    pub(crate) fn closed_total(
+        &self,
+        bracket: &Bracket,
+        zero: &Trend,
+        considered: f32,
+        shown: &Shown,
+        derived: &Derived,
+    ) -> Total {
+        let driven_s = math::seconds(self.driven.ticks, derived.tick_s);
         let walk = derived.level_walk * driven_s;
         // Rounding without dither: of the level at both ends, and of the drift of the two zeros together.
         let rounding = 2.0 * shown.rounding.0 + 0.5 * shown.rounding.1 * driven_s * driven_s;
         let input_noise = not_negative(walk + self.ledger.walk_var);
-        let rest =
-            not_negative(bracket.variance() + self.ledger.walk_var - input_noise) * shown.rate_widening + rounding;
+        let leaked = self.leaked_readout(derived);
+        let of_zeros = not_negative(bracket.variance() + self.ledger.walk_var - input_noise - leaked);
+        let rest = of_zeros * shown.rate_widening + rounding;
         let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {
             movement_q16: bracket.movement_q16().saturating_add(self.ledger.total_q16()),
             readout,
             input_noise,
             drift: rest - readout,
-            dead_time: self.ledger.dead_time_var,
+            dead_time: self.dead_time_var(derived),
+            leak_and_soakage: leaked + considered,
         }
+    }
+
+    /// Variance that resets have added.
+    fn dead_time_var(&self, derived: &Derived) -> f32 {
+        let (_, pedestal_var) = derived.pedestal.unwrap_or_default();
+        self.ledger.dead_time_var + pedestal_var * self.ledger.pedestal_lever * self.ledger.pedestal_lever
+    }
+
+    /// Variance that readout noise has put into what leaked during the run.
+    fn leaked_readout(&self, derived: &Derived) -> f32 {
+        derived.leak_walk * self.driven.squares as f32
+    }
+
+    /// What is known of the level at which the present segment began: the reset level and a known pedestal.
+    pub(crate) fn opened(&self, derived: &Derived) -> Option<Opened> {
+        let (settled, (pedestal, pedestal_var)) = (self.settled?, derived.pedestal?);
+        Some(Opened {
+            level_q16: settled.level_q16.saturating_add(to_q16(pedestal)).saturating_add(self.opened_terms_q16),
+            own_var: settled.var + derived.ktc_var,
+            pedestal_var,
+            lever: self.ledger.pedestal_lever,
+        })
     }
 
     /// What flicker did to the baseline since the zero.
     pub(crate) fn flicker(&self, derived: &Derived) -> Walk {
         let seconds = |ticks| math::seconds(ticks, derived.tick_s);
-        Walk::of_flicker(derived.flicker, seconds(self.zeroed), seconds(self.driven))
+        Walk::of_flicker(derived.flicker, seconds(self.zeroed), seconds(self.driven.ticks))
     }
 
     /// How far the drift has moved `baseline` since the start, 2^-16 counts.

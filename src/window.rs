@@ -2,13 +2,16 @@
 
 use heapless::Deque;
 
-use crate::estimate::{Edge, EdgeNoise, Side, Weights};
+use crate::estimate::{Edge, EdgeNoise, Hint, Side, Weights, fine_step};
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
 /// Integer work only, until a line is asked for.
 #[derive(Clone, Debug, Default)]
 pub(crate) struct Window {
+    /// Tick and level, in fine steps; of the level the lower 32 bits, which is enough to tell one from the next.
     samples: Deque<(u32, i32), EDGE_SAMPLES_MAX>,
+    /// The latest level, 2^-16 counts.
+    latest_q16: i64,
     /// Samples since the segment began, saturating.
     seen: u8,
 }
@@ -21,19 +24,34 @@ impl Window {
     }
 
     /// Takes a sample; `true` when the segment has just filled one window.
-    pub(crate) fn push(&mut self, tick: u32, counts: i32, derived: &Derived) -> bool {
+    pub(crate) fn push(&mut self, tick: u32, level_q16: i64, derived: &Derived) -> bool {
         if self.samples.len() >= usize::from(derived.edge_samples) {
             self.samples.pop_front();
         }
-        let _ = self.samples.push_back((tick, counts));
+        self.latest_q16 = level_q16;
+        let _ = self.samples.push_back((tick, (level_q16 >> (16 - derived.fine_bits)) as i32));
         self.seen = self.seen.saturating_add(1);
         self.seen == derived.edge_samples
     }
 
-    /// The line just after the switch opened at `instant`.
-    pub(crate) fn after(&self, instant: u32, sample_var: f32, derived: &Derived) -> Option<Edge> {
-        let samples = self.iter().map(|&(tick, counts)| (tick.wrapping_sub(instant), counts));
-        Edge::fit(Side::After, samples, derived.tick_s, noise(sample_var, derived), |_| 0.0)
+    /// The line just after the switch opened at `instant`, when the level was as `opened` says, if it is known.
+    pub(crate) fn after(
+        &self,
+        instant: u32,
+        opened: Option<Opened>,
+        sample_var: f32,
+        derived: &Derived,
+    ) -> Option<Edge> {
+        let &(_, nearest) = self.iter().next()?;
+        let samples = self.above(nearest, derived).map(|(tick, above)| (tick.wrapping_sub(instant), above));
+        let anchor_q16 = self.level_q16(nearest, derived);
+        let hint = opened.map(|opened| Hint {
+            level: opened.level_q16.saturating_sub(anchor_q16) as f32 * (1.0 / 65536.0),
+            own_var: opened.own_var,
+            shared_var: opened.pedestal_var,
+            lever: opened.lever,
+        });
+        Edge::fit(Side::After, anchor_q16, samples, derived.tick_s, noise(sample_var, derived), hint, |_| 0.0)
     }
 
     /// The line just before the switch closed at `instant`. `opening`: the line at the other end of the segment, which
@@ -45,9 +63,31 @@ impl Window {
         sample_var: f32,
         derived: &Derived,
     ) -> Option<Edge> {
-        let samples = self.iter().rev().map(|&(tick, counts)| (instant.wrapping_sub(tick), counts));
+        let &(_, nearest) = self.iter().next_back()?;
+        let samples = self.above(nearest, derived).rev().map(|(tick, above)| (instant.wrapping_sub(tick), above));
         let taken = |ticks| opening.map_or(0.0, |opening| opening.weight(instant.wrapping_sub(ticks), derived));
-        Edge::fit(Side::Before, samples, derived.tick_s, noise(sample_var, derived), taken)
+        Edge::fit(
+            Side::Before,
+            self.level_q16(nearest, derived),
+            samples,
+            derived.tick_s,
+            noise(sample_var, derived),
+            None,
+            taken,
+        )
+    }
+
+    /// Ticks and levels, in counts above the level `origin`; oldest first.
+    fn above(&self, origin: i32, derived: &Derived) -> impl DoubleEndedIterator<Item = (u32, f32)> + Clone {
+        let step = fine_step(derived.fine_bits);
+        self.iter().map(move |&(tick, level)| (tick, level.wrapping_sub(origin) as f32 * step))
+    }
+
+    /// A kept level as a whole, 2^-16 counts.
+    fn level_q16(&self, level: i32, derived: &Derived) -> i64 {
+        let latest = (self.latest_q16 >> (16 - derived.fine_bits)) as i32;
+        let above = i64::from(level.wrapping_sub(latest)) << (16 - derived.fine_bits);
+        ((self.latest_q16 >> (16 - derived.fine_bits)) << (16 - derived.fine_bits)).saturating_add(above)
     }
 
     /// Oldest first.
@@ -55,6 +95,18 @@ impl Window {
         let (older, newer) = self.samples.as_slices();
         older.iter().chain(newer)
     }
+}
+
+/// The level at which the reset switch opened: what it was with the switch closed, and the pedestal.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Opened {
+    /// Effective level, 2^-16 counts.
+    pub(crate) level_q16: i64,
+    /// Variance of the reset level and of the pedestal, counts^2.
+    pub(crate) own_var: f32,
+    pub(crate) pedestal_var: f32,
+    /// How much of the pedestal's error the run's total holds already.
+    pub(crate) lever: f32,
 }
 
 /// The line with which a segment opened: which samples it used, and with what weights they are in the run's total.

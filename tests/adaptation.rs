@@ -9,7 +9,14 @@ use rand_distr::{Distribution, StandardNormal};
 fn setup(wander: f64) -> Setup<Charge> {
     Setup::new(
         Circuit { rail_low_v: -100.0, rail_high_v: 100.0, ..Circuit::DEFAULT },
-        Converter { code_zero_v: 0.0, lsb_v: 10e-6, code_min: -(1 << 23), code_max: 1 << 23, tick_hz: 1e6 },
+        Converter {
+            code_zero_v: 0.0,
+            lsb_v: 10e-6,
+            code_min: -(1 << 23),
+            code_max: 1 << 23,
+            tick_hz: 1e6,
+            ..Converter::DEFAULT
+        },
         Noise { readout_counts: 1.0, input_density: 0.5e-12, offset_wander: wander * 1e-12, ..Noise::NONE },
         Policy::DEFAULT,
     )

@@ -14,7 +14,7 @@ fn assert_sound(reading: &Reading<Charge>) {
         let (value, u) = (estimate.integral.value.as_coulombs(), estimate.integral.u.as_coulombs());
         assert!(value.is_finite() && u.is_finite() && u > 0.0, "{reading:?}");
         let b = &estimate.budget;
-        for part in [b.readout, b.input_noise, b.drift, b.dead_time, b.scale] {
+        for part in [b.readout, b.input_noise, b.drift, b.dead_time, b.leak_and_soakage, b.scale] {
             assert!(part.as_coulombs() >= 0.0 && part.as_coulombs() <= u * 1.000_001, "{reading:?}");
         }
     }
@@ -72,7 +72,7 @@ fn extreme_codes_and_steps() {
 
 #[test]
 fn the_extremes_of_a_set_up() {
-    let converter = Converter { code_min: -(1 << 30), code_max: 1 << 30, ..CONVERTER };
+    let converter = Converter { code_min: -(1 << 29), code_max: 1 << 29, ..CONVERTER };
     for (capacitance_f, limit, noise) in [(1e-15, 0.0, 0.0), (1e-15, 1e-12, 1e-9), (1.0, 1.0, 1.0), (1e-9, 1e-3, 1e-13)]
     {
         let circuit = brimline::Circuit { capacitance_f, offset_limit_v: limit, bias_limit_a: 0.0, ..CIRCUIT };

@@ -12,7 +12,7 @@ const UPDATES: u32 = if cfg!(debug_assertions) { 1_000_000 } else { 10_000_000 }
 /// A level beyond 2^23, where `f32` holds whole counts only, drifting by half a count in a second; a sample each
 /// millisecond with one count of noise. Rms errors over the second half.
 fn long_record(walk: Walk) -> (f64, f64, Trend) {
-    const START: i32 = 1 << 23;
+    const START: i64 = 1 << 23;
     const DRIFT: f64 = 0.5;
     const DT: f64 = 1e-3;
     const READOUT: f32 = 1.0 + 1.0 / 12.0;
@@ -21,9 +21,9 @@ fn long_record(walk: Walk) -> (f64, f64, Trend) {
     let (mut drift, mut level) = (0.0, 0.0);
     for k in 1..=UPDATES {
         trend.advance(DT as f32, walk);
-        let truth = f64::from(START) + DRIFT * DT * f64::from(k);
+        let truth = START as f64 + DRIFT * DT * f64::from(k);
         let noise: f64 = StandardNormal.sample(&mut rng);
-        trend.update(round(truth + noise) as i32, 0.0, READOUT);
+        trend.update(round(truth + noise) as i64, 0.0, READOUT);
         assert!(trend.level_variance() > 0.0 && trend.rate_variance() > 0.0);
         if k > UPDATES / 2 {
             let off = (f64::from(trend.rate()) - DRIFT, trend.anchor() as f64 + f64::from(trend.residual()) - truth);
@@ -57,7 +57,7 @@ fn drift_of_a_long_record_with_walk_stays_within_its_uncertainty() {
 }
 
 /// Every variance `f32` can hold as a normal number, steps from a microsecond to three years, and samples that jump from
-/// one end of `i32` to the other: never a NaN, an infinity or a variance below zero.
+/// one end of 32 bits to the other: never a NaN, an infinity or a variance below zero.
 #[test]
 fn extreme_input_leaves_numbers_finite_and_variances_positive() {
     const VARIANCES: [f32; 5] = [f32::MIN_POSITIVE, 1e-20, 1.0, 1e20, 1e30];
@@ -71,8 +71,8 @@ fn extreme_input_leaves_numbers_finite_and_variances_positive() {
                     let case = format!(
                         "{level_variance:e} {rate_variance:e} {level_walk:e} {rate_walk:e} {step} {variance:e}"
                     );
-                    let mut trend = Trend::new(i32::MIN, level_variance, 0.0, rate_variance);
-                    for counts in [i32::MAX, i32::MIN, 0, -1, i32::MAX, i32::MAX] {
+                    let mut trend = Trend::new(i64::MIN, level_variance, 0.0, rate_variance);
+                    for counts in [i64::MAX, i64::MIN, 0, -1, i64::MAX, i64::MAX] {
                         trend.advance(step, Walk::over(step, level_walk, rate_walk));
                         let i = trend.update(counts, 0.0, variance);
                         for number in
@@ -91,18 +91,20 @@ fn extreme_input_leaves_numbers_finite_and_variances_positive() {
     }
 }
 
-/// A level at one end of `i32` that is found at the other is there after one sample that outweighs it.
+/// A level at one end of 32 bits that is found at the other is there after one sample that outweighs it.
 #[test]
 fn level_follows_a_sample_from_one_end_of_the_counts_to_the_other() {
-    for (from, to) in [(i32::MIN, i32::MAX), (i32::MAX, i32::MIN)] {
+    const LOWEST: i64 = i32::MIN as i64;
+    const HIGHEST: i64 = i32::MAX as i64;
+    for (from, to) in [(LOWEST, HIGHEST), (HIGHEST, LOWEST)] {
         let mut trend = Trend::new(from, 1e12, 0.0, 0.0);
         let innovation = trend.update(to, 0.0, 1.0);
-        assert_eq!(innovation.residual, (i64::from(to) - i64::from(from)) as f32);
+        assert_eq!(innovation.residual, (to - from) as f32);
         // `f32` resolves 2^32 counts to 256; the gain differs from 1 by 1e-12.
-        let off = trend.anchor() as f64 + f64::from(trend.residual()) - f64::from(to);
+        let off = trend.anchor() as f64 + f64::from(trend.residual()) - to as f64;
         assert!(off.abs() <= 256.0, "{off} counts");
         trend.update(to, 0.0, 1.0);
-        let off = trend.anchor() as f64 + f64::from(trend.residual()) - f64::from(to);
+        let off = trend.anchor() as f64 + f64::from(trend.residual()) - to as f64;
         assert!(off.abs() <= 128.0, "{off} counts");
     }
 }

@@ -24,7 +24,7 @@ fn nile() -> Vec<(Record, Trend, Innovation, Trend)> {
     let (readout, walk) = NILE;
     let mut years = records(include_str!("reference/nile_local_level_filter.csv")).into_iter();
     let Some(first) = years.next() else { panic!("no years") };
-    let mut trend = Trend::new(first.number("volume") as i32, readout, 0.0, 0.0);
+    let mut trend = Trend::new(first.number("volume") as i64, readout, 0.0, 0.0);
     close("level of 1871", level(&trend), first.number("filtered_level"), 0.0);
     close("variance of 1871", trend.level_variance(), first.number("filtered_var"), 0.0);
     let mut before = first;
@@ -34,7 +34,7 @@ fn nile() -> Vec<(Record, Trend, Innovation, Trend)> {
         let predicted = trend;
         close("prediction", level(&predicted), before.number("predicted_next_level"), LEVEL);
         close_by_roundings("its variance", predicted.level_variance(), before.number("predicted_next_var"), 3.0);
-        let innovation = trend.update(year.number("volume") as i32, 0.0, readout);
+        let innovation = trend.update(year.number("volume") as i64, 0.0, readout);
         before = Record::clone(&year);
         steps.push((year, predicted, innovation, trend));
     }
@@ -119,7 +119,7 @@ fn trend_filter_with_a_diffuse_start_is_the_exact_diffuse_filter() {
     let (level_step, slope_step) = (8.253 * SCALE * SCALE, 2.334 * SCALE * SCALE);
     let walk = Walk { level: level_step as f32, cross: 0.0, rate: slope_step as f32 };
     let lines = records(include_str!("reference/local_linear_trend_exact_diffuse.csv"));
-    let counts: Vec<i32> = lines.iter().map(|line| libm::round(line.number("y") * SCALE) as i32).collect();
+    let counts: Vec<i64> = lines.iter().map(|line| libm::round(line.number("y") * SCALE) as i64).collect();
     let (Some(&y1), Some(&y2)) = (counts.first(), counts.get(1)) else { panic!("no samples") };
 
     // The largest variance that a trend keeps; the first difference has 1.2e13, which shows in the results as 1.2e-7.
@@ -128,7 +128,7 @@ fn trend_filter_with_a_diffuse_start_is_the_exact_diffuse_filter() {
     trend.update(y2, 0.0, readout as f32);
     trend.advance(1.0, walk);
     // Prediction after two samples in closed form (Koopman 1997).
-    let (y1, y2) = (f64::from(y1), f64::from(y2));
+    let (y1, y2) = (y1 as f64, y2 as f64);
     let (qm, qb) = (level_step / readout, slope_step / readout);
     close("a3 level", level(&trend), 2.0 * y2 - y1, 4.0 * FILTERED);
     close_by_roundings("a3 slope", trend.rate(), y2 - y1, 4.0);
@@ -166,8 +166,8 @@ fn regression(n: usize) -> Trend {
 /// Variance of an unknown slope; the closed forms leave out its reciprocal, here 1e-12.
 const DIFFUSE: f32 = 1e12;
 
-fn ramp(k: usize) -> i32 {
-    7 * k as i32 + (k % 3) as i32
+fn ramp(k: usize) -> i64 {
+    7 * k as i64 + (k % 3) as i64
 }
 
 /// `[n, slope, intercept, covariance, slope by OLS of a random walk, by BLUE, prediction at index 2 n]`: regression
@@ -196,7 +196,7 @@ fn trend_of_white_samples_has_the_variances_of_the_regression_line() {
 fn trend_of_white_samples_is_the_regression_line() {
     for [n, ..] in limits() {
         let trend = regression(n as usize);
-        let samples = || (0..n as usize).map(|k| (k as f64 - (n - 1.0) / 2.0, f64::from(ramp(k))));
+        let samples = || (0..n as usize).map(|k| (k as f64 - (n - 1.0) / 2.0, ramp(k) as f64));
         let (xx, xy) = samples().fold((0.0, 0.0), |(xx, xy), (x, y)| (xx + x * x, xy + x * y));
         let mean = samples().map(|(_, y)| y).sum::<f64>() / n;
         let slope = xy / xx;
@@ -232,10 +232,10 @@ fn trend_of_a_random_walk_is_the_difference_of_its_ends() {
             trend.advance(1.0, Walk { level: 1.0, ..Walk::default() });
             trend.update(ramp(k), 0.0, NO_READOUT);
         }
-        let ends = f64::from(ramp(n as usize - 1)) / (n - 1.0);
+        let ends = ramp(n as usize - 1) as f64 / (n - 1.0);
         close_by_roundings("var(slope)", trend.rate_variance(), blue, 2.0 + 2.0 * sqrt(n));
         close("slope", trend.rate(), ends, SLOPE);
-        close("level", level(&trend), f64::from(ramp(n as usize - 1)), LEVEL);
+        close("level", level(&trend), ramp(n as usize - 1) as f64, LEVEL);
     }
 }
 

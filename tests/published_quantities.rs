@@ -98,7 +98,14 @@ fn relative_uncertainty_of_a_radiant_exposure_adds_in_squares() {
 /// An op amp without offset, bias or noise: what the converter adds is all there is.
 fn noiseless<Q: Integral>(circuit: Circuit, lsb_v: f64) -> Setup<Q> {
     let circuit = Circuit { offset_limit_v: 0.0, bias_limit_a: 0.0, ..circuit };
-    let converter = Converter { code_zero_v: -32768.0 * lsb_v, lsb_v, code_min: 0, code_max: 65535, tick_hz: 1e6 };
+    let converter = Converter {
+        code_zero_v: -32768.0 * lsb_v,
+        lsb_v,
+        code_min: 0,
+        code_max: 65535,
+        tick_hz: 1e6,
+        ..Converter::DEFAULT
+    };
     let noise = Noise { readout_counts: 0.0, input_density: 0.0, offset_wander: 0.0, ..Noise::NONE };
     match Setup::try_new(circuit, converter, noise, Policy::DEFAULT) {
         Ok(setup) => setup,

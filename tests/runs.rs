@@ -213,8 +213,10 @@ fn an_uncertain_gain_adds_in_squares_and_is_told_apart() {
     let scale = estimate.budget.scale.as_coulombs();
     assert!((scale / 1e-10 - 1.0).abs() < 1e-3, "{scale:e}");
     let b = estimate.budget;
-    let sum: f64 =
-        [b.readout, b.input_noise, b.drift, b.dead_time, b.scale].iter().map(|q| q.as_coulombs().powi(2)).sum();
+    let sum: f64 = [b.readout, b.input_noise, b.drift, b.dead_time, b.leak_and_soakage, b.scale]
+        .iter()
+        .map(|q| q.as_coulombs().powi(2))
+        .sum();
     assert!((sum.sqrt() / estimate.integral.u.as_coulombs() - 1.0).abs() < 1e-6);
 }
 

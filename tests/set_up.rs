@@ -39,7 +39,7 @@ fn each_parameter_is_refused_by_name() {
         circuit.bias_limit_a: [-1e-12, 1.1, nan]
         circuit.source_resistance_ohm: [0.0, -1.0, 2e18, nan]
         circuit.pedestal_v: [1.1, -1.1, nan]
-        circuit.pedestal_u_v: [-1e-6, 1.1, nan]
+        circuit.pedestal_u_v: [Some(-1e-6), Some(1.1), Some(nan)]
         circuit.switch_resistance_ohm: [-1.0, 2e6, nan]
         circuit.gain_u_rel: [-0.1, 1.1, nan]
         converter.code_zero_v: [2e6, nan]

@@ -19,7 +19,14 @@ const CIRCUIT: Circuit = Circuit {
 fn setup(temperature_law: TemperatureLaw) -> Setup<Charge> {
     Setup::new(
         Circuit { temperature_law, ..CIRCUIT },
-        Converter { code_zero_v: 0.0, lsb_v: 10e-6, code_min: -(1 << 23), code_max: 1 << 23, tick_hz: 1e6 },
+        Converter {
+            code_zero_v: 0.0,
+            lsb_v: 10e-6,
+            code_min: -(1 << 23),
+            code_max: 1 << 23,
+            tick_hz: 1e6,
+            ..Converter::DEFAULT
+        },
         // The wander is what a careful user would allow for; the warm-up is far more.
         Noise { readout_counts: 1.0, input_density: 0.2e-12, offset_wander: 0.0, ..Noise::NONE },
         Policy::DEFAULT,

@@ -3,18 +3,10 @@
 //!
 //! The traces and the reference's uncertainties come from an independent circuit simulation; see `traces/README.md`.
 
-#[path = "../examples/replay/setup_file.rs"]
-mod setup_file;
-#[path = "../examples/replay/trace_file.rs"]
-mod trace_file;
+mod recording;
 
-use std::fs::File;
-use std::io::BufReader;
-use std::path::PathBuf;
-
-use brimline::{Channel, Integral, Mode, Reading, Reason, Setup, Trust};
-use setup_file::AnySetup;
-use trace_file::TraceFile;
+use brimline::{Reason, Trust};
+use recording::{Correction, Outcome, Recording};
 
 /// A trace's name and the reference's standard uncertainties at stop and closed, as printed in `traces/README.md`.
 struct Case {
@@ -22,88 +14,50 @@ struct Case {
     reference_u: [f64; 2],
     /// Reference uncertainties leave out what dead time adds: up to 4 times is allowed where resets occur, else 2.
     most: f64,
+    /// The correction that the trace is about.
+    about: Correction,
 }
 
-const CASES: [Case; 5] = [
-    Case { name: "hatchery", reference_u: [0.6e-10, 0.5e-10], most: 4.0 },
-    Case { name: "dim_lamp", reference_u: [2.6e-12, 1.3e-12], most: 2.0 },
-    Case { name: "wandering_offset", reference_u: [1.1e-3, 5.3e-4], most: 2.0 },
-    Case { name: "search_coil", reference_u: [1.3e-6, 3.7e-7], most: 2.0 },
-    Case { name: "tick_wrap", reference_u: [0.6e-10, 0.5e-10], most: 4.0 },
+const CASES: [Case; 8] = [
+    Case { name: "hatchery", reference_u: [0.6e-10, 0.5e-10], most: 4.0, about: Correction::Drift },
+    Case { name: "dim_lamp", reference_u: [2.6e-12, 1.3e-12], most: 2.0, about: Correction::Drift },
+    Case { name: "wandering_offset", reference_u: [1.1e-3, 5.3e-4], most: 2.0, about: Correction::Drift },
+    Case { name: "search_coil", reference_u: [1.3e-6, 3.7e-7], most: 2.0, about: Correction::Drift },
+    Case { name: "leaky", reference_u: [1.2e-6, 0.9e-6], most: 2.0, about: Correction::Key("leak_time_constant_s") },
+    Case { name: "soakage", reference_u: [0.4e-10, 0.3e-10], most: 2.0, about: Correction::Key("soakage") },
+    Case { name: "held", reference_u: [2.5e-5, 2.1e-5], most: 2.0, about: Correction::Hold },
+    Case { name: "tick_wrap", reference_u: [0.6e-10, 0.5e-10], most: 4.0, about: Correction::Drift },
 ];
 
-/// A reading as bare SI numbers.
-struct Outcome {
-    /// Value and standard uncertainty, at stop and closed.
-    estimates: [(f64, f64); 2],
-    uncorrected: f64,
-    start_tick: u32,
-    end_tick: u32,
-    resets: u32,
-    trust: Trust,
-    reasons: Vec<Reason>,
-    drift: (f64, f64),
-}
-
-fn path(folder: &str, file: &str) -> PathBuf {
-    PathBuf::from(env!("CARGO_MANIFEST_DIR")).join(folder).join(file)
-}
-
-fn replay<Q: Integral>(setup: &Setup<Q>, name: &str, si: impl Fn(Q) -> f64) -> Outcome {
-    let file = BufReader::new(File::open(path("tests/traces", &format!("{name}.csv"))).unwrap());
-    let codes = setup.converter().code_min..=setup.converter().code_max;
-    let mut channel = Channel::new(setup);
-    let mut at_stop: Option<Reading<Q>> = None;
-    for sample in TraceFile::new(file, name, codes).unwrap() {
-        let sample = sample.unwrap();
-        if channel.mode() == Some(Mode::Integrate) && sample.mode == Mode::Zero {
-            at_stop = channel.reading();
-        }
-        channel.feed(sample);
-    }
-    let reading = channel.reading().expect("the trace has a run");
-    let drift = channel.drift();
-    if let Some(live) = at_stop {
-        assert_eq!(live.at_stop, reading.at_stop, "what was known when the run stopped");
-    }
-    let pair = |e: &brimline::Estimate<Q>| (si(e.integral.value), si(e.integral.u));
-    Outcome {
-        estimates: [pair(&reading.at_stop), reading.closed.as_ref().map_or((f64::NAN, f64::NAN), pair)],
-        uncorrected: si(reading.at_stop.integral.value) + si(reading.drift_removed),
-        start_tick: reading.start_tick,
-        end_tick: reading.end_tick,
-        resets: reading.resets,
-        trust: reading.trust,
-        reasons: reading.reasons.iter().collect(),
-        drift: (drift.value.as_volts_per_second(), drift.u.as_volts_per_second()),
-    }
+fn recording(name: &str) -> Recording {
+    Recording::new(&format!("tests/traces/{name}.csv"), &format!("examples/setups/{name}.toml"))
 }
 
 fn outcome(name: &str) -> Outcome {
-    match setup_file::read(&path("examples/setups", &format!("{name}.toml"))).unwrap().setup {
-        AnySetup::Charge(setup) => replay(&setup, name, |q| q.as_coulombs()),
-        AnySetup::Flux(setup) => replay(&setup, name, |q| q.as_volt_seconds()),
-    }
+    recording(name).outcome()
 }
 
 fn truth(name: &str) -> serde_json::Value {
-    let text = std::fs::read_to_string(path("tests/traces", &format!("{name}.truth.json"))).unwrap();
-    serde_json::from_str::<serde_json::Value>(&text).unwrap()["truth"].take()
+    recording(name).truth()
 }
 
 #[test]
 fn every_error_is_within_three_uncertainties_and_no_uncertainty_is_far_from_the_reference() {
-    println!("| trace | | error | u | error/u | u / reference u |\n| --- | --- | --- | --- | --- | --- |");
+    println!("| trace | | error | u | error/u | u / reference u | error without its correction |");
+    println!("| --- | --- | --- | --- | --- | --- | --- |");
     for case in CASES {
         let outcome = outcome(case.name);
-        let integral = truth(case.name)["runs"][0]["integral"].as_f64().unwrap();
+        let integral = recording(case.name).true_integral();
+        let without = recording(case.name).value_without(case.about) - integral;
         for (stage, ((value, u), reference)) in
             ["at stop", "closed"].iter().zip(outcome.estimates.into_iter().zip(case.reference_u))
         {
             let error = value - integral;
             let (scaled, ratio) = (error / u, u / reference);
-            println!("| {} | {stage} | {error:.2e} | {u:.2e} | {scaled:.2} | {ratio:.2} |", case.name);
+            let worse = format!("{without:.2e} ({:.0} u)", (without / u).abs());
+            println!("| {} | {stage} | {error:.2e} | {u:.2e} | {scaled:.2} | {ratio:.2} | {worse} |", case.name);
             assert!(scaled.abs() <= 3.0, "{} {stage}: {error:e}, u {u:e}", case.name);
+            assert!(without.abs() > 3.0 * u, "{} {stage}: {:?} makes no difference", case.name, case.about);
             assert!(ratio >= 0.5 && ratio <= case.most, "{} {stage}: {u:e} against {reference:e}", case.name);
         }
         assert_eq!(outcome.trust, Trust::Good, "{}", case.name);
@@ -137,10 +91,30 @@ fn the_drift_is_found() {
 fn correction_gains_where_drift_matters() {
     for (name, gain) in [("dim_lamp", 1000.0), ("wandering_offset", 25.0), ("search_coil", 100.0)] {
         let outcome = outcome(name);
-        let integral = truth(name)["runs"][0]["integral"].as_f64().unwrap();
+        let integral = recording(name).true_integral();
         let (with, without) = (outcome.estimates[1].0 - integral, outcome.uncorrected - integral);
         assert!(without.abs() > gain * with.abs(), "{name}: {without:e} {with:e}");
     }
+}
+
+/// A reset needs no waiting time: what the dielectric gives back is taken off, twentyfold and more.
+#[test]
+fn soakage_is_taken_off_twentyfold() {
+    let soakage = recording("soakage");
+    let (value, u) = soakage.outcome().estimates[1];
+    let error = (value - soakage.true_integral()).abs();
+    let without = (soakage.value_without(Correction::Key("soakage")) - soakage.true_integral()).abs();
+    assert!(without > 20.0 * error && without > 20.0 * u, "{without:e} {error:e} {u:e}");
+}
+
+/// The plant of `held` has an offset of 600 uV and a bias of 120 pA (`held.truth.json`).
+#[test]
+fn zeros_and_holds_tell_offset_from_bias() {
+    let [offset, bias] = outcome("held").amplifier.expect("there is a hold");
+    for ((value, u), expected, most) in [(offset, 600e-6, 1e-6), (bias, 120e-12, 1e-12)] {
+        assert!((value - expected).abs() <= 3.0 * u && u < most, "{value:e} +- {u:e}, not {expected:e}");
+    }
+    assert_eq!(outcome("hatchery").amplifier, None, "without a hold nobody can tell");
 }
 
 #[test]

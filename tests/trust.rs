@@ -222,7 +222,8 @@ fn a_zero_that_drifts_into_the_rail_does_not_reach_back() {
 fn a_droop_after_a_reset_is_not_a_reset_that_failed() {
     let mut script = Script::new(&SETUP);
     script.zero(300).integrate(500, 2000.0).reset(3, 0.0).hold(1000, 5_000.0).integrate(200, 2000.0);
-    assert_eq!(script.reading().trust, Trust::Good, "{:?}", script.notices);
+    let reasons: Vec<Reason> = script.reading().reasons.iter().collect();
+    assert_eq!(reasons, [Reason::DroopOutsideLimits], "{:?}", script.notices);
 }
 
 #[test]

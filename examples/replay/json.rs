@@ -20,6 +20,7 @@ struct Variance {
     input_noise: f64,
     drift: f64,
     dead_time: f64,
+    leak_and_soakage: f64,
     scale: f64,
 }
 
@@ -76,10 +77,21 @@ struct Notice {
     observed_counts: Option<f64>,
 }
 
+/// Offset voltage, V, and bias current, A, referred to the input.
+#[derive(Serialize)]
+struct Amplifier {
+    offset: Value,
+    bias: Value,
+}
+
 #[derive(Serialize)]
 struct Document {
     runs: Vec<Run>,
     drift: Option<Drift>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    droop: Option<Drift>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    amplifier: Option<Amplifier>,
     notices: Vec<Notice>,
     #[serde(skip_serializing_if = "Option::is_none")]
     error: Option<String>,
@@ -87,9 +99,15 @@ struct Document {
 
 /// Writes the object. Without an outcome (the set-up was refused) it holds the error alone.
 pub(crate) fn write(out: &mut impl Write, outcome: Option<&Outcome>, error: Option<&str>) -> io::Result<()> {
+    let amplifier = outcome.and_then(|o| o.amplifier.as_ref());
     let document = Document {
         runs: outcome.map_or(Vec::new(), |o| o.runs.iter().map(|record| run(record, o.unit)).collect()),
         drift: outcome.map(|o| drift(&o.drift)),
+        droop: amplifier.map(|a| Drift { rate_v_per_s: a.droop_v_per_s.0, u: a.droop_v_per_s.1 }),
+        amplifier: amplifier.map(|a| Amplifier {
+            offset: Value { value: a.offset_v.0, u: a.offset_v.1 },
+            bias: Value { value: a.bias_a.0, u: a.bias_a.1 },
+        }),
         notices: outcome.map_or(Vec::new(), |o| o.notices.iter().map(notice).collect()),
         error: error.map(str::to_owned),
     };
@@ -119,6 +137,7 @@ fn run(run: &RunRecord, unit: &'static str) -> Run {
             input_noise: latest.input_noise * latest.input_noise,
             drift: latest.drift * latest.drift,
             dead_time: latest.dead_time * latest.dead_time,
+            leak_and_soakage: latest.leak_and_soakage * latest.leak_and_soakage,
             scale: latest.scale * latest.scale,
         },
         warming_mk: run.warming_mk,

@@ -50,6 +50,7 @@ pub(crate) struct Figure {
     pub(crate) input_noise: f64,
     pub(crate) drift: f64,
     pub(crate) dead_time: f64,
+    pub(crate) leak_and_soakage: f64,
     pub(crate) scale: f64,
 }
 
@@ -63,6 +64,7 @@ impl Figure {
             input_noise: budget.input_noise.number(),
             drift: budget.drift.number(),
             dead_time: budget.dead_time.number(),
+            leak_and_soakage: budget.leak_and_soakage.number(),
             scale: budget.scale.number(),
         }
     }
@@ -119,6 +121,14 @@ pub(crate) struct DriftRecord {
     pub(crate) as_input_u: f64,
 }
 
+/// What zeros and holds together tell of the amplifier; each a value and its standard uncertainty.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct AmplifierRecord {
+    pub(crate) droop_v_per_s: (f64, f64),
+    pub(crate) offset_v: (f64, f64),
+    pub(crate) bias_a: (f64, f64),
+}
+
 /// Everything that a trace gave.
 #[derive(Clone, Debug)]
 pub(crate) struct Outcome {
@@ -133,6 +143,8 @@ pub(crate) struct Outcome {
     pub(crate) drift: DriftRecord,
     /// Whether the drift was measured, or is what the data sheet allows.
     pub(crate) drift_measured: bool,
+    /// Given where there was a hold.
+    pub(crate) amplifier: Option<AmplifierRecord>,
     pub(crate) notices: Vec<NoticeRecord>,
 }
 
@@ -214,6 +226,12 @@ impl<'s, Q: Amount> Replay<'s, Q> {
         let drift = self.channel.drift();
         let (rate, u) = (drift.value.as_volts_per_second(), drift.u.as_volts_per_second());
         let gain = self.setup.circuit().gain();
+        let droop = self.channel.droop();
+        let amplifier = self.channel.offset_and_bias().map(|(offset, bias)| AmplifierRecord {
+            droop_v_per_s: (droop.value.as_volts_per_second(), droop.u.as_volts_per_second()),
+            offset_v: (offset.value.as_volts(), offset.u.as_volts()),
+            bias_a: (bias.value.as_amperes(), bias.u.as_amperes()),
+        });
         Outcome {
             unit: Q::SYMBOL,
             input_unit: Q::INPUT_UNIT,
@@ -221,6 +239,7 @@ impl<'s, Q: Amount> Replay<'s, Q> {
             span_s: self.now_s(),
             drift: DriftRecord { rate_v_per_s: rate, u, as_input: rate / gain, as_input_u: (u / gain).abs() },
             drift_measured: self.zero_samples > 1,
+            amplifier,
             runs: self.runs,
             notices: self.notices,
         }

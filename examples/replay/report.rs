@@ -147,6 +147,15 @@ fn write_drift(out: &mut impl Write, outcome: &Outcome) -> io::Result<()> {
         "Drift: {} at the output, as of the latest zero; as an input: {}",
         units::with_uncertainty(drift.rate_v_per_s, K * drift.u, "V/s"),
         units::with_uncertainty(drift.as_input, K * drift.as_input_u, outcome.input_unit)
+    )?;
+    let Some(amplifier) = &outcome.amplifier else { return Ok(()) };
+    let figure = |(value, u): (f64, f64), unit| units::with_uncertainty(value, K * u, unit);
+    writeln!(
+        out,
+        "Droop: {} with the input open; hence the amplifier's bias {} and offset {}, referred to the input",
+        figure(amplifier.droop_v_per_s, "V/s"),
+        figure(amplifier.bias_a, "A"),
+        figure(amplifier.offset_v, "V")
     )
 }
 

@@ -10,7 +10,9 @@ use std::fmt;
 use std::path::Path;
 
 use brimline::unit::Photodetector;
-use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup, SetupError, TemperatureLaw};
+use brimline::{
+    Charge, Circuit, Converter, Flux, Linearity, Noise, Policy, Setup, SetupError, SoakageBranch, TemperatureLaw,
+};
 
 use self::setup_keys::{CircuitKeys, ConverterKeys, PolicyKeys, ScaleKeys, SetupFile, about};
 
@@ -87,12 +89,6 @@ impl From<SetupError> for Refusal {
 
 fn board(file: &SetupFile) -> Result<Board, Refusal> {
     let c = &file.circuit;
-    if c.leak_time_constant_s.is_some() {
-        return Err(unsupported("leak_time_constant_s", "a leak"));
-    }
-    if !c.soakage.is_empty() {
-        return Err(unsupported("soakage", "soakage (dielectric absorption)"));
-    }
     if c.input_resistance_ohm.is_none() && c.source_resistance_ohm.is_none() {
         return Err(Refusal::missing(
             "source_resistance_ohm",
@@ -111,14 +107,18 @@ fn board(file: &SetupFile) -> Result<Board, Refusal> {
         offset_limit_v: c.offset_limit_v,
         bias_limit_a: c.bias_limit_a,
         source_resistance_ohm: c.source_resistance_ohm.unwrap_or(d.source_resistance_ohm),
+        leak_time_constant_s: c.leak_time_constant_s,
+        leak_u_rel: c.leak_u_rel.unwrap_or(d.leak_u_rel),
+        soakage: soakage(c)?,
+        soakage_u_rel: c.soakage_u_rel.unwrap_or(d.soakage_u_rel),
         pedestal_v: c.pedestal_v.unwrap_or(d.pedestal_v),
-        pedestal_u_v: c.pedestal_u_v.unwrap_or(d.pedestal_u_v),
+        pedestal_u_v: c.pedestal_u_v,
         switch_resistance_ohm: c.switch_resistance_ohm.unwrap_or(d.switch_resistance_ohm),
+        slew_v_per_s: c.slew_v_per_s,
         temperature_law: temperature_law(c)?,
         gain_u_rel: file.scale.gain_u_rel.unwrap_or(d.gain_u_rel),
     };
-    let ConverterKeys { code_zero_v, lsb_v, code_min, code_max, tick_hz } = file.converter;
-    let converter = Converter { code_zero_v, lsb_v, code_min, code_max, tick_hz };
+    let converter = converter(&file.converter)?;
     let noise = Noise {
         readout_counts: file.noise.readout_counts,
         input_density: file.noise.input_density,
@@ -146,12 +146,35 @@ fn temperature_law(c: &CircuitKeys) -> Result<TemperatureLaw, Refusal> {
     }
 }
 
-fn unsupported(key: &'static str, what: &str) -> Refusal {
-    let why = format!(
-        "this version cannot correct for {what}, and leaving it out would give a wrong number. Take the key out only \
-         if the effect is too small to matter on this board."
-    );
-    Refusal { key, why }
+fn soakage(c: &CircuitKeys) -> Result<[SoakageBranch; 4], Refusal> {
+    let mut branches = Circuit::DEFAULT.soakage;
+    if c.soakage.len() > branches.len() {
+        let why = format!("{} branches are too many: at most 4, the slowest and the largest.", c.soakage.len());
+        return Err(Refusal { key: "soakage", why });
+    }
+    for (branch, keys) in branches.iter_mut().zip(&c.soakage) {
+        *branch = SoakageBranch { share: keys.share, time_constant_s: keys.time_constant_s };
+    }
+    Ok(branches)
+}
+
+fn converter(c: &ConverterKeys) -> Result<Converter, Refusal> {
+    let d = Converter::DEFAULT;
+    // One table for each set-up that a program reads: it lives as long as the program, as in a microcontroller's flash.
+    let linearity = match c.nonlinearity.as_slice() {
+        [] => None,
+        points => Some(&*Box::leak(Box::new(Linearity::try_new(points)?))),
+    };
+    Ok(Converter {
+        code_zero_v: c.code_zero_v,
+        lsb_v: c.lsb_v,
+        code_min: c.code_min,
+        code_max: c.code_max,
+        tick_hz: c.tick_hz,
+        code_zero_u_v: c.code_zero_u_v.unwrap_or(d.code_zero_u_v),
+        lsb_u_rel: c.lsb_u_rel.unwrap_or(d.lsb_u_rel),
+        linearity,
+    })
 }
 
 fn policy(p: &PolicyKeys) -> Policy {
@@ -167,6 +190,7 @@ fn policy(p: &PolicyKeys) -> Policy {
         latency_s: p.latency_s.unwrap_or(d.latency_s),
         guard_sigma: p.guard_sigma.unwrap_or(d.guard_sigma),
         settling_s: p.settling_s.unwrap_or(d.settling_s),
+        reset_attempts: p.reset_attempts.unwrap_or(d.reset_attempts),
         arrival_tolerance_v: p.arrival_tolerance_v.or(d.arrival_tolerance_v),
     }
 }
@@ -225,7 +249,7 @@ fn plain(message: &str) -> String {
         ("NoiseKeys", "[noise]"),
         ("ScaleKeys", "[scale]"),
         ("PolicyKeys", "[policy]"),
-        ("SoakageBranch", "{ fraction, time_constant_s }"),
+        ("BranchKeys", "{ share, time_constant_s }"),
         ("expected f64", "expected a number"),
         ("expected i32", "expected a whole number"),
         ("expected u8", "expected a whole number"),

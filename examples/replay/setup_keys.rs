@@ -28,18 +28,21 @@ pub(crate) struct CircuitKeys {
     pub(crate) source_resistance_ohm: Option<f64>,
     pub(crate) leak_time_constant_s: Option<f64>,
     #[serde(default)]
-    pub(crate) soakage: Vec<SoakageBranch>,
+    pub(crate) soakage: Vec<BranchKeys>,
+    pub(crate) leak_u_rel: Option<f64>,
+    pub(crate) soakage_u_rel: Option<f64>,
     pub(crate) pedestal_v: Option<f64>,
     pub(crate) pedestal_u_v: Option<f64>,
     pub(crate) switch_resistance_ohm: Option<f64>,
+    pub(crate) slew_v_per_s: Option<f64>,
     pub(crate) offset_tempco_v_per_k: Option<f64>,
     pub(crate) bias_doubling_k: Option<f64>,
 }
 
 #[derive(Deserialize)]
 #[serde(deny_unknown_fields)]
-pub(crate) struct SoakageBranch {
-    pub(crate) fraction: f64,
+pub(crate) struct BranchKeys {
+    pub(crate) share: f64,
     pub(crate) time_constant_s: f64,
 }
 
@@ -51,6 +54,10 @@ pub(crate) struct ConverterKeys {
     pub(crate) code_min: i32,
     pub(crate) code_max: i32,
     pub(crate) tick_hz: f64,
+    pub(crate) code_zero_u_v: Option<f64>,
+    pub(crate) lsb_u_rel: Option<f64>,
+    #[serde(default)]
+    pub(crate) nonlinearity: Vec<(i32, f64)>,
 }
 
 #[derive(Deserialize)]
@@ -85,6 +92,7 @@ pub(crate) struct PolicyKeys {
     pub(crate) latency_s: Option<f64>,
     pub(crate) guard_sigma: Option<f64>,
     pub(crate) settling_s: Option<f64>,
+    pub(crate) reset_attempts: Option<u8>,
     pub(crate) arrival_tolerance_v: Option<f64>,
 }
 
@@ -113,16 +121,34 @@ const KEYS: &[(&str, &str, &str)] = &[
         "bias_doubling_k",
         "kelvin for a doubling of the bias current, 5 to 20; not beside offset_tempco_v_per_k",
     ),
-    ("circuit", "leak_time_constant_s", "absent"),
-    ("circuit", "soakage", "absent or an empty list"),
+    (
+        "circuit",
+        "leak_time_constant_s",
+        "the time constant of a leak across the capacitor in second, above 0; absent if it does not leak",
+    ),
+    ("circuit", "leak_u_rel", "the time constant's relative standard uncertainty, 0 to 1 (default 0)"),
+    (
+        "circuit",
+        "soakage",
+        "a list of at most 4 branches { share = 0 to 0.5, time_constant_s = above 0 }; absent if there are none",
+    ),
+    ("circuit", "soakage_u_rel", "the soakage's relative standard uncertainty, 0 to 1 (default 0)"),
     ("circuit", "pedestal_v", "a voltage within -1 and 1, V (default 0)"),
-    ("circuit", "pedestal_u_v", "a voltage from 0 to 1, V (default 0)"),
+    ("circuit", "pedestal_u_v", "a voltage from 0 to 1, V; absent if unknown"),
     ("circuit", "switch_resistance_ohm", "a resistance from 0 to 1e6, ohm (default 100)"),
+    ("circuit", "slew_v_per_s", "the slew rate of the output during a reset, V/s, above 0; absent if fast enough"),
     ("converter", "code_zero_v", "the output voltage at code 0, V"),
     ("converter", "lsb_v", "volts per code, above 0"),
-    ("converter", "code_min", "the lowest code, a whole number within -2^30 and 2^30"),
-    ("converter", "code_max", "the highest code, a whole number above code_min and at most 2^30"),
+    ("converter", "code_min", "the lowest code, a whole number within -2^29 and 2^29"),
+    ("converter", "code_max", "the highest code, a whole number above code_min and at most 2^29"),
     ("converter", "tick_hz", "the rate of the tick counter in hertz, 1 to 4e9"),
+    ("converter", "code_zero_u_v", "the standard uncertainty of code_zero_v, V, 0 to 1e6 (default 0)"),
+    ("converter", "lsb_u_rel", "the relative standard uncertainty of lsb_v, 0 to 1 (default 0)"),
+    (
+        "converter",
+        "nonlinearity",
+        "a list of 2 to 33 points [code, error in counts] with rising codes; absent if the converter is straight enough",
+    ),
     ("noise", "readout_counts", "the noise of one sample in rms counts, 0 to 1e6"),
     ("noise", "input_density", "the input's white noise, A (or V) per square root of hertz, 0 to 1"),
     ("noise", "input_flicker", "the input's 1/f noise at 1 Hz, A (or V) per square root of hertz, 0 to 1 (default 0)"),
@@ -142,6 +168,7 @@ const KEYS: &[(&str, &str, &str)] = &[
     ("policy", "latency_s", "a time from 0 to 3600, s (default 0)"),
     ("policy", "guard_sigma", "a number from 0 to 100 (default 4)"),
     ("policy", "settling_s", "a time from 0 to 3600, s (default 0.001)"),
+    ("policy", "reset_attempts", "a whole number from 1 to 255 (default 3)"),
     ("policy", "arrival_tolerance_v", "a voltage above 0, V (default one hundredth of the usable span)"),
 ];
 

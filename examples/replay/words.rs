@@ -26,6 +26,11 @@ pub(crate) fn budget(figure: &Figure) -> Vec<Part> {
         },
         Part { u: figure.drift, name: "drift", remedy: "longer zeros before and after the run, or a shorter run" },
         Part { u: figure.dead_time, name: "dead time at resets", remedy: "fewer resets, or more samples beside them" },
+        Part {
+            u: figure.leak_and_soakage,
+            name: "leak and soakage",
+            remedy: "measure their time constants and shares on this very board",
+        },
         Part { u: figure.scale, name: "gain", remedy: "calibrate the gain against a known input" },
     ];
     parts.sort_by(|a, b| b.u.total_cmp(&a.u));
@@ -92,6 +97,18 @@ pub(crate) fn reason(reason: Reason) -> (&'static str, &'static str) {
             "the zero after the run contradicts what was known when it stopped",
             "look for a reset or disturbance that no row shows, and check the noise figures",
         ),
+        Reason::DroopOutsideLimits => (
+            "the droop while the input was open is larger than the bias current within its limit can cause",
+            "look for a leaking input or reset switch, a dirty board, or a limit set too tight",
+        ),
+        Reason::SwitchStuckClosed => (
+            "after a reset the level stayed at the reset level although drift, noise or pedestal should have moved it",
+            "check whether the reset switch opens, and its drive",
+        ),
+        Reason::SwitchFailed => (
+            "as many resets in a row as reset_attempts allows have failed, and the switch was given up",
+            "replace the reset switch or repair its drive; what was measured since cannot be saved",
+        ),
         _ => ("the library gives a reason that this program does not know", "update this program"),
     }
 }
@@ -104,6 +121,9 @@ pub(crate) fn event_name(event: Event) -> &'static str {
         Event::ResetClosed => "reset_closed",
         Event::ResetOpened => "reset_opened",
         Event::ResetDue => "reset_due",
+        Event::ResetFailed { .. } => "reset_failed",
+        Event::SettlingSlow { .. } => "settling_slow",
+        Event::Decay { .. } => "decay",
         Event::Spike => "spike",
         Event::InputInZero => "input_in_zero",
         Event::ReadoutNoise { .. } => "readout_noise",
@@ -122,6 +142,14 @@ pub(crate) fn event(event: Event) -> String {
         Event::ResetClosed => "reset switch closed".to_owned(),
         Event::ResetOpened => "reset switch opened".to_owned(),
         Event::ResetDue => "reset due: the level could reach a rail before the next sample".to_owned(),
+        Event::ResetFailed { in_a_row } => format!("a reset failed, {in_a_row} in a row"),
+        Event::SettlingSlow { percent } => {
+            format!("the reset settled with {percent} % of the time constant of switch and capacitor")
+        }
+        Event::Decay { time_constant_s } => format!(
+            "the drift changed from the zero before as a level does that decays in about {time_constant_s} s: the reset \
+             switch or the board may leak"
+        ),
         Event::Spike => "a sample too far off for noise was left out".to_owned(),
         Event::InputInZero => "input began during a zero".to_owned(),
         Event::ReadoutNoise { stated_centicounts, observed_centicounts } => format!(

@@ -75,10 +75,14 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     pub(super) fn advise(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) -> Option<Mode> {
-        if sample.mode == Mode::Reset || !decide::reset::due(sample.counts, ticks, self.setup.derived()) {
+        if sample.mode == Mode::Reset || self.verification.is_latched() {
             return None;
         }
-        if !self.reset_advised {
+        let due = decide::reset::due(sample.counts, ticks, self.setup.derived());
+        if !due && !self.verification.wants_retry() {
+            return None;
+        }
+        if due && !self.reset_advised {
             self.reset_advised = true;
             notices.push(sample.tick, Event::ResetDue);
         }

@@ -1,20 +1,24 @@
 //! The conductor: samples in, steps out, a reading when asked for. It knows no pin and no clock.
 
 mod faults;
+mod idle;
 mod modes;
 mod switching;
+mod verifying;
 
 use crate::clock::{Clock, Elapsed};
+use crate::droop::Droop;
 use crate::health::Health;
-use crate::math;
+use crate::level::Level;
 use crate::notice::{Notices, Reason, Reasons};
-use crate::quantity::{Integral, Measured, Temperature, VoltageRate};
+use crate::quantity::{Integral, Temperature};
 use crate::reading::Reading;
 use crate::run::{Run, Stage};
 use crate::sample::{Mode, Sample, Step};
 use crate::setup::Setup;
+use crate::verify::Verification;
 use crate::window::Window;
-use crate::zeroing::{Stop, Zeroing, advance};
+use crate::zeroing::{Stop, Zeroing, advance, square_distance, squares};
 
 /// One integrator channel: the state beside a [`Setup`].
 ///
@@ -28,7 +32,9 @@ pub struct Channel<'s, Q> {
     setup: &'s Setup<Q>,
     clock: Clock,
     mode: Option<Mode>,
+    level: Level,
     zeroing: Zeroing,
+    droop: Droop,
     window: Window,
     run: Option<Run>,
     health: Health,
@@ -36,9 +42,10 @@ pub struct Channel<'s, Q> {
     zero_reasons: Reasons,
     /// Board temperature at the latest zero sample.
     zero_temperature: Option<Temperature>,
-    reset_ticks: u64,
-    reset_failed: bool,
+    verification: Verification,
     reset_advised: bool,
+    /// Where the zero before ended, 2^-16 counts.
+    zero_level_q16: Option<i64>,
 }
 
 impl<'s, Q: Integral> Channel<'s, Q> {
@@ -48,15 +55,17 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             setup,
             clock: Clock::default(),
             mode: None,
+            level: Level::default(),
             zeroing: Zeroing::new(setup.derived()),
+            droop: Droop::new(setup.derived()),
             window: Window::default(),
             run: None,
             health: Health::default(),
             zero_reasons: Reasons::default(),
             zero_temperature: None,
-            reset_ticks: 0,
-            reset_failed: false,
+            verification: Verification::default(),
             reset_advised: false,
+            zero_level_q16: None,
         }
     }
 
@@ -91,12 +100,14 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             self.gap(was_running, sample.tick, &mut notices);
         }
         self.zeroing.take_temperature(sample.temperature, self.setup.derived());
+        let seen = self.level.take(sample, ticks, self.setup.derived());
         match sample.mode {
-            Mode::Zero => self.zero(sample, ticks, &mut notices),
-            Mode::Integrate => self.integrate(sample, ticks, &mut notices),
-            Mode::Hold => self.hold(ticks),
-            Mode::Reset => self.reset(sample, ticks, &mut notices),
+            Mode::Zero => self.zero(sample, &seen, &mut notices),
+            Mode::Integrate => self.integrate(sample, &seen, &mut notices),
+            Mode::Hold => self.hold(sample, &seen),
+            Mode::Reset => self.reset(&seen, &mut notices),
         }
+        self.watch_opened(sample.mode, &seen, &mut notices);
         self.health.take(sample.counts);
         if sample.mode != Mode::Reset {
             self.watch(sample, &mut notices);
@@ -113,42 +124,38 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         let mut run = self.run?;
         let shown = self.zeroing.shown(derived);
         let noise_tested = self.zeroing.noise_is_tested();
-        let Stage::Stopped { at_stop, plain_var, .. } = run.stage else {
+        let Stage::Stopped { at_stop, plain_var, considered, .. } = run.stage else {
             let mut baseline = self.zeroing.trend;
+            let mut considered = self.zeroing.considered;
             self.settle(&mut run, &mut baseline);
+            if matches!(run.stage, Stage::Integrating) {
+                considered.advance(self.zeroing.pending.ticks, derived);
+                considered.follow(self.level.terms(), derived);
+            }
             advance(&mut baseline, self.zeroing.pending, derived);
-            self.zeroing.warm(&mut baseline, run.driven, derived);
+            self.zeroing.warm(&mut baseline, run.driven.ticks, derived);
             baseline.advance(0.0, run.flicker(derived));
             run.drift_q16 = run.drifted_q16(&baseline);
-            let at_stop = run.total(&baseline, &shown, derived);
+            let at_stop = run.total(&baseline, squares(considered.run(true)), &shown, derived);
             return Some(Reading::new(self.setup, &run, &at_stop, None, noise_tested));
         };
         let mut zeroing = self.zeroing;
-        zeroing.finish(self.clock.tick(), self.stop(), derived);
-        let closed_as =
-            |shown| zeroing.bracket.map(|bracket| run.closed_total(&bracket, &zeroing.trend, shown, derived));
+        zeroing.finish(self.clock.tick(), self.level.terms(), self.stop(), derived);
+        let closing = zeroing.considered.run(false);
+        let closed_as = |shown| {
+            let total = |bracket| run.closed_total(bracket, &zeroing.trend, squares(closing), shown, derived);
+            zeroing.bracket.as_ref().map(total)
+        };
         let closed = closed_as(&shown);
         if let Some(plain) = closed_as(&shown.not_widened()) {
             if self.drift_outside_limits() {
                 run.reasons.insert(Reason::DriftOutsideLimits);
             }
-            if !plain.agrees_with(&at_stop, plain_var, &shown) {
+            if !plain.agrees_with(&at_stop, plain_var, square_distance(closing, considered), &shown) {
                 run.reasons.insert(Reason::Inconsistent);
             }
         }
         Some(Reading::new(self.setup, &run, &at_stop, closed.as_ref(), noise_tested))
-    }
-
-    /// The drift of the output and its standard uncertainty, as of the latest zero.
-    pub fn drift(&self) -> Measured<VoltageRate> {
-        let lsb_v = self.setup.converter().lsb_v;
-        let trend = &self.zeroing.trend;
-        let shown = self.zeroing.shown(self.setup.derived());
-        let u = math::sqrt(trend.rate_variance() * shown.rate_widening + shown.rounding.1);
-        Measured::new(
-            VoltageRate::from_volts_per_second(f64::from(trend.rate()) * lsb_v),
-            VoltageRate::from_volts_per_second(f64::from(u) * lsb_v),
-        )
     }
 
     /// The mode of the latest sample; `None` before the first.
@@ -165,10 +172,5 @@ impl<'s, Q: Integral> Channel<'s, Q> {
 
     fn is_running(&self) -> bool {
         self.run.as_ref().is_some_and(Run::is_running)
-    }
-
-    fn drift_outside_limits(&self) -> bool {
-        let trend = &self.zeroing.trend;
-        Health::drift_outside_limits(trend.rate(), trend.rate_variance(), self.setup.derived())
     }
 }

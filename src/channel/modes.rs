@@ -2,6 +2,7 @@
 
 use super::Channel;
 use crate::health::Health;
+use crate::level::Seen;
 use crate::notice::{Event, Notices, Reason};
 use crate::quantity::Integral;
 use crate::run::Crossing;
@@ -9,16 +10,16 @@ use crate::sample::Sample;
 use crate::zeroing::Taken;
 
 impl<Q: Integral> Channel<'_, Q> {
-    pub(super) fn zero(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
+    pub(super) fn zero(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.zero_temperature = sample.temperature.or(self.zero_temperature);
         if Health::at_rail(sample.counts, derived) {
-            self.zeroing.skip(ticks);
+            self.zeroing.skip(seen.ticks);
             self.fault(Reason::AtRail, sample.tick, notices);
             return;
         }
         let stop = self.stop();
-        match self.zeroing.take(sample.tick, sample.counts, ticks, stop, derived) {
+        match self.zeroing.take(seen, stop, derived) {
             Taken::Used => {}
             Taken::Spike => {
                 if let Some(run) = self.run.as_mut() {
@@ -38,15 +39,15 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
-    pub(super) fn integrate(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
+    pub(super) fn integrate(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
         let derived = self.setup.derived();
-        self.zeroing.pending = self.zeroing.pending.saturating_add(u64::from(ticks));
-        self.zeroing.drive(ticks);
-        let filled = self.window.push(sample.tick, sample.counts, derived);
+        self.zeroing.pending.add(seen.ticks);
+        self.zeroing.drive(seen.ticks);
+        let filled = self.window.push(seen.tick, seen.level_q16, derived);
         let Some(run) = self.run.as_mut() else { return };
-        run.driven = run.driven.saturating_add(u64::from(ticks));
-        run.end_tick = sample.tick;
-        run.last_counts = sample.counts;
+        run.driven.add(seen.ticks);
+        run.end_tick = seen.tick;
+        run.last_q16 = seen.level_q16;
         if let (Some(now), Some(then)) = (sample.temperature, self.zero_temperature) {
             run.warming = Some(now.since(then));
         }
@@ -58,30 +59,30 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
-    pub(super) fn hold(&mut self, ticks: u32) {
-        self.interrupted(ticks, |crossing, ticks| {
+    pub(super) fn hold(&mut self, sample: Sample, seen: &Seen) {
+        let derived = self.setup.derived();
+        if Health::at_rail(sample.counts, derived) {
+            self.droop.enter();
+        } else {
+            self.droop.take(seen, derived);
+        }
+        self.interrupted(seen.ticks, |crossing, ticks| {
             crossing.held = crossing.held.saturating_add(ticks);
             crossing.held_last = true;
             crossing.input_open = true;
         });
     }
 
-    pub(super) fn reset(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) {
-        let derived = self.setup.derived();
+    pub(super) fn reset(&mut self, seen: &Seen, notices: &mut Notices) {
         if !self.run.and_then(|run| run.crossing).is_some_and(|crossing| crossing.input_open) {
-            self.zeroing.drive(ticks);
+            self.zeroing.drive(seen.ticks);
         }
-        self.interrupted(ticks, |crossing, ticks| {
+        self.interrupted(seen.ticks, |crossing, ticks| {
             let booked = if crossing.input_open { &mut crossing.held } else { &mut crossing.dead };
             *booked = booked.saturating_add(ticks);
             crossing.held_last = false;
         });
-        self.reset_ticks = self.reset_ticks.saturating_add(u64::from(ticks));
-        let settled = self.reset_ticks > u64::from(derived.settling_ticks);
-        if settled && !self.reset_failed && Health::outside(i64::from(sample.counts), derived.reset_window) {
-            self.reset_failed = true;
-            self.fault(Reason::ResetNotArrived, sample.tick, notices);
-        }
+        self.verify_closed(seen, notices);
     }
 
     /// Books time in an interruption; outside a run only the rate wanders.

@@ -1,27 +1,34 @@
 //! What a change of mode does to the run and to the zero.
 
 use super::Channel;
+use crate::clock::Span;
 use crate::ledger::Bridged;
 use crate::math;
 use crate::notice::{Event, Notices, Reason, Reasons};
 use crate::quantity::Integral;
 use crate::run::{Crossing, Run, Stage};
 use crate::sample::Mode;
-use crate::zeroing::advance;
+use crate::verify::Settled;
+use crate::zeroing::{advance, squares};
 
 impl<Q: Integral> Channel<'_, Q> {
     /// The switches moved at `tick`, the instant of the sample before.
     pub(super) fn switch(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
+        let mut settled = None;
         match self.mode {
             Some(Mode::Integrate) => self.leave_integrate(to, tick, notices),
             Some(Mode::Zero) => self.leave_zero(tick, notices),
+            Some(Mode::Reset) => settled = self.verification.open(self.setup.derived()),
+            Some(Mode::Hold) if self.droop_outside_limits() => {
+                self.fault(Reason::DroopOutsideLimits, tick, notices);
+            }
             _ => {}
         }
         match to {
             Mode::Zero => self.enter_zero(notices),
-            Mode::Integrate => self.enter_integrate(tick, notices),
+            Mode::Integrate => self.enter_integrate(tick, settled, notices),
             Mode::Reset => self.enter_reset(tick, notices),
-            Mode::Hold => {}
+            Mode::Hold => self.droop.enter(),
         }
         self.mode = Some(to);
     }
@@ -29,7 +36,12 @@ impl<Q: Integral> Channel<'_, Q> {
     /// The zero has told what it could.
     fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
-        self.zeroing.leave(tick, self.stop(), derived);
+        let change = self.zeroing.leave(tick, self.level.terms(), self.stop(), derived);
+        let level = self.health.last_q16();
+        let risen = self.zero_level_q16.replace(level).map_or(0.0, |before| (level - before) as f32 * (1.0 / 65536.0));
+        if let Some(time_constant_s) = change.and_then(|change| change.decay_s(risen)) {
+            notices.push(tick, Event::Decay { time_constant_s });
+        }
         if let Some((stated_centicounts, observed_centicounts)) = self.zeroing.readout_centicounts(derived) {
             notices.push(tick, Event::ReadoutNoise { stated_centicounts, observed_centicounts });
         }
@@ -48,7 +60,7 @@ impl<Q: Integral> Channel<'_, Q> {
     fn leave_integrate(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.settle_for_good(tick, notices);
-        self.zeroing.catch_up(derived);
+        self.zeroing.catch_up(self.level.terms(), derived);
         if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
             let sample_var = self.zeroing.shown(derived).sample_var;
             let before = self.window.before(tick, run.opening.as_ref(), sample_var, derived);
@@ -67,13 +79,16 @@ impl<Q: Integral> Channel<'_, Q> {
             Some(run) if run.is_running() => {
                 // The drift has stepped by flicker once on the way into the run, and does so again on the way out of it.
                 let flicker = run.flicker(derived);
-                self.zeroing.warm_for_good(run.driven, derived);
+                self.zeroing.warm_for_good(run.driven.ticks, derived);
                 self.zeroing.trend.advance(0.0, flicker);
                 run.drift_q16 = run.drifted_q16(&self.zeroing.trend);
-                let at_stop = run.total(&self.zeroing.trend, &shown, derived);
+                self.zeroing.considered.close_run();
+                let considered = self.zeroing.considered.run(false);
+                let total = |shown| run.total(&self.zeroing.trend, squares(considered), shown, derived);
+                let at_stop = total(&shown);
+                let plain_var = total(&shown.not_widened()).variance();
                 let unbroken = matches!(run.stage, Stage::Integrating);
-                let plain_var = run.total(&self.zeroing.trend, &shown.not_widened(), derived).variance();
-                run.stage = Stage::Stopped { at_stop, plain_var, unbroken };
+                run.stage = Stage::Stopped { at_stop, plain_var, considered, unbroken };
                 if let Some(crossing) = run.crossing.take() {
                     self.zeroing.resting =
                         self.zeroing.resting.saturating_add(crossing.dead).saturating_add(crossing.held);
@@ -90,30 +105,40 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// Goes on with an interrupted run, or starts one.
-    fn enter_integrate(&mut self, tick: u32, notices: &mut Notices) {
+    fn enter_integrate(&mut self, tick: u32, settled: Option<Settled>, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.window.clear();
         let Some(run) = self.run.as_mut().filter(|run| run.is_running()) else {
             let mut run = Run::new(tick, &self.zeroing.trend, self.zero_reasons);
+            run.opened_terms_q16 = self.level.terms().sum_q16();
+            run.settled = settled;
             if self.mode != Some(Mode::Zero) || !self.zeroing.level_known() {
                 self.zeroing.forget_level();
                 self.zeroing.rest(derived);
+                self.zeroing.considered.skip(self.level.terms());
                 run.crossing = Some(Crossing::default());
             }
             run.zeroed = self.zeroing.known_ticks();
             self.zeroing.begin_run();
             self.run = Some(run);
             notices.push(tick, Event::RunStarted);
+            if self.verification.is_latched() {
+                self.fault(Reason::SwitchFailed, tick, notices);
+            }
             return;
         };
         let crossing = run.crossing.unwrap_or_default();
-        advance(&mut self.zeroing.trend, crossing.dead, derived);
+        advance(&mut self.zeroing.trend, Span { ticks: crossing.dead, squares: 0 }, derived);
+        self.zeroing.considered.advance(crossing.dead, derived);
+        self.zeroing.considered.skip(self.level.terms());
         self.zeroing.trend.rest(derived.rate_walk * math::seconds(crossing.held, derived.tick_s));
-        run.driven = run.driven.saturating_add(crossing.dead);
+        run.driven.add_blind(crossing.dead);
         run.held = run.held.saturating_add(crossing.held);
         run.stage = Stage::Integrating;
         run.opening = None;
         run.opened_tick = tick;
+        run.settled = settled;
+        run.opened_terms_q16 = self.level.terms().sum_q16();
         if crossing.reset {
             run.resets = run.resets.saturating_add(1);
             notices.push(tick, Event::ResetOpened);
@@ -124,8 +149,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     fn enter_reset(&mut self, tick: u32, notices: &mut Notices) {
-        self.reset_ticks = 0;
-        self.reset_failed = false;
+        self.verification.close(self.health.last_q16());
         self.reset_advised = false;
         if let Some(run) = self.run.as_mut().filter(|run| run.is_running()) {
             if let Some(crossing) = run.crossing.as_mut() {
@@ -140,8 +164,10 @@ impl<Q: Integral> Channel<'_, Q> {
     pub(super) fn settle(&self, run: &mut Run, baseline: &mut crate::estimate::Trend) -> Option<(Bridged, bool)> {
         let derived = self.setup.derived();
         let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
-        let after = self.window.after(run.opened_tick, self.zeroing.shown(derived).sample_var, derived)?;
-        let opened_at = i64::from(after.anchor).saturating_add(math::nearest(after.level(baseline.rate())));
+        let sample_var = self.zeroing.shown(derived).sample_var;
+        let after = self.window.after(run.opened_tick, run.opened(derived), sample_var, derived)?;
+        let opened_q16 = after.anchor_q16.saturating_sub(run.opened_terms_q16);
+        let opened_at = (opened_q16 >> 16).saturating_add(math::nearest(after.level(baseline.rate())));
         let judged = crossing.reset && !crossing.held_last;
         let arrived = !judged || !crate::health::Health::outside(opened_at, derived.opened_window);
         let bridged = run.settle(after, baseline, derived);
@@ -160,10 +186,10 @@ impl<Q: Integral> Channel<'_, Q> {
         if bridged == Bridged::Guessed && !known.contains(Reason::DeadTime) {
             notices.push(tick, Event::Fault(Reason::DeadTime));
         }
-        if !arrived && run.reasons.insert(Reason::ResetNotArrived) {
-            notices.push(tick, Event::Fault(Reason::ResetNotArrived));
-        }
         self.zeroing.trend = baseline;
         self.run = Some(run);
+        if !arrived {
+            self.reset_failed(Reason::ResetNotArrived, tick, notices);
+        }
     }
 }

@@ -1,16 +1,22 @@
 //! Zero samples averaged in blocks of whole mains periods, before the filter sees them.
 
+/// One fine step, counts.
+pub(crate) fn fine_step(fine_bits: u8) -> f32 {
+    1.0 / (1_u32 << fine_bits.min(31)) as f32
+}
+
 /// A block being filled.
 ///
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
-    first: i32,
+    /// The first sample, 2^-16 counts.
+    first_q16: i64,
     count: u16,
     /// Ticks since the block began.
     span: u64,
-    /// Sums of the samples' counts above `first`, of their instants since the block began (in ticks, and coarse), and of the
-    /// squares and the product of counts and coarse instants.
+    /// Sums of the samples' levels above the first in fine steps, of their instants since the block began (in ticks, and coarse), and of the
+    /// squares and the product of levels and coarse instants.
     sum: i64,
     ticks: u64,
     coarse: i64,
@@ -23,7 +29,7 @@ pub(crate) struct Block {
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct BlockMean {
     /// The mean level: whole counts and the rest.
-    pub(crate) counts: i32,
+    pub(crate) counts: i64,
     pub(crate) rest: f32,
     /// Ticks from the mean instant of the samples to the latest of them.
     pub(crate) age: u64,
@@ -40,16 +46,16 @@ impl Block {
         self.span = self.span.saturating_add(u64::from(ticks));
     }
 
-    /// Takes a sample, `ticks` after the one before. `true` when the block is as close to `length` ticks as this spacing
+    /// Takes a level in 2^-16 counts, `ticks` after the one before. `true` when the block is as close to `length` ticks as this spacing
     /// allows.
     ///
-    /// Instants are squared in units of `length / 2^16`, so that the sums fit.
-    pub(crate) fn push(&mut self, counts: i32, ticks: u32, length: u32) -> bool {
+    /// Instants are squared in units of `length / 2^16`, levels in fine steps of `2^-fine_bits` counts, so that the sums fit.
+    pub(crate) fn push(&mut self, level_q16: i64, ticks: u32, length: u32, fine_bits: u8) -> bool {
         if self.count == 0 {
-            self.first = counts;
+            self.first_q16 = level_q16;
         }
         self.skip(ticks);
-        let above = i64::from(counts) - i64::from(self.first);
+        let above = level_q16.saturating_sub(self.first_q16) >> (16 - fine_bits);
         let coarse = (self.span >> (16 - length.leading_zeros().min(16))).min(1 << 20).cast_signed();
         self.count = self.count.saturating_add(1);
         self.sum = self.sum.saturating_add(above);
@@ -62,19 +68,21 @@ impl Block {
     }
 
     /// Empties the block; `None` if no sample is in it.
-    pub(crate) fn take(&mut self) -> Option<BlockMean> {
+    pub(crate) fn take(&mut self, fine_bits: u8) -> Option<BlockMean> {
         let block = core::mem::take(self);
         if block.count == 0 {
             return None;
         }
         let share = 1.0 / f32::from(block.count);
-        let rest = block.sum as f32 * share;
+        let fine = fine_step(fine_bits);
+        let mean = block.sum as f32 * share;
+        let (counts, part) = (block.first_q16 >> 16, (block.first_q16 & 0xFFFF) as f32 * (1.0 / 65536.0));
         let instant = block.coarse as f32 * share;
         let age = block.span.saturating_sub((block.ticks as f32 * share) as u64);
         let spread = block.coarse_squares as f32 - block.coarse as f32 * instant;
         let product = block.products as f32 - block.sum as f32 * instant;
         let line = if spread > 0.0 { product * product / spread } else { 0.0 };
-        let scatter = block.squares as f32 - block.sum as f32 * rest - line;
-        Some(BlockMean { counts: block.first, rest, age, samples: block.count, scatter, span: block.span })
+        let scatter = (block.squares as f32 - block.sum as f32 * mean - line) * fine * fine;
+        Some(BlockMean { counts, rest: part + mean * fine, age, samples: block.count, scatter, span: block.span })
     }
 }

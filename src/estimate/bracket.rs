@@ -19,9 +19,9 @@ pub(crate) struct Bracket {
 impl Bracket {
     /// The run stopped and the level went on without a break: the first zero sample, `counts + rest`, taken when the
     /// baseline is `baseline`, shows where it was. It has the variance `readout_var`.
-    pub(crate) fn on_level(counts: i32, rest: f32, readout_var: f32, baseline: &Trend) -> Self {
+    pub(crate) fn on_level(counts: i64, rest: f32, readout_var: f32, baseline: &Trend) -> Self {
         Self {
-            start_q16: movement_q16(counts, baseline).saturating_add(to_q16(rest)),
+            start_q16: movement_q16(whole_q16(counts).saturating_add(to_q16(rest)), baseline),
             rest: Constant {
                 correction: 0.0,
                 variance: readout_var + baseline.level_variance(),
@@ -32,9 +32,10 @@ impl Bracket {
     }
 
     /// The run stopped before a reset or hold, so the zero's level says nothing about it: only the zero's drift does.
-    /// `counts` is the last sample of the run, `baseline` the baseline then.
-    pub(crate) fn on_rate(counts: i32, readout_var: f32, baseline: &Trend) -> Self {
-        let mut bracket = Self::on_level(counts, 0.0, readout_var, baseline);
+    /// `level_q16` is the last sample of the run, 2^-16 counts, `baseline` the baseline then.
+    pub(crate) fn on_rate(level_q16: i64, readout_var: f32, baseline: &Trend) -> Self {
+        let mut bracket = Self::on_level(0, 0.0, readout_var, baseline);
+        bracket.start_q16 = movement_q16(level_q16, baseline);
         bracket.release_level();
         bracket
     }
@@ -49,9 +50,9 @@ impl Bracket {
         self.rest.with_level = 0.0;
     }
 
-    /// A zero sample, as weighed by the trend.
-    pub(crate) fn update(&mut self, innovation: &Innovation) {
-        self.rest.update(innovation);
+    /// A zero sample, as weighed by the trend. Gives the share of the residual that the movement takes.
+    pub(crate) fn update(&mut self, innovation: &Innovation) -> f32 {
+        self.rest.update(innovation)
     }
 
     /// The run's movement, 2^-16 counts.
@@ -65,7 +66,7 @@ impl Bracket {
     }
 }
 
-/// How far `counts` is above the baseline, 2^-16 counts.
-pub(crate) fn movement_q16(counts: i32, baseline: &Trend) -> i64 {
-    whole_q16(i64::from(counts).saturating_sub(baseline.anchor())).saturating_sub(to_q16(baseline.residual()))
+/// How far a level is above the baseline, both in 2^-16 counts.
+pub(crate) fn movement_q16(level_q16: i64, baseline: &Trend) -> i64 {
+    level_q16.saturating_sub(whole_q16(baseline.anchor())).saturating_sub(to_q16(baseline.residual()))
 }

@@ -21,8 +21,8 @@ impl Constant {
         self.with_level += dt_s * self.with_rate;
     }
 
-    /// A sample of the level, as weighed by the trend.
-    pub(crate) fn update(&mut self, innovation: &Innovation) {
+    /// A sample of the level, as weighed by the trend. Gives the share of the residual that the constant takes.
+    pub(crate) fn update(&mut self, innovation: &Innovation) -> f32 {
         let gain = self.with_level * innovation.precision;
         self.correction += gain * innovation.residual;
         let variance = self.variance - gain * self.with_level;
@@ -32,5 +32,6 @@ impl Constant {
         }
         self.with_rate -= innovation.rate_gain * self.with_level;
         self.with_level -= innovation.level_gain * self.with_level;
+        gain
     }
 }

@@ -28,6 +28,18 @@ pub(crate) struct EdgeNoise {
     pub(crate) bend_var: Option<f32>,
 }
 
+/// The level at the instant itself, known from somewhere else.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Hint {
+    /// Counts above the line's anchor.
+    pub(crate) level: f32,
+    /// Its variance as far as it is new with each hint, counts^2.
+    pub(crate) own_var: f32,
+    /// Variance of an error that all hints share, counts^2, and how much of that error the run's total already holds.
+    pub(crate) shared_var: f32,
+    pub(crate) lever: f32,
+}
+
 /// A line through the samples beside a switching instant, described at that instant. Where the samples show plainly that
 /// the input changes, a parabola.
 ///
@@ -35,9 +47,9 @@ pub(crate) struct EdgeNoise {
 /// adds to the run: `v[0] + 2 v[1] d + v[2] d^2`.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Edge {
-    /// Whole part of the level at the instant, counts.
-    pub(crate) anchor: i32,
-    /// The rest of the level; with a single sample, the level at that sample.
+    /// A level near the instant, 2^-16 counts.
+    pub(crate) anchor_q16: i64,
+    /// The rest of the level at the instant, counts; with a single sample, the level at that sample.
     level: f32,
     /// Time between the instant and a single sample, s; 0 where a line was fitted.
     reach: f32,
@@ -48,6 +60,8 @@ pub(crate) struct Edge {
     /// Input noise: what the weights change in the walk that the whole run is charged with. May be negative.
     walk: [f32; 3],
     weights: Weights,
+    /// The weight of a hint in the level, and its change with the extrapolation.
+    hinted: [f32; 2],
 }
 
 /// The weights with which the samples make up the level at the distance `-d`: a polynomial in `u = x - centre`, each of
@@ -75,37 +89,38 @@ impl Weights {
 }
 
 impl Edge {
-    /// Fits the samples `(ticks from the instant, counts)`, in the order of growing distance; `None` if there are none.
+    /// Fits the samples `(ticks from the instant, counts above anchor)`, in the order of growing distance; `None` if there
+    /// are none.
     ///
-    /// `taken(ticks)`: the weight that the sample so far from the instant has already in the line at the other end of its
+    /// `hint`: what else is known of the level at the instant. `taken(ticks)`: the weight that the sample so far from the instant has already in the line at the other end of its
     /// segment, 0 if none. Noise that both lines share is charged once and with its sign.
     pub(crate) fn fit(
         side: Side,
-        samples: impl Iterator<Item = (u32, i32)> + Clone,
+        anchor_q16: i64,
+        samples: impl Iterator<Item = (u32, f32)> + Clone,
         tick_s: f32,
         noise: EdgeNoise,
+        hint: Option<Hint>,
         taken: impl Fn(u32) -> f32,
     ) -> Option<Self> {
-        let (first_ticks, anchor) = samples.clone().next()?;
+        let (first_ticks, first) = samples.clone().next()?;
         let weight = 1.0 / noise.readout_var;
-        let points = samples.clone().map(move |(ticks, counts)| Point {
-            x: ticks as f32 * tick_s,
-            y: (i64::from(counts) - i64::from(anchor)) as f32,
-            weight,
-        });
+        let points = samples.clone().map(move |(ticks, above)| Point { x: ticks as f32 * tick_s, y: above, weight });
         let forward = match side {
             Side::Before => -1.0,
             Side::After => 1.0,
         };
         let mut edge = Self {
-            anchor,
-            level: 0.0,
+            anchor_q16,
+            level: first,
             reach: first_ticks as f32 * tick_s,
             slope: None,
             readout: [0.0; 3],
             walk: [0.0; 3],
             weights: Weights { centre: 0.0, at_instant: [1.0, 0.0, 0.0], per_second: [0.0; 3] },
+            hinted: [0.0; 2],
         };
+        let (mut left, mut bend_at) = (0.0, [0.0; 2]);
         let mut misfit = 1.0;
         if let Some(line) = Line::fit(points.clone()) {
             let share = line.level_variance * weight;
@@ -118,22 +133,62 @@ impl Edge {
             let bend = Bend::of(&line, points.clone(), noise);
             let mut slope = line.slope;
             if let Some(bend) = bend {
-                let (taken_off, left) = bend.share_to_take_off(noise.bend_var);
+                let taken_off;
+                (taken_off, left) = bend.share_to_take_off(noise.bend_var);
                 edge.level += taken_off * bend.amount * bend.at_instant;
                 slope -= taken_off * bend.amount * bend.per_second;
                 bend.add_to(&mut edge.weights, taken_off);
-                let forms = |a: f32, b: f32| left * a * b;
-                edge.readout = [
-                    forms(bend.at_instant, bend.at_instant),
-                    forms(bend.at_instant, bend.per_second),
-                    forms(bend.per_second, bend.per_second),
-                ];
+                bend_at = [bend.at_instant, bend.per_second];
             }
             edge.slope = Some(forward * slope);
             misfit = unexplained(&line, bend, points.clone(), noise);
         }
-        edge.charge(samples.map(|(ticks, _)| (ticks as f32 * tick_s, taken(ticks))), noise, misfit);
+        let distances = samples.map(|(ticks, _)| (ticks as f32 * tick_s, taken(ticks)));
+        edge.add_error(left, bend_at);
+        edge.charge(distances.clone(), noise, misfit);
+        if let Some(hint) = hint.filter(|_| edge.slope.is_some()) {
+            let gain = edge.take_hint(&hint, forward);
+            edge.add_error(left, [bend_at[0] * (1.0 - gain[0]), bend_at[1] - bend_at[0] * gain[1]]);
+            edge.add_error(hint.own_var, gain);
+            edge.charge(distances, noise, misfit);
+        }
         Some(edge)
+    }
+
+    /// Pulls the line toward a hint and gives the gains of level and extrapolation; the quadratic forms start afresh.
+    ///
+    /// With the line's variance `v`, the gain `(v - lever s) / (v + own + s)` makes the total's variance least, where `s` is
+    /// the variance of the shared error: that adds up from hint to hint, and in the end it is better not to ask.
+    fn take_hint(&mut self, hint: &Hint, forward: f32) -> [f32; 2] {
+        let [level_var, cross, _] = self.readout;
+        let sum = level_var + hint.own_var + hint.shared_var;
+        let gain = ((level_var - hint.lever * hint.shared_var) / sum).max(0.0);
+        let gains = [gain, if level_var > 0.0 { gain * cross / level_var } else { 0.0 }];
+        let off = hint.level - self.level;
+        self.level += gains[0] * off;
+        self.slope = self.slope.map(|slope| slope - forward * gains[1] * off);
+        for (at_instant, per_second) in self.weights.at_instant.iter_mut().zip(&mut self.weights.per_second) {
+            *per_second -= gains[1] * *at_instant;
+            *at_instant *= 1.0 - gains[0];
+        }
+        self.hinted = gains;
+        self.readout = [0.0; 3];
+        self.walk = [0.0; 3];
+        gains
+    }
+
+    /// Adds an error of variance `var` that weighs `at` in the level and in the extrapolation.
+    fn add_error(&mut self, var: f32, at: [f32; 2]) {
+        let [level, per_second] = at;
+        self.readout[0] += var * level * level;
+        self.readout[1] += var * level * per_second;
+        self.readout[2] += var * per_second * per_second;
+    }
+
+    /// How much of a hint is in the level extrapolated by `d` seconds.
+    pub(crate) fn hinted(&self, d: f32) -> f32 {
+        let [level, per_second] = self.hinted;
+        level + d * per_second
     }
 
     /// Works out the quadratic forms from the samples' distances and the weights that are taken already.
@@ -142,7 +197,8 @@ impl Edge {
     /// differently: of an increment between two samples the run keeps, instead of all, the square of the sum `h` of the
     /// weights of the samples nearer to the instant.
     fn charge(&mut self, samples: impl Iterator<Item = (f32, f32)>, noise: EdgeNoise, misfit: f32) {
-        let (mut h, mut k, mut other, mut near) = (0.0_f32, 0.0_f32, 0.0_f32, 0.0_f32);
+        let [mut h, mut k] = self.hinted;
+        let (mut other, mut near) = (0.0_f32, 0.0_f32);
         for (far, shared) in samples {
             let span = noise.level_walk * (far - near);
             self.walk[0] += span * (h * h - 1.0 + 2.0 * other * (1.0 - h));

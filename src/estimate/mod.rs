@@ -13,10 +13,10 @@ mod octave;
 mod onset;
 mod trend;
 
-pub(crate) use block::{Block, BlockMean};
+pub(crate) use block::{Block, BlockMean, fine_step};
 pub(crate) use bracket::{Bracket, movement_q16};
 pub(crate) use constant::Constant;
-pub(crate) use edge::{Edge, EdgeNoise, Side, Weights};
+pub(crate) use edge::{Edge, EdgeNoise, Hint, Side, Weights};
 pub use line::{Line, Point};
 pub use noise_fit::{Figure, NoiseFigures};
 pub use octave::{Octave, Octaves};

@@ -90,14 +90,14 @@ pub struct Trend {
 impl Trend {
     /// Starts at a level known with `level_variance` (counts^2, above 0) and a rate known with `rate_variance`
     /// ((counts/s)^2; 0 holds the rate for good unless it walks).
-    pub const fn new(counts: i32, level_variance: f32, rate: f32, rate_variance: f32) -> Self {
-        Self { anchor: counts as i64, level: 0.0, rate, level_given_rate: level_variance, coupling: 0.0, rate_variance }
+    pub const fn new(counts: i64, level_variance: f32, rate: f32, rate_variance: f32) -> Self {
+        Self { anchor: counts, level: 0.0, rate, level_given_rate: level_variance, coupling: 0.0, rate_variance }
     }
 
     /// Forgets the level, keeps the rate and its variance: after a reset, or when the input was connected.
     /// The new level is `counts + residual`.
-    pub const fn restart(&mut self, counts: i32, residual: f32, level_variance: f32) {
-        self.anchor = counts as i64;
+    pub const fn restart(&mut self, counts: i64, residual: f32, level_variance: f32) {
+        self.anchor = counts;
         self.level = residual;
         self.level_given_rate = level_variance;
         self.coupling = 0.0;
@@ -164,8 +164,8 @@ impl Trend {
     /// loses nothing of a slow drift, however far the level has gone.
     ///
     /// The sample is `counts + rest`: a mean of several is not whole.
-    pub fn update(&mut self, counts: i32, rest: f32, variance: f32) -> Innovation {
-        let residual = i64::from(counts).saturating_sub(self.anchor) as f32 - self.level + rest;
+    pub fn update(&mut self, counts: i64, rest: f32, variance: f32) -> Innovation {
+        let residual = counts.saturating_sub(self.anchor) as f32 - self.level + rest;
         let shared = self.coupling * self.rate_variance;
         let from_rate = (self.coupling * shared).min(LEVEL_VARIANCE_MAX);
         let given_rate = self.level_given_rate + variance;
@@ -176,7 +176,7 @@ impl Trend {
         let level_gain = (self.level_given_rate + from_rate) * precision;
 
         if math::abs(residual) < ANCHOR_REACH {
-            self.anchor = i64::from(counts);
+            self.anchor = counts;
             self.level = rest - residual * (variance * precision);
         } else {
             self.level += level_gain * residual;

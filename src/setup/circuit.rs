@@ -1,5 +1,6 @@
 //! The analog side: capacitor, input, rails, data-sheet limits.
 
+use super::soakage::{SOAKAGE_BRANCHES, SoakageBranch};
 use super::temperature::TemperatureLaw;
 use crate::error::{SetupError, check};
 
@@ -29,21 +30,36 @@ pub struct Circuit {
     /// Resistance of the source at a current input, ohm: the offset voltage drives current through it. Above 0.
     /// A voltage input uses its input resistance instead.
     pub source_resistance_ohm: f64,
+    /// Time constant of a leak across the capacitor, s: a feedback resistor times the capacitance, or the insulation's;
+    /// `None`: no leak to speak of. What leaks is put back, so that a run may last many time constants. The limit: a
+    /// drift of the converter's own offset counts as input, as much as `offset / tau` of the drift of the output.
+    pub leak_time_constant_s: Option<f64>,
+    /// Relative standard uncertainty of `leak_time_constant_s`: 0 to 1.
+    pub leak_u_rel: f64,
+    /// The dielectric's branches; those that are not there are [`SoakageBranch::NONE`].
+    pub soakage: [SoakageBranch; SOAKAGE_BRANCHES],
+    /// Relative standard uncertainty of what the branches make of the level, shares and time constants together: 0 to 1.
+    pub soakage_u_rel: f64,
     /// Step of the output when the reset switch opens (charge injection), V: within +-1.
     pub pedestal_v: f64,
-    /// Standard uncertainty of the pedestal, V: 0 to 1. Five times it is allowed when a reset is verified.
-    pub pedestal_u_v: f64,
+    /// Standard uncertainty of the pedestal, V: 0 to 1; `None`: not known. Where it is known, the level just after a
+    /// reset is known from the closed switch as well as from the samples that follow; and five times it is allowed when
+    /// a reset is verified.
+    pub pedestal_u_v: Option<f64>,
     /// On-resistance of the reset switch, ohm: 0 to 1e6.
     pub switch_resistance_ohm: f64,
+    /// Slew rate of the output while the switch is closed, V/s: above 0; `None`: fast enough.
+    pub slew_v_per_s: Option<f64>,
     /// How the drift follows the board's temperature. Only used where samples carry a temperature.
     pub temperature_law: TemperatureLaw,
-    /// Relative standard uncertainty of the whole gain (capacitor, resistor, converter reference): 0 to 1.
+    /// Relative standard uncertainty of the gain (capacitor and input resistor): 0 to 1. The converter's is its own.
     pub gain_u_rel: f64,
 }
 
 impl Circuit {
     /// A 100 nF inverting integrator with a current input between +-10 V rails, with an op amp of 1 mV and 100 pA
-    /// limits behind a source of 1 Gohm, a switch of 100 ohm that injects nothing, and a gain taken as exact.
+    /// limits behind a source of 1 Gohm, a switch of 100 ohm of which no more is known, a capacitor that neither leaks nor
+    /// soaks, and a gain taken as exact.
     pub const DEFAULT: Self = Self {
         capacitance_f: 100e-9,
         input_resistance_ohm: None,
@@ -54,9 +70,14 @@ impl Circuit {
         offset_limit_v: 1e-3,
         bias_limit_a: 100e-12,
         source_resistance_ohm: 1e9,
+        leak_time_constant_s: None,
+        leak_u_rel: 0.0,
+        soakage: [SoakageBranch::NONE; SOAKAGE_BRANCHES],
+        soakage_u_rel: 0.0,
         pedestal_v: 0.0,
-        pedestal_u_v: 0.0,
+        pedestal_u_v: None,
         switch_resistance_ohm: 100.0,
+        slew_v_per_s: None,
         temperature_law: TemperatureLaw::Unknown,
         gain_u_rel: 0.0,
     };
@@ -76,8 +97,21 @@ impl Circuit {
         (self.offset_limit_v / self.offset_resistance_ohm() + self.bias_limit_a) / self.capacitance_f
     }
 
+    /// How long the reset switch has to stay closed until a level that was `swing_v` away is within `residual_v` of the
+    /// reset level, s: `swing / slew + R_on C ln(swing / residual)`; 0 if it is already.
+    pub const fn settling_time_s(&self, swing_v: f64, residual_v: f64) -> f64 {
+        if !(swing_v > residual_v && residual_v > 0.0) {
+            return 0.0;
+        }
+        let slewing = match self.slew_v_per_s {
+            Some(slew) => swing_v / slew,
+            None => 0.0,
+        };
+        slewing + self.switch_resistance_ohm * self.capacitance_f * ln_above(swing_v / residual_v)
+    }
+
     /// Resistance through which the offset voltage drives a current.
-    pub(super) const fn offset_resistance_ohm(&self) -> f64 {
+    pub(crate) const fn offset_resistance_ohm(&self) -> f64 {
         match self.input_resistance_ohm {
             None => self.source_resistance_ohm,
             Some(r) => r,
@@ -118,16 +152,35 @@ impl Circuit {
             "above 0 and at most 1e18 (ohm)"
         );
         check!(self.pedestal_v >= -1.0 && self.pedestal_v <= 1.0, "pedestal_v", "within -1 and 1 (volt)");
-        check!(self.pedestal_u_v >= 0.0 && self.pedestal_u_v <= 1.0, "pedestal_u_v", "0 to 1 (volt)");
+        if let Some(u) = self.pedestal_u_v {
+            check!(u >= 0.0 && u <= 1.0, "pedestal_u_v", "0 to 1 (volt)");
+        }
+        check!(self.leak_u_rel >= 0.0 && self.leak_u_rel <= 1.0, "leak_u_rel", "0 to 1");
+        check!(self.soakage_u_rel >= 0.0 && self.soakage_u_rel <= 1.0, "soakage_u_rel", "0 to 1");
         check!(
             self.switch_resistance_ohm >= 0.0 && self.switch_resistance_ohm <= 1e6,
             "switch_resistance_ohm",
             "0 to 1e6 (ohm)"
         );
+        if let Some(slew) = self.slew_v_per_s {
+            check!(slew > 0.0 && slew <= 1e12, "slew_v_per_s", "above 0 and at most 1e12 (volt per second)");
+        }
         if let Err(e) = self.temperature_law.validate() {
             return Err(e);
         }
         check!(self.gain_u_rel >= 0.0 && self.gain_u_rel <= 1.0, "gain_u_rel", "0 to 1");
         Ok(())
     }
+}
+
+/// The logarithm of a number above 1, at most a thousandth too large.
+const fn ln_above(x: f64) -> f64 {
+    /// e^(1/1024).
+    const STEP: f64 = 1.000_977_039_492_416_5;
+    let (mut ln, mut power) = (0.0, 1.0);
+    while power < x && ln < 800.0 {
+        ln += 1.0 / 1024.0;
+        power *= STEP;
+    }
+    ln
 }

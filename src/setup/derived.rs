@@ -1,8 +1,9 @@
 //! What the estimator needs of a set-up, worked out once so that no sample pays for a division.
 
-use super::{Circuit, Converter, Noise, Policy, TemperatureLaw};
+use super::{Circuit, Converter, Linearity, Noise, Policy, SOAKAGE_BRANCHES, TemperatureLaw};
 use crate::error::{SetupError, check};
 use crate::estimate::cusum_threshold;
+use crate::level::{BranchLaw, LeakLaw, SoakageLaw};
 
 /// How the drift follows the temperature: variance of the change of the rate for each thousandth, before anything is
 /// measured, (counts/s)^2, rectangular within the data sheet's limit.
@@ -51,6 +52,17 @@ pub(crate) struct Derived {
     pub(crate) opened_window: (i32, i32),
     /// Ticks after closing when the reset level must have been reached.
     pub(crate) settling_ticks: u32,
+    /// Ticks that the amplifier is given to follow the switch.
+    pub(crate) follow_ticks: u32,
+    pub(crate) min_on_time_s: f64,
+    /// One over `R_on C`, 1/s; 0: not known.
+    pub(crate) per_switch_tau: f32,
+    /// Resets in a row that may fail.
+    pub(crate) reset_attempts: u8,
+    /// Step when the reset switch opens and its variance, counts and counts^2; `None`: unknown.
+    pub(crate) pedestal: Option<(f32, f32)>,
+    /// Noise that an opening switch freezes on the capacitor, `k T / C`, counts^2.
+    pub(crate) ktc_var: f32,
     /// Longest step of time within a whole run, ticks.
     pub(crate) gap_limit_ticks: u32,
     /// Largest rate of the level at the worst-case input and drift, 2^-16 counts per tick; 0: unknown.
@@ -72,6 +84,23 @@ pub(crate) struct Derived {
     pub(crate) bend_var: Option<f32>,
     /// Samples in the fits beside a reset.
     pub(crate) edge_samples: u8,
+    /// Bits of a fraction of a count with which samples are kept: as many as 32 bits have to spare for the converter's
+    /// span, at most 8.
+    pub(crate) fine_bits: u8,
+    linearity: Option<&'static Linearity>,
+    /// Reset level, 2^-16 counts.
+    reset_q16: i64,
+    pub(crate) leak: Option<LeakLaw>,
+    pub(crate) soakage: Option<SoakageLaw>,
+    /// Variance that the readout noise of one sample adds to the effective level through the leak, counts^2 per squared tick.
+    pub(crate) leak_walk: f32,
+    /// Relative standard uncertainties of what leaks and of what soaks.
+    pub(crate) terms_u_rel: [f32; 2],
+    /// Relative variance of the gain.
+    pub(crate) gain_var_rel: f32,
+    /// Droop that the data sheet allows, counts/s, and its variance, rectangular.
+    pub(crate) droop_limit: f32,
+    pub(crate) droop_prior_var: f32,
 }
 
 impl Derived {
@@ -103,7 +132,23 @@ impl Derived {
         );
         let flicker = noise.input_flicker * per_input;
         check!(flicker <= 1e6, "input_flicker", "small enough to change the drift by at most 1e6 counts/s");
-        let rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
+        let mut rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
+        let mut leak = None;
+        let mut leak_per_tick = 0.0;
+        if let Some(time_constant_s) = circuit.leak_time_constant_s {
+            leak = match LeakLaw::new(time_constant_s, converter.tick_hz) {
+                Ok(law) => Some(law),
+                Err(e) => return Err(e),
+            };
+            leak_per_tick = 1.0 / (time_constant_s * converter.tick_hz);
+            // What leaks at the reset level, by the offsets of amplifier and converter, is drift as well.
+            let leaking_v = circuit.offset_limit_v + 2.0 * converter.code_zero_u_v;
+            rate_limit += leaking_v / time_constant_s / converter.lsb_v;
+        }
+        let soakage = match soakage(circuit, converter.tick_hz) {
+            Ok(law) => law,
+            Err(e) => return Err(e),
+        };
         check!(rate_limit <= 1e9, "offset_limit_v", "such that, with bias_limit_a, the drift is at most 1e9 counts/s");
 
         let per_current = 1.0 / (circuit.capacitance_f * converter.lsb_v);
@@ -121,6 +166,7 @@ impl Derived {
                 }
             }
         };
+        let droop_limit = circuit.bias_limit_a * per_current;
         let low = ceil(converter.code(circuit.rail_low_v));
         let high = floor(converter.code(circuit.rail_high_v));
         let usable = (
@@ -143,7 +189,11 @@ impl Derived {
             "reset_level_v",
             "inside the converter's range and the rails (volt)"
         );
-        let opened_tolerance = tolerance + 5.0 * circuit.pedestal_u_v / converter.lsb_v;
+        let tolerance = tolerance + 5.0 * converter.code_zero_u_v / converter.lsb_v;
+        let opened_tolerance = match circuit.pedestal_u_v {
+            Some(u) => tolerance + 5.0 * u / converter.lsb_v,
+            None => tolerance,
+        };
         let opened_code = converter.code(circuit.reset_level_v + circuit.pedestal_v);
 
         let worst_rate = match policy.worst_input {
@@ -170,7 +220,15 @@ impl Derived {
         // Without blocks the sample period is not known: a millisecond is on the side of fewer false alarms.
         let innovation_s = if policy.zero_block_s > 0.0 { policy.zero_block_s } else { 1e-3 };
         let sigma = noise.readout_counts + QUANTISATION_RMS;
-        let settling_s = policy.settling_s + 10.0 * circuit.switch_resistance_ohm * circuit.capacitance_f;
+        let min_on_time_s = policy.settling_s + circuit.settling_time_s(span * converter.lsb_v, 0.5 * converter.lsb_v);
+        let switch_tau_s = circuit.switch_resistance_ohm * circuit.capacitance_f;
+        let pedestal = match circuit.pedestal_u_v {
+            Some(u) => {
+                let (pedestal, u) = (circuit.pedestal_v / converter.lsb_v, u / converter.lsb_v);
+                Some((pedestal as f32, (u * u) as f32))
+            }
+            None => None,
+        };
         Ok(Self {
             tick_s: (1.0 / converter.tick_hz) as f32,
             integral_per_count: 1.0 / counts_per_integral,
@@ -184,7 +242,13 @@ impl Derived {
             usable,
             reset_window: (floor(reset_code - tolerance), ceil(reset_code + tolerance)),
             opened_window: (floor(opened_code - opened_tolerance), ceil(opened_code + opened_tolerance)),
-            settling_ticks: (settling_s * converter.tick_hz) as u32,
+            settling_ticks: (min_on_time_s * converter.tick_hz) as u32,
+            follow_ticks: (policy.settling_s * converter.tick_hz) as u32,
+            min_on_time_s,
+            per_switch_tau: if switch_tau_s > 0.0 { (1.0 / switch_tau_s) as f32 } else { 0.0 },
+            reset_attempts: policy.reset_attempts,
+            pedestal,
+            ktc_var: (BOLTZMANN * ROOM_K / circuit.capacitance_f / (converter.lsb_v * converter.lsb_v)) as f32,
             gap_limit_ticks: (policy.gap_limit_s * converter.tick_hz) as u32,
             worst_rate_q16: per_tick_q16 as u64 + (worst_rate > 0.0) as u64,
             guard_counts: ceil(worst_rate * policy.latency_s + policy.guard_sigma * sigma),
@@ -195,7 +259,54 @@ impl Derived {
             frozen_samples: if noise.readout_counts >= 0.5 { policy.frozen_samples } else { 0 },
             bend_var,
             edge_samples: policy.edge_samples,
+            fine_bits: fine_bits(converter),
+            linearity: converter.linearity,
+            reset_q16: (reset_code * 65536.0) as i64,
+            leak,
+            soakage,
+            leak_walk: ((noise.readout_counts * noise.readout_counts + 1.0 / 12.0) * leak_per_tick * leak_per_tick)
+                as f32,
+            terms_u_rel: [circuit.leak_u_rel as f32, circuit.soakage_u_rel as f32],
+            gain_var_rel: (circuit.gain_u_rel * circuit.gain_u_rel + converter.lsb_u_rel * converter.lsb_u_rel) as f32,
+            droop_limit: droop_limit as f32,
+            droop_prior_var: (droop_limit * droop_limit / 3.0) as f32,
         })
+    }
+
+    /// Variance of the mean of `samples` samples, counts^2: rounding that nothing dithers does not average.
+    ///
+    /// Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside what
+    /// the walk does to a run longer than the block.
+    pub(crate) fn block_var(&self, samples: u16) -> f32 {
+        if self.dithered { self.readout_var / f32::from(samples) } else { self.readout_var }
+    }
+
+    /// What the variance of one of many blocks in a row is worth: rounding that nothing dithers keeps its sign over them.
+    pub(crate) fn serial_var(&self, block_var: f32) -> f32 {
+        if self.dithered { block_var } else { 4.0 * block_var }
+    }
+
+    /// Added to the variance of a rate that `ticks` of samples have told, for rounding that nothing dithers, (counts/s)^2.
+    pub(crate) fn rate_rounding_var(&self, ticks: u64) -> f32 {
+        if self.dithered || ticks == 0 {
+            return 0.0;
+        }
+        let known_s = ticks as f32 * self.tick_s;
+        2.0 * QUANTISATION_VAR / (known_s * known_s)
+    }
+
+    /// The level that a straight converter would have given, 2^-16 counts.
+    pub(crate) fn linear_q16(&self, code: i32) -> i64 {
+        match self.linearity {
+            Some(table) => table.linear_q16(code),
+            None => i64::from(code) << 16,
+        }
+    }
+
+    /// Whole counts of a level above the reset level.
+    pub(crate) fn above_reset(&self, linear_q16: i64) -> i32 {
+        // Codes and reset level are within 2^29 and the table's errors within 2^14.
+        ((linear_q16 - self.reset_q16 + 0x8000) >> 16) as i32
     }
 
     /// Largest movement of the level in `ticks` at the worst-case input, counts, rounded up; 0 if that is not known.
@@ -205,11 +316,41 @@ impl Derived {
     }
 }
 
+/// Boltzmann constant, J/K (SI Brochure, 9th edition: exact), and the temperature that kTC noise is reckoned for.
+const BOLTZMANN: f64 = 1.380_649e-23;
+const ROOM_K: f64 = 300.0;
+
 /// A walk by half a count in this time dithers the readings as well as half a count of noise, s.
 const DITHER_S: f64 = 0.1;
 
-/// Rms error of rounding to whole counts, `1/sqrt(12)` (IEEE Std 1241).
+/// Variance of rounding to whole counts (IEEE Std 1241).
+pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
+
+/// Its root.
 const QUANTISATION_RMS: f64 = 0.288_675_134_594_812_9;
+
+/// The laws of the branches; `None` if there are none.
+const fn soakage(circuit: &Circuit, tick_hz: f64) -> Result<Option<SoakageLaw>, SetupError> {
+    let [a, b, c, d]: &[super::SoakageBranch; SOAKAGE_BRANCHES] = &circuit.soakage;
+    let shares = a.share + b.share + c.share + d.share;
+    match (
+        BranchLaw::new(a, tick_hz),
+        BranchLaw::new(b, tick_hz),
+        BranchLaw::new(c, tick_hz),
+        BranchLaw::new(d, tick_hz),
+    ) {
+        (Ok(a), Ok(b), Ok(c), Ok(d)) => Ok(if shares > 0.0 { Some([a, b, c, d]) } else { None }),
+        (Err(e), ..) | (_, Err(e), ..) | (_, _, Err(e), _) | (.., Err(e)) => Err(e),
+    }
+}
+
+/// Spare bits above the converter's span and a sign.
+const fn fine_bits(converter: &Converter) -> u8 {
+    let span = converter.code_max.abs_diff(converter.code_min);
+    // At most 2^30, so no less than one leading zero.
+    let spare = span.leading_zeros() - 1;
+    if spare < 8 { spare as u8 } else { 8 }
+}
 
 const fn floor(x: f64) -> i32 {
     let whole = x as i32;

@@ -3,18 +3,23 @@
 mod circuit;
 mod converter;
 mod derived;
+mod linearity;
 mod noise;
 mod policy;
+mod soakage;
 mod temperature;
 
 use core::marker::PhantomData;
 
 pub use circuit::Circuit;
 pub use converter::Converter;
-pub(crate) use derived::{Derived, WarmthLaw};
+pub(crate) use derived::{Derived, QUANTISATION_VAR, WarmthLaw};
+pub use linearity::Linearity;
 pub use noise::Noise;
 pub(crate) use policy::EDGE_SAMPLES_MAX;
 pub use policy::Policy;
+pub(crate) use soakage::SOAKAGE_BRANCHES;
+pub use soakage::{Absorption, SoakageBranch};
 pub use temperature::TemperatureLaw;
 
 use crate::error::SetupError;
@@ -27,7 +32,7 @@ use crate::quantity::Integral;
 ///
 /// const LAMP_MONITOR: Setup<Charge> = Setup::new(
 ///     Circuit { capacitance_f: 470e-9, rail_low_v: -2.4, rail_high_v: 2.4, ..Circuit::DEFAULT },
-///     Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, code_min: 0, code_max: 65535, tick_hz: 1e6 },
+///     Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, ..Converter::DEFAULT },
 ///     Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0, ..Noise::NONE },
 ///     Policy { worst_input: Some(0.5e-6), ..Policy::DEFAULT },
 /// );
@@ -84,6 +89,12 @@ impl<Q: Integral> Setup<Q> {
             Ok(setup) => setup,
             Err(e) => panic!("{}", e.parameter),
         }
+    }
+
+    /// How long the reset switch has to stay closed so that less than half a code is left of the widest swing, s:
+    /// settling of the amplifier, slewing, and `R_on C ln(range / half a code)`.
+    pub const fn min_on_time_s(&self) -> f64 {
+        self.derived.min_on_time_s
     }
 
     /// The circuit as given.

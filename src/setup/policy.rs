@@ -36,15 +36,19 @@ pub struct Policy {
     pub latency_s: f64,
     /// How many standard deviations of the readout the reset advice keeps from the rail: 0 to 100.
     pub guard_sigma: f64,
-    /// Time the amplifier needs to follow the closed switch, s: 0 to 3600; ten times `R_on C` is added by the crate.
+    /// Time the amplifier needs to follow the closed switch besides slewing, s: 0 to 3600. For how long the switch has to
+    /// stay closed see [`Setup::min_on_time_s`](crate::Setup::min_on_time_s).
     pub settling_s: f64,
+    /// Resets in a row that may fail before the switch is given up: 1 to 255. Until then another is asked for; from then on
+    /// none, and no reading is good before [`Channel::switch_repaired`](crate::Channel::switch_repaired).
+    pub reset_attempts: u8,
     /// How far from the reset level a reset may arrive, V: above 0; `None`: one hundredth of the usable span.
     pub arrival_tolerance_v: Option<f64>,
 }
 
 impl Policy {
-    /// Blocks of 0.1 s, a false alarm in four months of zeros, fits of 16 samples, gaps and resets up to 1 s, 64 equal readings mean frozen, no worst-case input or slew known, 4 sigma of guard,
-    /// 1 ms of settling.
+    /// Blocks of 0.1 s, a false alarm in four months of zeros, fits of 16 samples, gaps and resets up to 1 s, 64 equal
+    /// readings mean frozen, no worst-case input or slew known, 4 sigma of guard, 1 ms of settling, 3 attempts at a reset.
     pub const DEFAULT: Self = Self {
         zero_block_s: 0.1,
         false_alarm_s: 1e7,
@@ -56,6 +60,7 @@ impl Policy {
         latency_s: 0.0,
         guard_sigma: 4.0,
         settling_s: 1e-3,
+        reset_attempts: 3,
         arrival_tolerance_v: None,
     };
 
@@ -77,6 +82,7 @@ impl Policy {
         check!(self.latency_s >= 0.0 && self.latency_s <= 3600.0, "latency_s", "0 to 3600 (second)");
         check!(self.guard_sigma >= 0.0 && self.guard_sigma <= 100.0, "guard_sigma", "0 to 100");
         check!(self.settling_s >= 0.0 && self.settling_s <= 3600.0, "settling_s", "0 to 3600 (second)");
+        check!(self.reset_attempts >= 1, "reset_attempts", "1 to 255");
         if let Some(tolerance) = self.arrival_tolerance_v {
             check!(tolerance > 0.0 && tolerance <= 1e3, "arrival_tolerance_v", "above 0 and at most 1000 (volt)");
         }

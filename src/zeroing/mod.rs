@@ -1,25 +1,28 @@
 //! What the zeros tell: level and drift, how they bracket the run before, and whether the input really was zero.
 
+mod considered;
 mod gate;
 mod noise;
 mod samples;
 mod warmth;
 
+pub(crate) use considered::{Considered, square_distance, squares};
 use gate::Gate;
 use noise::NoiseSeen;
-pub(crate) use noise::QUANTISATION_VAR;
 use warmth::Warmth;
 
+use crate::clock::Span;
 use crate::estimate::{Block, Bracket, Cusum, Trend, Walk};
+use crate::level::Terms;
 use crate::math;
 use crate::quantity::Temperature;
-use crate::setup::Derived;
+use crate::setup::{Derived, QUANTISATION_VAR};
 
 /// How the run before stopped, for its bracket.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Stop {
-    /// Its last sample, and what that adds to the variance of a total that ends on it.
-    pub(crate) last_counts: i32,
+    /// Its last sample, 2^-16 counts, and what that adds to the variance of a total that ends on it.
+    pub(crate) last_q16: i64,
     pub(crate) last_var: f32,
     /// Whether the level went on into the zero without an interruption.
     pub(crate) unbroken: bool,
@@ -46,11 +49,31 @@ struct Checkpoint {
     trend: Trend,
     bracket: Option<Bracket>,
     warmth: Warmth,
+    considered: Considered,
     tick: u32,
-    /// Ticks from the trend's instant to the present trend's.
-    age: u64,
+    /// From the trend's instant to the present trend's.
+    age: Span,
     /// Innovations in the zero before it.
     known: u16,
+}
+
+/// How the drift that a zero found differs from the one expected.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct RateChange {
+    /// Change of the estimate, counts/s, and its variance if the drift has not changed.
+    pub(crate) off: f32,
+    pub(crate) off_var: f32,
+    /// How much of a change of the drift the estimate has followed.
+    pub(crate) share: f32,
+}
+
+impl RateChange {
+    /// The time constant of a decay that explains the change of a level that is `risen` counts farther from the reset level
+    /// than it was in the zero before, s; `None` if it needs no explaining, or not that one.
+    pub(crate) fn decay_s(&self, risen: f32) -> Option<u32> {
+        let clear = self.off * self.off > 25.0 * self.off_var && self.off * risen < 0.0;
+        clear.then(|| (-risen * self.share / self.off) as u32)
+    }
 }
 
 /// The filter of the zeros, which carries the baseline through the runs.
@@ -60,8 +83,10 @@ pub(crate) struct Zeroing {
     pub(crate) trend: Trend,
     /// How the run before is bracketed; `None` before the zero has found the level.
     pub(crate) bracket: Option<Bracket>,
-    /// Ticks by which the latest sample is ahead of the trend.
-    pub(crate) pending: u64,
+    /// By how much the latest sample is ahead of the trend.
+    pub(crate) pending: Span,
+    /// What wrong figures of leak and soakage would do.
+    pub(crate) considered: Considered,
     /// Variance of a step that the rate has made since the run, (counts/s)^2.
     pub(crate) rate_step: f32,
     /// Ticks in which only the rate wandered.
@@ -75,8 +100,8 @@ pub(crate) struct Zeroing {
     gate: Gate,
     noise: NoiseSeen,
     warmth: Warmth,
-    /// The drift and its variance as expected when the zero found its level.
-    expected_rate: Option<(f32, f32)>,
+    /// The drift and its variance as expected when the zero found its level, and what leak and soakage may have made of it.
+    expected_rate: Option<(f32, f32, [f32; 2])>,
     /// How long the latest zero that is over had known its level, ticks.
     told_ticks: u64,
     /// Ticks and innovations since the zero found its level.
@@ -108,7 +133,8 @@ impl Zeroing {
         Self {
             trend: Trend::new(0, derived.readout_var, 0.0, derived.rate_prior_var),
             bracket: None,
-            pending: 0,
+            pending: Span::default(),
+            considered: Considered::default(),
             rate_step: 0.0,
             resting: 0,
             level_known: false,
@@ -146,9 +172,9 @@ impl Zeroing {
         self.checkpoint = None;
         self.gate = Gate::default();
         self.noise.drop_sum();
-        self.resting = self.resting.saturating_add(self.pending);
-        self.pending = 0;
+        self.resting = self.resting.saturating_add(core::mem::take(&mut self.pending).ticks);
         self.warmth.release_level();
+        self.considered.release_level();
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.release_level();
         }
@@ -167,8 +193,7 @@ impl Zeroing {
     /// What the zeros have shown of the noise.
     pub(crate) fn shown(&self, derived: &Derived) -> Shown {
         let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
-        let known_s = math::seconds(self.known_ticks(), derived.tick_s);
-        let rate = if known_s > 0.0 { 2.0 * level / (known_s * known_s) } else { 0.0 };
+        let rate = derived.rate_rounding_var(self.known_ticks());
         Shown {
             sample_var: self.noise.sample_var(),
             widening: self.noise.widening(),
@@ -197,33 +222,43 @@ impl Zeroing {
         self.noise.rate_percent()
     }
 
-    /// The zero is over.
-    pub(crate) fn leave(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
-        self.finish(tick, stop, derived);
-        self.judge_rate();
+    /// The zero is over; leak and soakage are `terms`. Gives how the drift has changed, if it told enough of that.
+    pub(crate) fn leave(
+        &mut self,
+        tick: u32,
+        terms: Terms,
+        stop: Option<Stop>,
+        derived: &Derived,
+    ) -> Option<RateChange> {
+        self.finish(tick, terms, stop, derived);
+        let change = self.judge_rate();
         if self.known_ticks > 0 {
             self.told_ticks = self.known_ticks;
         }
-        self.catch_up(derived);
+        self.catch_up(terms, derived);
+        change
     }
 
     /// The zero is over: how far was the drift from what was expected?
-    fn judge_rate(&mut self) {
-        let Some((rate, variance)) = self.expected_rate.take().filter(|_| self.level_known && !self.disturbed) else {
-            return;
-        };
+    fn judge_rate(&mut self) -> Option<RateChange> {
+        let (rate, variance, considered) = self.expected_rate.take().filter(|_| self.level_known && !self.disturbed)?;
         // What the zero added to the knowledge of the rate has the variance that it took away.
         let learned = variance - self.trend.rate_variance();
-        if learned > 0.1 * variance {
-            let off = self.trend.rate() - rate;
-            self.noise.take_rate(off * off / learned);
+        if learned <= 0.1 * variance {
+            return None;
         }
+        let off = self.trend.rate() - rate;
+        let off_var = learned + square_distance(self.considered.rate(), considered);
+        self.noise.take_rate(off * off / off_var);
+        Some(RateChange { off, off_var, share: learned / variance })
     }
 
     /// Brings the trend up to the latest sample: what is drift from here on belongs to a run.
-    pub(crate) fn catch_up(&mut self, derived: &Derived) {
+    pub(crate) fn catch_up(&mut self, terms: Terms, derived: &Derived) {
         let pending = core::mem::take(&mut self.pending);
         advance(&mut self.trend, pending, derived);
+        self.considered.advance(pending.ticks, derived);
+        self.considered.follow(terms, derived);
     }
 
     /// Takes the board's temperature, if it is measured.
@@ -260,8 +295,10 @@ impl Zeroing {
     }
 }
 
-/// Lets `ticks` pass for a level that drifts.
-pub(crate) fn advance(trend: &mut Trend, ticks: u64, derived: &Derived) {
-    let dt_s = math::seconds(ticks, derived.tick_s);
-    trend.advance(dt_s, Walk::over(dt_s, derived.level_walk, derived.rate_walk));
+/// Lets time pass for a level that drifts. Through a leak the samples' own noise walks into the effective level.
+pub(crate) fn advance(trend: &mut Trend, span: Span, derived: &Derived) {
+    let dt_s = math::seconds(span.ticks, derived.tick_s);
+    let mut walk = Walk::over(dt_s, derived.level_walk, derived.rate_walk);
+    walk.level += derived.leak_walk * span.squares as f32;
+    trend.advance(dt_s, walk);
 }

@@ -2,10 +2,7 @@
 
 use crate::estimate::BlockMean;
 use crate::math;
-use crate::setup::Derived;
-
-/// Variance of rounding to whole counts (IEEE Std 1241).
-pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
+use crate::setup::{Derived, QUANTISATION_VAR};
 
 /// Degrees of freedom that the set-up's readout noise is worth against the blocks' scatter, and the most that these are
 /// given, so that a change is followed.

@@ -2,7 +2,9 @@
 
 use super::gate::Verdict;
 use super::{Checkpoint, Stop, Taken, Zeroing, advance};
+use crate::clock::Span;
 use crate::estimate::{BlockMean, Bracket};
+use crate::level::{Seen, Terms};
 use crate::math;
 use crate::setup::Derived;
 
@@ -16,17 +18,18 @@ const FLICKER_SHARE: f32 = 2.772_588_7;
 impl Zeroing {
     /// Time in a zero without a usable sample.
     pub(crate) fn skip(&mut self, ticks: u32) {
-        self.pending = self.pending.saturating_add(u64::from(ticks));
+        self.pending.add(ticks);
         self.block.skip(ticks);
     }
 
-    /// A sample in a zero, `ticks` after the one before.
-    pub(crate) fn take(&mut self, tick: u32, counts: i32, ticks: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
+    /// A sample in a zero.
+    pub(crate) fn take(&mut self, seen: &Seen, stop: Option<Stop>, derived: &Derived) -> Taken {
+        let ticks = seen.ticks;
         if self.disturbed {
             self.skip(ticks);
             return Taken::Used;
         }
-        match self.judge(tick, counts, ticks, derived) {
+        match self.judge(seen, derived) {
             Verdict::Noise => {}
             Verdict::Spike => {
                 self.skip(ticks);
@@ -38,57 +41,54 @@ impl Zeroing {
                 return Taken::Onset { since, contradicts_run: false };
             }
         }
-        self.pending = self.pending.saturating_add(u64::from(ticks));
-        if self.block.push(counts, ticks, derived.block_ticks) {
-            return self.finish_block(tick, stop, derived);
+        self.pending.add(ticks);
+        if self.block.push(seen.level_q16, ticks, derived.block_ticks, derived.fine_bits) {
+            return self.finish_block(seen.tick, seen.terms, stop, derived);
         }
         Taken::Used
     }
 
     /// The zero ends or is asked about before its first block was full: what there is of it has to do.
-    pub(crate) fn finish(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) {
+    pub(crate) fn finish(&mut self, tick: u32, terms: Terms, stop: Option<Stop>, derived: &Derived) {
         if !self.level_known && !self.disturbed {
-            self.finish_block(tick, stop, derived);
+            self.finish_block(tick, terms, stop, derived);
         }
     }
 
     /// Whether a sample is too far off to be noise; while too little is known to tell, none is.
-    fn judge(&mut self, tick: u32, counts: i32, ticks: u32, derived: &Derived) -> Verdict {
+    fn judge(&mut self, seen: &Seen, derived: &Derived) -> Verdict {
         if !self.level_known || (derived.block_ticks > 0 && !self.noise.has_scatter()) {
             return Verdict::Noise;
         }
-        let ahead_s = math::seconds(self.pending.saturating_add(u64::from(ticks)), derived.tick_s);
+        let ahead_s = math::seconds(self.pending.ticks.saturating_add(u64::from(seen.ticks)), derived.tick_s);
         let expected = self.trend.residual() + self.trend.rate() * ahead_s;
-        let off = i64::from(counts).saturating_sub(self.trend.anchor()) as f32 - expected;
+        let (counts, part) = (seen.level_q16 >> 16, (seen.level_q16 & 0xFFFF) as f32 * (1.0 / 65536.0));
+        let off = counts.saturating_sub(self.trend.anchor()) as f32 - expected + part;
         let spread = ahead_s * (2.0 * self.trend.covariance() + ahead_s * self.trend.rate_variance());
         let walked = derived.level_walk * ahead_s;
         let sample_var = self.noise.sample_var().max(derived.readout_var);
-        self.gate.judge(tick, off, sample_var + self.trend.level_variance() + spread + walked)
+        let figures = self.considered.lag_variance();
+        self.gate.judge(seen.tick, off, sample_var + self.trend.level_variance() + spread + walked + figures)
     }
 
-    fn finish_block(&mut self, tick: u32, stop: Option<Stop>, derived: &Derived) -> Taken {
-        let Some(mean) = self.block.take() else { return Taken::Used };
+    fn finish_block(&mut self, tick: u32, terms: Terms, stop: Option<Stop>, derived: &Derived) -> Taken {
+        let Some(mean) = self.block.take(derived.fine_bits) else { return Taken::Used };
         if !self.level_known && self.noise.is_torn(&mean) {
             return Taken::Spike;
         }
         self.noise.take_block(&mean, derived);
-        // Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
-        // what the walk does to a run longer than the block.
-        let variance = if derived.dithered {
-            derived.readout_var / f32::from(mean.samples)
-        } else {
-            // Rounding that nothing dithers does not average ...
-            derived.readout_var
-        };
+        let variance = derived.block_var(mean.samples);
         if !self.level_known {
-            self.find_level(&mean, variance, stop, derived);
+            self.find_level(&mean, variance, terms, stop, derived);
             return Taken::Used;
         }
-        let elapsed = self.pending.saturating_sub(mean.age);
-        self.pending -= elapsed;
+        let span = self.pending.leave(mean.age);
+        let elapsed = span.ticks;
         let wandered = self.flicker_walk(elapsed, derived);
         self.warmth.half_step(&mut self.trend);
-        advance(&mut self.trend, elapsed, derived);
+        advance(&mut self.trend, span, derived);
+        self.considered.advance(elapsed, derived);
+        self.considered.follow(terms, derived);
         self.warmth.advance(math::seconds(elapsed, derived.tick_s));
         self.warmth.half_step(&mut self.trend);
         self.warmth.follow();
@@ -96,19 +96,18 @@ impl Zeroing {
         if let Some(bracket) = self.bracket.as_mut() {
             bracket.advance(math::seconds(elapsed, derived.tick_s));
         }
-        // ... and keeps its sign over many blocks.
-        let variance = if derived.dithered { variance } else { 4.0 * variance };
-        let innovation = self.trend.update(mean.counts, mean.rest, variance);
-        if let Some(bracket) = self.bracket.as_mut() {
-            bracket.update(&innovation);
-        }
+        let innovation = self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
+        let lag_var = self.considered.lag_variance();
+        let run_gain = self.bracket.as_mut().map_or(0.0, |bracket| bracket.update(&innovation));
+        self.considered.update(&innovation, run_gain);
         self.warmth.update(&innovation);
         if let Some(checkpoint) = self.checkpoint.as_mut() {
-            checkpoint.age = checkpoint.age.saturating_add(elapsed);
+            checkpoint.age.join(span);
         }
         self.known_ticks = self.known_ticks.saturating_add(elapsed);
         self.known_innovations = self.known_innovations.saturating_add(1);
-        let deviation = innovation.residual * math::sqrt(innovation.precision / self.noise.dispersion());
+        let precision = innovation.precision / (1.0 + lag_var * innovation.precision);
+        let deviation = innovation.residual * math::sqrt(precision / self.noise.dispersion());
         self.noise.take_innovation(deviation);
         if self.cusum.take(deviation, derived.onset_threshold) {
             let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
@@ -117,24 +116,34 @@ impl Zeroing {
         }
         if self.cusum.is_quiet() || self.checkpoint.is_none() {
             let known = self.known_innovations;
-            self.checkpoint =
-                Some(Checkpoint { trend: self.trend, bracket: self.bracket, warmth: self.warmth, tick, age: 0, known });
+            self.checkpoint = Some(Checkpoint {
+                trend: self.trend,
+                bracket: self.bracket,
+                warmth: self.warmth,
+                considered: self.considered,
+                tick,
+                age: Span::default(),
+                known,
+            });
         }
         Taken::Used
     }
 
     /// The first block of a zero: the level starts from it, and a run that has just stopped is bracketed.
-    fn find_level(&mut self, mean: &BlockMean, variance: f32, stop: Option<Stop>, derived: &Derived) {
-        let elapsed = self.pending.saturating_sub(mean.age);
-        self.pending -= elapsed;
+    fn find_level(&mut self, mean: &BlockMean, variance: f32, terms: Terms, stop: Option<Stop>, derived: &Derived) {
+        let span = self.pending.leave(mean.age);
+        let elapsed = span.ticks;
         match stop {
             // Level and baseline drift together from the stop on.
             Some(stop) if stop.unbroken => {
-                advance(&mut self.trend, elapsed, derived);
+                advance(&mut self.trend, span, derived);
+                self.considered.advance(elapsed, derived);
+                self.considered.follow(terms, derived);
+                self.considered.close_run();
                 self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, variance, &self.trend));
             }
             Some(stop) => {
-                self.bracket = Some(Bracket::on_rate(stop.last_counts, stop.last_var, &self.trend));
+                self.bracket = Some(Bracket::on_rate(stop.last_q16, stop.last_var, &self.trend));
                 self.resting = self.resting.saturating_add(elapsed);
             }
             None => self.resting = self.resting.saturating_add(elapsed),
@@ -142,7 +151,9 @@ impl Zeroing {
         self.rest(derived);
         self.warmth.whole_step(&mut self.trend);
         self.trend.restart(mean.counts, mean.rest, variance);
-        self.expected_rate = Some((self.trend.rate(), self.trend.rate_variance()));
+        self.considered.release_level();
+        self.considered.skip(terms);
+        self.expected_rate = Some((self.trend.rate(), self.trend.rate_variance(), self.considered.rate()));
         self.level_known = true;
     }
 
@@ -153,6 +164,11 @@ impl Zeroing {
         FLICKER_SHARE * derived.flicker * (ticks as f32 / age as f32)
     }
 
+    /// The level is held by something else: the zero is over, and tells nothing.
+    pub(crate) fn abandon(&mut self) {
+        self.roll_back();
+    }
+
     /// Forgets what was learned since the sums were last empty.
     fn roll_back(&mut self) {
         self.disturbed = true;
@@ -160,7 +176,8 @@ impl Zeroing {
             self.trend = checkpoint.trend;
             self.bracket = checkpoint.bracket;
             self.warmth = checkpoint.warmth;
-            self.pending = self.pending.saturating_add(checkpoint.age);
+            self.considered = checkpoint.considered;
+            self.pending.join(checkpoint.age);
         }
     }
 }

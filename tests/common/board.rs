@@ -23,8 +23,7 @@ pub(crate) struct Board {
 }
 
 /// A 16-bit converter over +-2.5 V, stamped at 1 MHz.
-const CONVERTER: Converter =
-    Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, code_min: 0, code_max: 65535, tick_hz: 1e6 };
+const CONVERTER: Converter = Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, ..Converter::DEFAULT };
 const CAPACITANCE_F: f64 = 100e-9;
 const SOURCE_OHM: f64 = 1e9;
 const INPUT_OHM: f64 = 1e6;
@@ -54,7 +53,7 @@ impl Board {
                 bias_limit_a: half_limit_a,
                 source_resistance_ohm: SOURCE_OHM,
                 pedestal_v: -0.8e-3,
-                pedestal_u_v: 0.1e-3,
+                pedestal_u_v: Some(0.1e-3),
                 ..Circuit::DEFAULT
             },
             converter: CONVERTER,

@@ -247,7 +247,7 @@ impl Plant {
         let (density, wander) = (self.board.noise.input_density, self.board.noise.offset_wander);
         let circuit = self.board.circuit;
         if self.mode == Mode::Reset && mode != Mode::Reset {
-            self.level_v += circuit.pedestal_v + circuit.pedestal_u_v * self.normal();
+            self.level_v += circuit.pedestal_v + circuit.pedestal_u_v.unwrap_or(0.0) * self.normal();
         }
         // A Brownian path's end, and its mean given the end.
         let wandered = wander * dt.sqrt() * self.normal();

@@ -157,7 +157,7 @@ fn single_ticks_out_of_order_are_no_restart() {
 #[test]
 fn a_pedestal_moves_the_level_that_is_expected_after_a_reset() {
     // 100 mV are 10,000 counts; its uncertainty of 10 mV allows for 5000 more.
-    let circuit = Circuit { pedestal_v: 0.1, pedestal_u_v: 0.01, ..CIRCUIT };
+    let circuit = Circuit { pedestal_v: 0.1, pedestal_u_v: Some(0.01), ..CIRCUIT };
     let setup = Setup::new(circuit, CONVERTER, NOISE, POLICY);
     for (to, faults) in [
         (10_000.0 + 8_700.0, vec![]),

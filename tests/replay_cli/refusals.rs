@@ -82,7 +82,7 @@ fn a_missing_file_is_named() -> Checked {
 fn a_bad_set_up_names_the_key_and_what_is_allowed() -> Checked {
     let setup = std::fs::read_to_string(root("examples/setups/hatchery.toml"))?;
     let trace = root("tests/traces/hatchery.csv");
-    let cases: [(&str, &str, &[&str]); 15] = [
+    let cases: [(&str, &str, &[&str]); 17] = [
         ("capacitance_f = 470e-9", "", &["[circuit]", "capacitance_f", "missing", "farad"]),
         ("capacitance_f = 470e-9", "capacitence_f = 1", &["capacitence_f", "unknown", "capacitance_f"]),
         ("capacitance_f = 470e-9", "capacitance_f = 2.5", &["[circuit]", "capacitance_f", "2.5", "at most 1"]),
@@ -90,8 +90,18 @@ fn a_bad_set_up_names_the_key_and_what_is_allowed() -> Checked {
         ("capacitance_f = 470e-9", "capacitance_f = \"big\"", &["capacitance_f", "big", "a number", "farad"]),
         ("source_resistance_ohm = 5e9", "", &["source_resistance_ohm", "missing", "current"]),
         ("source_resistance_ohm = 5e9", "input_resistance_ohm = 1e5", &["[scale]", "responsivity_a_per_w", "charge"]),
-        ("inverting = true", "leak_time_constant_s = 1.0", &["leak_time_constant_s", "wrong number"]),
-        ("inverting = true", "soakage = [{ fraction = 0.001, time_constant_s = 1.0 }]", &["soakage", "wrong number"]),
+        ("inverting = true", "leak_time_constant_s = 0.0", &["[circuit]", "leak_time_constant_s", "0.0", "above 0"]),
+        (
+            "inverting = true",
+            "soakage = [{ share = 0.6, time_constant_s = 1.0 }]",
+            &["[circuit]", "soakage", "0 to 0.5"],
+        ),
+        ("inverting = true", "soakage = [{ part = 0.1, time_constant_s = 1.0 }]", &["soakage", "part", "share"]),
+        (
+            "code_max = 65535",
+            "code_max = 65535\nnonlinearity = [[0, 0.0]]",
+            &["[converter]", "nonlinearity", "2 to 33"],
+        ),
         ("area_u_rel = 0.02", "", &["[scale]", "area_u_rel", "missing"]),
         ("area_m2 = 1e-7", "area_m2 = 0", &["[scale]", "area_m2", "above 0"]),
         ("gain_u_rel = 0.0", "gain_u_rel = 1.5", &["[scale]", "gain_u_rel", "1.5", "0 to 1"]),

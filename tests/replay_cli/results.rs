@@ -39,7 +39,7 @@ fn json_holds_the_truth_of_each_trace_within_three_u() -> Checked {
 fn the_parts_of_the_json_add_up() -> Checked {
     let document = json(&run(&["--json"])?)?;
     let u = number(&document, "/runs/0/closed/u")?;
-    let parts = ["readout", "input_noise", "drift", "dead_time", "scale"];
+    let parts = ["readout", "input_noise", "drift", "dead_time", "leak_and_soakage", "scale"];
     let variance =
         parts.iter().map(|part| number(&document, &format!("/runs/0/variance/{part}"))).sum::<Result<f64, _>>()?;
     assert!((variance / (u * u) - 1.0).abs() < 1e-5, "{variance} is not {u} squared");
@@ -77,7 +77,7 @@ fn what_drift_would_have_added_is_stated() -> Checked {
     let uncorrected = 1e6 * (number(&document, "/runs/0/at_stop/value")? + removed);
     let text = stdout(&run(&[])?);
     let line = text.lines().find(|line| line.contains("without drift correction")).unwrap_or("");
-    assert!(line.contains(&format!("{uncorrected:.5} µC, off by 1.2 nC: 10 times U")), "{line}");
+    assert!(line.contains(&format!("{uncorrected:.5} µC, off by 1.2 nC: 11 times U")), "{line}");
     Ok(())
 }
 

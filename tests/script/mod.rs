@@ -11,8 +11,14 @@ pub const CIRCUIT: Circuit = Circuit {
     source_resistance_ohm: 1e9,
     ..Circuit::DEFAULT
 };
-pub const CONVERTER: Converter =
-    Converter { code_zero_v: 0.0, lsb_v: 10e-6, code_min: -200_000, code_max: 199_999, tick_hz: 1e6 };
+pub const CONVERTER: Converter = Converter {
+    code_zero_v: 0.0,
+    lsb_v: 10e-6,
+    code_min: -200_000,
+    code_max: 199_999,
+    tick_hz: 1e6,
+    ..Converter::DEFAULT
+};
 pub const NOISE: Noise = Noise { readout_counts: 1.0, ..Noise::NONE };
 pub const POLICY: Policy = Policy { worst_input: Some(100e-9), ..Policy::DEFAULT };
 pub const SETUP: Setup<Charge> = Setup::new(CIRCUIT, CONVERTER, NOISE, POLICY);

@@ -5,7 +5,17 @@ use std::fmt::Write;
 use std::path::Path;
 use std::{env, fs};
 
-const TRACES: [&str; 6] = ["hatchery", "tick_wrap", "stuck_switch", "dim_lamp", "wandering_offset", "search_coil"];
+const TRACES: [&str; 9] = [
+    "hatchery",
+    "tick_wrap",
+    "stuck_switch",
+    "dim_lamp",
+    "soakage",
+    "wandering_offset",
+    "search_coil",
+    "leaky",
+    "held",
+];
 
 fn main() -> Result<(), Box<dyn Error>> {
     let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("../../../tests/traces");

@@ -47,6 +47,8 @@ fn write_log<Q: Integral>(trace: &Trace<Q>, out: &mut impl Write) -> fmt::Result
             hash_reading(trace, &mut hash, reading);
             hash.write_bits(channel.drift().value.as_volts_per_second());
             hash.write_bits(channel.drift().u.as_volts_per_second());
+            hash.write_bits(channel.droop().value.as_volts_per_second());
+            hash.write_bits(channel.droop().u.as_volts_per_second());
         }
         if switched || rows % ROWS_PER_LINE == 0 || samples.peek().is_none() {
             write_state(trace, out, sample, &channel, reading.as_ref())?;
@@ -59,7 +61,8 @@ fn write_log<Q: Integral>(trace: &Trace<Q>, out: &mut impl Write) -> fmt::Result
 fn hash_reading<Q: Integral>(trace: &Trace<Q>, hash: &mut Fnv, reading: &Reading<Q>) {
     let estimate = |hash: &mut Fnv, e: &Estimate<Q>| {
         let b = &e.budget;
-        for part in [e.integral.value, e.integral.u, b.readout, b.input_noise, b.drift, b.dead_time, b.scale] {
+        let parts = [b.readout, b.input_noise, b.drift, b.dead_time, b.leak_and_soakage, b.scale];
+        for part in [e.integral.value, e.integral.u].into_iter().chain(parts) {
             hash.write_bits(trace.si(part));
         }
     };

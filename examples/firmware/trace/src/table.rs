@@ -27,17 +27,20 @@ pub struct Trace<Q: 'static> {
 }
 
 /// Traces of boards that measure charge.
-pub static CHARGE: [Trace<Charge>; 4] = [
+pub static CHARGE: [Trace<Charge>; 5] = [
     Trace { table: HATCHERY, setup: &boards::HATCHERY, si: Charge::as_coulombs },
     Trace { table: TICK_WRAP, setup: &boards::HATCHERY, si: Charge::as_coulombs },
     Trace { table: STUCK_SWITCH, setup: &boards::HATCHERY, si: Charge::as_coulombs },
     Trace { table: DIM_LAMP, setup: &boards::DIM_LAMP, si: Charge::as_coulombs },
+    Trace { table: SOAKAGE, setup: &boards::SOAKAGE, si: Charge::as_coulombs },
 ];
 
 /// Traces of boards that measure flux.
-pub static FLUX: [Trace<Flux>; 2] = [
+pub static FLUX: [Trace<Flux>; 4] = [
     Trace { table: WANDERING_OFFSET, setup: &boards::WANDERING_OFFSET, si: Flux::as_volt_seconds },
     Trace { table: SEARCH_COIL, setup: &boards::SEARCH_COIL, si: Flux::as_volt_seconds },
+    Trace { table: LEAKY, setup: &boards::LEAKY, si: Flux::as_volt_seconds },
+    Trace { table: HELD, setup: &boards::HELD, si: Flux::as_volt_seconds },
 ];
 
 impl<Q> Trace<Q> {

@@ -1,0 +1,62 @@
+//! What the verification of a reset leads to.
+
+use super::Channel;
+use crate::level::Seen;
+use crate::notice::{Event, Notices, Reason};
+use crate::quantity::Integral;
+use crate::sample::Mode;
+use crate::verify::{Closed, Mover};
+
+impl<Q: Integral> Channel<'_, Q> {
+    /// Whether the switch has been given up after too many resets in a row that failed. No reset is asked for then, and
+    /// every run has the reason `SwitchFailed`, until [`switch_repaired`](Self::switch_repaired).
+    pub fn switch_has_failed(&self) -> bool {
+        self.verification.is_latched()
+    }
+
+    /// Someone has seen to the reset switch: resets are asked for again. Runs that had the fault keep it.
+    pub fn switch_repaired(&mut self) {
+        self.verification.release();
+    }
+
+    /// A sample with the switch closed.
+    pub(super) fn verify_closed(&mut self, seen: &Seen, notices: &mut Notices) {
+        match self.verification.take_closed(seen.linear_q16(), seen.ticks, self.setup.derived()) {
+            Closed::Nothing => {}
+            Closed::Slow(percent) => notices.push(seen.tick, Event::SettlingSlow { percent }),
+            Closed::NotArrived => self.reset_failed(Reason::ResetNotArrived, seen.tick, notices),
+        }
+    }
+
+    /// A sample with the switch open: has the level left the reset level?
+    pub(super) fn watch_opened(&mut self, mode: Mode, seen: &Seen, notices: &mut Notices) {
+        if !matches!(mode, Mode::Zero | Mode::Integrate) {
+            return;
+        }
+        let derived = self.setup.derived();
+        let trend = &self.zeroing.trend;
+        let mover = Mover {
+            rate: trend.rate(),
+            rate_var: trend.rate_variance(),
+            sample_var: self.zeroing.shown(derived).sample_var,
+            input: mode == Mode::Integrate,
+        };
+        if self.verification.is_held(seen.linear_q16(), seen.ticks, &mover, derived) {
+            if mode == Mode::Zero {
+                self.zeroing.abandon();
+            }
+            self.reset_failed(Reason::SwitchStuckClosed, seen.tick, notices);
+        }
+    }
+
+    /// Books a reset that failed: another is to be tried, or the switch is given up.
+    pub(super) fn reset_failed(&mut self, reason: Reason, tick: u32, notices: &mut Notices) {
+        if self.verification.fail(self.setup.derived()) {
+            notices.push(tick, Event::ResetFailed { in_a_row: self.verification.failures() });
+        }
+        self.fault(reason, tick, notices);
+        if self.verification.is_latched() {
+            self.fault(Reason::SwitchFailed, tick, notices);
+        }
+    }
+}

@@ -1,0 +1,68 @@
+//! What moves the level while the input is open.
+
+use crate::clock::Span;
+use crate::estimate::{Block, Trend};
+use crate::level::Seen;
+use crate::setup::Derived;
+use crate::zeroing::advance;
+
+/// Level and droop in the holds. With the input open the offset voltage drives no current through the source, so the
+/// droop is the bias current's alone, with a prior and a memory of its own: the drift of the zeros says nothing of it.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Droop {
+    trend: Trend,
+    block: Block,
+    pending: Span,
+    level_known: bool,
+    /// Time that holds have told of it, ticks.
+    known_ticks: u64,
+}
+
+impl Droop {
+    /// Nothing seen yet: what the data sheet allows.
+    pub(crate) fn new(derived: &Derived) -> Self {
+        Self {
+            trend: Trend::new(0, derived.readout_var, 0.0, derived.droop_prior_var),
+            block: Block::default(),
+            pending: Span::default(),
+            level_known: false,
+            known_ticks: 0,
+        }
+    }
+
+    /// A hold begins: the level is to be found.
+    pub(crate) fn enter(&mut self) {
+        self.block = Block::default();
+        self.pending = Span::default();
+        self.level_known = false;
+    }
+
+    /// A sample in a hold.
+    pub(crate) fn take(&mut self, seen: &Seen, derived: &Derived) {
+        self.pending.add(seen.ticks);
+        if !self.block.push(seen.level_q16, seen.ticks, derived.block_ticks, derived.fine_bits) {
+            return;
+        }
+        let Some(mean) = self.block.take(derived.fine_bits) else { return };
+        let span = self.pending.leave(mean.age);
+        let variance = derived.block_var(mean.samples);
+        if self.level_known {
+            advance(&mut self.trend, span, derived);
+            self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
+            self.known_ticks = self.known_ticks.saturating_add(span.ticks);
+        } else {
+            self.trend.restart(mean.counts, mean.rest, variance);
+            self.level_known = true;
+        }
+    }
+
+    /// The droop, counts/s, and its variance; that of the data sheet before any hold.
+    pub(crate) fn rate(&self, derived: &Derived) -> (f32, f32) {
+        (self.trend.rate(), self.trend.rate_variance() + derived.rate_rounding_var(self.known_ticks))
+    }
+
+    /// Whether any hold was long enough to tell of it.
+    pub(crate) fn is_known(&self) -> bool {
+        self.known_ticks > 0
+    }
+}

@@ -1,0 +1,97 @@
+//! From codes to the effective level: what the output would be if the converter were straight, nothing leaked and the
+//! dielectric kept nothing.
+
+mod leak;
+mod soakage;
+
+use leak::Leak;
+pub(crate) use leak::LeakLaw;
+use soakage::Soakage;
+pub(crate) use soakage::{BranchLaw, SoakageLaw};
+
+use crate::sample::{Mode, Sample};
+use crate::setup::Derived;
+
+/// What has leaked and what the dielectric holds, 2^-16 counts of the level.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub(crate) struct Terms {
+    pub(crate) leaked_q16: i64,
+    pub(crate) soaked_q16: i64,
+}
+
+impl Terms {
+    /// What they add to the level.
+    pub(crate) fn sum_q16(self) -> i64 {
+        self.leaked_q16.saturating_add(self.soaked_q16)
+    }
+}
+
+/// A sample as the estimator sees it.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Seen {
+    pub(crate) tick: u32,
+    /// Since the sample before.
+    pub(crate) ticks: u32,
+    /// The effective level, 2^-16 counts, and what leak and soakage are of it.
+    pub(crate) level_q16: i64,
+    pub(crate) terms: Terms,
+}
+
+impl Seen {
+    /// The level as a straight converter would have seen it, 2^-16 counts.
+    pub(crate) fn linear_q16(&self) -> i64 {
+        self.level_q16.saturating_sub(self.terms.sum_q16())
+    }
+}
+
+/// The effective level `level + leaked + soaked`. With the switch open only input, drift and noise move it.
+#[derive(Clone, Copy, Debug, Default)]
+pub(crate) struct Level {
+    /// Of the latest sample, above the reset level, counts; `None` before the first.
+    above: Option<i32>,
+    leak: Leak,
+    soakage: Soakage,
+    terms: Terms,
+}
+
+impl Level {
+    /// Takes a sample, `ticks` after the one before. While the reset switch is closed nothing leaks, and the dielectric
+    /// sees the reset level.
+    ///
+    /// The first sample finds the dielectric at rest.
+    pub(crate) fn take(&mut self, sample: Sample, ticks: u32, derived: &Derived) -> Seen {
+        let closed = sample.mode == Mode::Reset;
+        let linear_q16 = derived.linear_q16(sample.counts);
+        if derived.leak.is_some() || derived.soakage.is_some() {
+            let above = if closed { 0 } else { derived.above_reset(linear_q16) };
+            self.pass(above, ticks, closed, derived);
+        }
+        let level_q16 = linear_q16.saturating_add(self.terms.sum_q16());
+        Seen { tick: sample.tick, ticks, level_q16, terms: self.terms }
+    }
+
+    fn pass(&mut self, above: i32, ticks: u32, closed: bool, derived: &Derived) {
+        // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.
+        let from = match self.above.replace(above) {
+            None => {
+                self.soakage.start(above);
+                above
+            }
+            Some(_) if closed => 0,
+            Some(from) => from,
+        };
+        if let Some(law) = derived.leak.as_ref().filter(|_| !closed) {
+            self.leak.take(from, above, ticks, law);
+            self.terms.leaked_q16 = self.leak.q16(law);
+        }
+        if let Some(law) = derived.soakage.as_ref() {
+            self.soakage.take(from, above, ticks, law);
+            self.terms.soaked_q16 = self.soakage.q16(law);
+        }
+    }
+
+    /// Leak and soakage as of the latest sample.
+    pub(crate) fn terms(&self) -> Terms {
+        self.terms
+    }
+}
