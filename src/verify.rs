@@ -124,6 +124,11 @@ impl Verification {
         first
     }
 
+    /// Whether the level has yet to leave the reset level.
+    pub(crate) fn is_watching(&self) -> bool {
+        self.leaving.is_some()
+    }
+
     /// A sample with the switch open: `true` if the level stays where the closed switch held it although drift, walk or
     /// pedestal should have moved it. Only a level that has left is free.
     pub(crate) fn is_held(&mut self, level_q16: i64, ticks: u32, mover: &Mover, derived: &Derived) -> bool {

@@ -30,7 +30,7 @@ impl<Q: Integral> Channel<'_, Q> {
 
     /// A sample with the switch open: has the level left the reset level?
     pub(super) fn watch_opened(&mut self, mode: Mode, seen: &Seen, notices: &mut Notices) {
-        if !matches!(mode, Mode::Zero | Mode::Integrate) {
+        if !self.verification.is_watching() || !matches!(mode, Mode::Zero | Mode::Integrate) {
             return;
         }
         let derived = self.setup.derived();

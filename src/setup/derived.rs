@@ -295,6 +295,11 @@ impl Derived {
         2.0 * QUANTISATION_VAR / (known_s * known_s)
     }
 
+    /// Whether figures of leak or soakage are uncertain.
+    pub(crate) fn has_doubts(&self) -> bool {
+        self.terms_u_rel != [0.0; 2]
+    }
+
     /// The level that a straight converter would have given, 2^-16 counts.
     pub(crate) fn linear_q16(&self, code: i32) -> i64 {
         match self.linearity {

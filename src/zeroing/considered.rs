@@ -26,6 +26,9 @@ pub(crate) struct Considered {
 impl Considered {
     /// The level went on, and leak and soakage changed with it.
     pub(crate) fn follow(&mut self, terms: Terms, derived: &Derived) {
+        if !derived.has_doubts() {
+            return;
+        }
         let changes = [
             terms.leaked_q16.saturating_sub(self.followed.leaked_q16),
             terms.soaked_q16.saturating_sub(self.followed.soaked_q16),
@@ -48,6 +51,9 @@ impl Considered {
 
     /// Time passes for level or baseline.
     pub(crate) fn advance(&mut self, ticks: u64, derived: &Derived) {
+        if !derived.has_doubts() {
+            return;
+        }
         let dt_s = math::seconds(ticks, derived.tick_s);
         for (level, rate) in self.level.iter_mut().zip(self.rate) {
             *level -= rate * dt_s;
@@ -55,7 +61,10 @@ impl Considered {
     }
 
     /// A sample of the level, as weighed by the filter and, with `run_gain`, by the bracket of the run before.
-    pub(crate) fn update(&mut self, innovation: &Innovation, run_gain: f32) {
+    pub(crate) fn update(&mut self, innovation: &Innovation, run_gain: f32, derived: &Derived) {
+        if !derived.has_doubts() {
+            return;
+        }
         for ((level, rate), run) in self.level.iter_mut().zip(&mut self.rate).zip(&mut self.run) {
             *run += run_gain * *level;
             *rate += innovation.rate_gain * *level;

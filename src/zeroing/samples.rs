@@ -99,14 +99,17 @@ impl Zeroing {
         let innovation = self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
         let lag_var = self.considered.lag_variance();
         let run_gain = self.bracket.as_mut().map_or(0.0, |bracket| bracket.update(&innovation));
-        self.considered.update(&innovation, run_gain);
+        self.considered.update(&innovation, run_gain, derived);
         self.warmth.update(&innovation);
         if let Some(checkpoint) = self.checkpoint.as_mut() {
             checkpoint.age.join(span);
         }
         self.known_ticks = self.known_ticks.saturating_add(elapsed);
         self.known_innovations = self.known_innovations.saturating_add(1);
-        let precision = innovation.precision / (1.0 + lag_var * innovation.precision);
+        let precision = match lag_var > 0.0 {
+            true => innovation.precision / (1.0 + lag_var * innovation.precision),
+            false => innovation.precision,
+        };
         let deviation = innovation.residual * math::sqrt(precision / self.noise.dispersion());
         self.noise.take_innovation(deviation);
         if self.cusum.take(deviation, derived.onset_threshold) {
