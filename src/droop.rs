@@ -6,6 +6,9 @@ use crate::level::Seen;
 use crate::setup::Derived;
 use crate::zeroing::advance;
 
+/// Growth of the droop's variance from hold to hold.
+const FADING: f32 = 4.0;
+
 /// Level and droop in the holds. With the input open the offset voltage drives no current through the source, so the
 /// droop is the bias current's alone, with a prior and a memory of its own: the drift of the zeros says nothing of it.
 #[derive(Clone, Copy, Debug)]
@@ -30,8 +33,9 @@ impl Droop {
         }
     }
 
-    /// A hold begins: the level is to be found.
-    pub(crate) fn enter(&mut self) {
+    /// A hold begins: the level is to be found. The bias may have changed since the last: what that told counts a quarter.
+    pub(crate) fn enter(&mut self, derived: &Derived) {
+        self.trend.doubt_rate((FADING * self.trend.rate_variance()).min(derived.droop_prior_var));
         self.block = Block::default();
         self.pending = Span::default();
         self.level_known = false;

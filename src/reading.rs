@@ -20,7 +20,7 @@ pub struct Budget<Q> {
     pub input_noise: Q,
     /// Uncertainty of the drift, times the duration, and its wander.
     pub drift: Q,
-    /// Fits beside the resets and interpolation of the input while the switch was closed.
+    /// Fits beside the resets, pedestals, and interpolation of the input while the switch was closed.
     pub dead_time: Q,
     /// Uncertain figures of leak and soakage, and the readout noise that the leak integrates.
     pub leak_and_soakage: Q,

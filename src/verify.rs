@@ -7,8 +7,9 @@ use crate::setup::Derived;
 /// How far a level may lie from where it is thought to be, standard deviations of a sample.
 const NEAR: f32 = 6.0;
 /// A level whose walk has had the chance to leave that band so many times over, and has not, is held. A Brownian path stays
-/// within `+-a` for a time `t` with the probability `4/pi e^(-pi^2 q t / 8 a^2)`: 1e-8 for `q t = 15 a^2`.
-const WALKED_BANDS: f32 = 15.0;
+/// within `+-a` for a time `t` with the probability `4/pi e^(-pi^2 q t / 8 a^2)`: 1e-8 for `q t = 15 a^2`, and here even if
+/// the walk is a third of what the set-up says.
+const WALKED_BANDS: f32 = 135.0;
 /// Growth of the settling time constant over the set-up's `R_on C` that is worth a word, as a factor.
 const SLOW: f32 = 2.0;
 

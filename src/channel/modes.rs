@@ -62,7 +62,7 @@ impl<Q: Integral> Channel<'_, Q> {
     pub(super) fn hold(&mut self, sample: Sample, seen: &Seen) {
         let derived = self.setup.derived();
         if Health::at_rail(sample.counts, derived) {
-            self.droop.enter();
+            self.droop.enter(derived);
         } else {
             self.droop.take(seen, derived);
         }

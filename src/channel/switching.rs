@@ -28,7 +28,7 @@ impl<Q: Integral> Channel<'_, Q> {
             Mode::Zero => self.enter_zero(notices),
             Mode::Integrate => self.enter_integrate(tick, settled, notices),
             Mode::Reset => self.enter_reset(tick, notices),
-            Mode::Hold => self.droop.enter(),
+            Mode::Hold => self.droop.enter(self.setup.derived()),
         }
         self.mode = Some(to);
     }

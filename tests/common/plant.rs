@@ -8,6 +8,8 @@ use rand_distr::StandardNormal;
 
 use super::board::Board;
 
+pub(crate) mod bench;
+pub(crate) mod network;
 pub(crate) mod series;
 
 /// The true input, in input units (A or V): a steady part with a ripple, between two instants.
