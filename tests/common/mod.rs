@@ -6,6 +6,7 @@
 pub(crate) mod batch;
 pub(crate) mod board;
 pub(crate) mod plant;
+pub(crate) mod recorded;
 pub(crate) mod tally;
 pub(crate) mod textbook;
 

@@ -61,21 +61,25 @@ impl Recording {
     }
 
     pub(crate) fn truth(&self) -> serde_json::Value {
+        self.known()["truth"].take()
+    }
+
+    /// The simulated circuit and what is true.
+    pub(crate) fn known(&self) -> serde_json::Value {
         let text = std::fs::read_to_string(self.trace.with_extension("truth.json")).unwrap();
-        serde_json::from_str::<serde_json::Value>(&text).unwrap()["truth"].take()
+        serde_json::from_str(&text).unwrap()
     }
 
     /// The set-up, less one key.
-    fn setup(&self, off: Option<Correction>) -> AnySetup {
-        let text = std::fs::read_to_string(&self.setup).unwrap();
-        let kept = |line: &&str| match off {
-            Some(Correction::Key(key)) => !line.trim_start().starts_with(&format!("{key} =")),
-            _ => true,
-        };
-        let shorter: Vec<&str> = text.lines().filter(kept).collect();
-        let expected = usize::from(matches!(off, Some(Correction::Key(_))));
-        assert_eq!(text.lines().count() - shorter.len(), expected, "{off:?} is a key of {}", self.setup.display());
-        setup_file::parse(&shorter.join("\n"), "set-up").unwrap().setup
+    pub(crate) fn setup(&self, off: Option<Correction>) -> AnySetup {
+        let mut text = std::fs::read_to_string(&self.setup).unwrap();
+        if let Some(Correction::Key(key)) = off {
+            let mut table: toml::Table = text.parse().unwrap();
+            let gone = table.iter_mut().filter_map(|(_, section)| section.as_table_mut()?.remove(key)).count();
+            assert_eq!(gone, 1, "{key} is a key of {}", self.setup.display());
+            text = table.to_string();
+        }
+        setup_file::parse(&text, "set-up").unwrap().setup
     }
 
     pub(crate) fn samples(&self) -> Vec<Sample> {
