@@ -7,6 +7,9 @@ use crate::setup::Derived;
 pub(crate) struct Health {
     last: Option<i32>,
     repeats: u16,
+    /// How far the worst-case input moves the level in so many ticks: samples mostly come at one pace.
+    pace: u32,
+    movement: i64,
 }
 
 impl Health {
@@ -31,9 +34,18 @@ impl Health {
         derived.frozen_samples > 0 && self.repeats >= derived.frozen_samples
     }
 
+    /// Largest movement of the level in `ticks` at the worst-case input, counts.
+    pub(crate) fn worst_movement(&mut self, ticks: u32, derived: &Derived) -> i64 {
+        if ticks != self.pace {
+            self.pace = ticks;
+            self.movement = derived.worst_movement(ticks);
+        }
+        self.movement
+    }
+
     /// Whether the level moved to `counts` by more in `ticks` than the worst-case input and the noise can move it.
-    pub(crate) fn jumped(&self, counts: i32, ticks: u32, derived: &Derived) -> bool {
-        let reach = derived.worst_movement(ticks).saturating_add(i64::from(derived.step_counts));
+    pub(crate) fn jumped(&mut self, counts: i32, ticks: u32, derived: &Derived) -> bool {
+        let reach = self.worst_movement(ticks, derived).saturating_add(i64::from(derived.step_counts));
         self.last.is_some_and(|last| i64::from(counts).abs_diff(i64::from(last)) > reach.unsigned_abs())
     }
 

@@ -41,8 +41,8 @@ pub(crate) enum Stage {
         plain_var: f32,
         /// What one standard uncertainty of leak and of soakage makes of it, counts.
         considered: [f32; 2],
-        /// Whether the level went on into the zero without an interruption.
-        unbroken: bool,
+        /// What the closing zero has to know.
+        stop: Stop,
     },
 }
 
@@ -205,12 +205,11 @@ impl Run {
         self.opening.map_or(0.0, |opening| opening.weight(self.end_tick, derived))
     }
 
-    /// What the closing zero has to know of the stop.
-    pub(crate) fn stop(&self, shown: &Shown, derived: &Derived) -> Option<Stop> {
-        let Stage::Stopped { unbroken, .. } = self.stage else { return None };
+    /// What the closing zero has to know of the stop; `unbroken`: whether the level goes on into it.
+    pub(crate) fn stop(&self, unbroken: bool, derived: &Derived) -> Stop {
         // Shortly after a reset the last sample is part of the opening line as well: r (1 - 2 w) instead of r.
-        let last_var = shown.sample_var * (1.0 - 2.0 * self.last_sample_weight(derived));
-        Some(Stop { last_q16: self.last_q16, last_var, unbroken })
+        let last_weight = 1.0 - 2.0 * self.last_sample_weight(derived);
+        Stop { last_q16: self.last_q16, last_weight, unbroken }
     }
 
     /// The total as the closing zero sees it; `zero` is the level and drift there.

@@ -11,7 +11,7 @@ use crate::sample::{Mode, Sample};
 impl<Q: Integral> Channel<'_, Q> {
     /// Whether the level moved since the sample before by more than the input can move it. Within a zero the spread of the
     /// samples tells more; through a reset or hold nothing is expected.
-    pub(super) fn has_jumped(&self, sample: Sample, ticks: u32) -> bool {
+    pub(super) fn has_jumped(&mut self, sample: Sample, ticks: u32) -> bool {
         let watched = matches!(
             (self.mode, sample.mode),
             (Some(Mode::Zero | Mode::Integrate), Mode::Integrate) | (Some(Mode::Integrate), Mode::Zero)
@@ -36,8 +36,8 @@ impl<Q: Integral> Channel<'_, Q> {
 
     fn lose_level(&mut self) {
         self.zeroing.forget_level();
-        if let Some(Run { stage: Stage::Stopped { unbroken, .. }, .. }) = self.run.as_mut() {
-            *unbroken = false;
+        if let Some(Run { stage: Stage::Stopped { stop, .. }, .. }) = self.run.as_mut() {
+            stop.unbroken = false;
         }
     }
 
@@ -78,7 +78,8 @@ impl<Q: Integral> Channel<'_, Q> {
         if sample.mode == Mode::Reset || self.verification.is_latched() {
             return None;
         }
-        let due = decide::reset::due(sample.counts, ticks, self.setup.derived());
+        let derived = self.setup.derived();
+        let due = decide::reset::due(sample.counts, self.health.worst_movement(ticks, derived), derived);
         if !due && !self.verification.wants_retry() {
             return None;
         }

@@ -140,7 +140,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             return Some(Reading::new(self.setup, &run, &at_stop, None, noise_tested));
         };
         let mut zeroing = self.zeroing;
-        zeroing.finish(self.clock.tick(), self.level.terms(), self.stop(), derived);
+        zeroing.finish(self.clock.tick(), self.level.terms(), stop(&self.run), derived);
         let closing = zeroing.considered.run(false);
         let closed_as = |shown| {
             let total = |bracket| run.closed_total(bracket, &zeroing.trend, squares(closing), shown, derived);
@@ -163,14 +163,15 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         self.mode
     }
 
-    /// How the run before the present zero stopped, while its bracket is still open.
-    fn stop(&self) -> Option<Stop> {
-        let derived = self.setup.derived();
-        let run = self.run.as_ref().filter(|_| self.zeroing.bracket.is_none())?;
-        run.stop(&self.zeroing.shown(derived), derived)
-    }
-
     fn is_running(&self) -> bool {
         self.run.as_ref().is_some_and(Run::is_running)
+    }
+}
+
+/// How the run before the present zero stopped.
+fn stop(run: &Option<Run>) -> Option<&Stop> {
+    match run {
+        Some(Run { stage: Stage::Stopped { stop, .. }, .. }) => Some(stop),
+        _ => None,
     }
 }

@@ -1,6 +1,6 @@
 //! What a sample does in each mode.
 
-use super::Channel;
+use super::{Channel, stop};
 use crate::health::Health;
 use crate::level::Seen;
 use crate::notice::{Event, Notices, Reason};
@@ -18,8 +18,7 @@ impl<Q: Integral> Channel<'_, Q> {
             self.fault(Reason::AtRail, sample.tick, notices);
             return;
         }
-        let stop = self.stop();
-        match self.zeroing.take(seen, stop, derived) {
+        match self.zeroing.take(seen, stop(&self.run), derived) {
             Taken::Used => {}
             Taken::Spike => {
                 if let Some(run) = self.run.as_mut() {

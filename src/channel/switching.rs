@@ -1,6 +1,6 @@
 //! What a change of mode does to the run and to the zero.
 
-use super::Channel;
+use super::{Channel, stop};
 use crate::clock::Span;
 use crate::ledger::Bridged;
 use crate::math;
@@ -36,7 +36,7 @@ impl<Q: Integral> Channel<'_, Q> {
     /// The zero has told what it could.
     fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
-        let change = self.zeroing.leave(tick, self.level.terms(), self.stop(), derived);
+        let change = self.zeroing.leave(tick, self.level.terms(), stop(&self.run), derived);
         let level = self.health.last_q16();
         let risen = self.zero_level_q16.replace(level).map_or(0.0, |before| (level - before) as f32 * (1.0 / 65536.0));
         if let Some(time_constant_s) = change.and_then(|change| change.decay_s(risen)) {
@@ -87,8 +87,8 @@ impl<Q: Integral> Channel<'_, Q> {
                 let total = |shown| run.total(&self.zeroing.trend, squares(considered), shown, derived);
                 let at_stop = total(&shown);
                 let plain_var = total(&shown.not_widened()).variance();
-                let unbroken = matches!(run.stage, Stage::Integrating);
-                run.stage = Stage::Stopped { at_stop, plain_var, considered, unbroken };
+                let stop = run.stop(matches!(run.stage, Stage::Integrating), derived);
+                run.stage = Stage::Stopped { at_stop, plain_var, considered, stop };
                 if let Some(crossing) = run.crossing.take() {
                     self.zeroing.resting =
                         self.zeroing.resting.saturating_add(crossing.dead).saturating_add(crossing.held);
@@ -98,7 +98,7 @@ impl<Q: Integral> Channel<'_, Q> {
                 notices.push(run.end_tick, Event::RunStopped);
             }
             // The level did not go on into this zero.
-            Some(Run { stage: Stage::Stopped { unbroken, .. }, .. }) => *unbroken = false,
+            Some(Run { stage: Stage::Stopped { stop, .. }, .. }) => stop.unbroken = false,
             _ => {}
         }
         self.zeroing.enter(derived);

@@ -15,13 +15,13 @@ pub(crate) struct Block {
     count: u16,
     /// Ticks since the block began.
     span: u64,
-    /// Sums of the samples' levels above the first in fine steps, of their instants since the block began (in ticks, and coarse), and of the
-    /// squares and the product of levels and coarse instants.
-    sum: i64,
+    /// Sums over the samples: levels above the first in fine steps, instants since the block began in ticks and in coarse
+    /// steps, squares and product of levels and coarse instants.
+    levels: i64,
     ticks: u64,
-    coarse: i64,
-    squares: i64,
-    coarse_squares: i64,
+    instants: u64,
+    level_squares: u64,
+    instant_squares: u64,
     products: i64,
 }
 
@@ -46,24 +46,28 @@ impl Block {
         self.span = self.span.saturating_add(u64::from(ticks));
     }
 
-    /// Takes a level in 2^-16 counts, `ticks` after the one before. `true` when the block is as close to `length` ticks as this spacing
-    /// allows.
+    /// Takes a level in 2^-16 counts, `ticks` after the one before. `true` when the block is as close to `length` ticks as
+    /// this spacing allows.
     ///
-    /// Instants are squared in units of `length / 2^16`, levels in fine steps of `2^-fine_bits` counts, so that the sums fit.
+    /// Instants are summed in coarse steps of at most `length / 2^14`, levels in fine steps of `2^-fine_bits` counts, so that
+    /// products fit 64 bits and squares of instants 32.
     pub(crate) fn push(&mut self, level_q16: i64, ticks: u32, length: u32, fine_bits: u8) -> bool {
         if self.count == 0 {
             self.first_q16 = level_q16;
         }
         self.skip(ticks);
         let above = level_q16.saturating_sub(self.first_q16) >> (16 - fine_bits);
-        let coarse = (self.span >> (16 - length.leading_zeros().min(16))).min(1 << 20).cast_signed();
+        let above = above.clamp(i64::from(i32::MIN), i64::from(i32::MAX)) as i32;
+        let coarse = (self.span >> coarse_shift(length)).min(0xFFFF) as u32;
         self.count = self.count.saturating_add(1);
-        self.sum = self.sum.saturating_add(above);
+        // A block ends at 2^16 samples, so that only squares of levels far from noise can reach the end of their sum.
+        self.levels += i64::from(above);
         self.ticks = self.ticks.saturating_add(self.span);
-        self.coarse = self.coarse.saturating_add(coarse);
-        self.squares = self.squares.saturating_add(above.saturating_mul(above));
-        self.coarse_squares = self.coarse_squares.saturating_add(coarse * coarse);
-        self.products = self.products.saturating_add(above.saturating_mul(coarse));
+        self.instants += u64::from(coarse);
+        let magnitude = u64::from(above.unsigned_abs());
+        self.level_squares = self.level_squares.saturating_add(magnitude * magnitude);
+        self.instant_squares += u64::from(coarse * coarse);
+        self.products += i64::from(above) * i64::from(coarse);
         2 * self.span.min(u64::from(u32::MAX)) + u64::from(ticks) >= 2 * u64::from(length) || self.count == u16::MAX
     }
 
@@ -75,14 +79,19 @@ impl Block {
         }
         let share = 1.0 / f32::from(block.count);
         let fine = fine_step(fine_bits);
-        let mean = block.sum as f32 * share;
+        let mean = block.levels as f32 * share;
         let (counts, part) = (block.first_q16 >> 16, (block.first_q16 & 0xFFFF) as f32 * (1.0 / 65536.0));
-        let instant = block.coarse as f32 * share;
+        let instant = block.instants as f32 * share;
         let age = block.span.saturating_sub((block.ticks as f32 * share) as u64);
-        let spread = block.coarse_squares as f32 - block.coarse as f32 * instant;
-        let product = block.products as f32 - block.sum as f32 * instant;
+        let spread = block.instant_squares as f32 - block.instants as f32 * instant;
+        let product = block.products as f32 - block.levels as f32 * instant;
         let line = if spread > 0.0 { product * product / spread } else { 0.0 };
-        let scatter = (block.squares as f32 - block.sum as f32 * mean - line) * fine * fine;
+        let scatter = (block.level_squares as f32 - block.levels as f32 * mean - line) * fine * fine;
         Some(BlockMean { counts, rest: part + mean * fine, age, samples: block.count, scatter, span: block.span })
     }
+}
+
+/// The coarse steps of a block, as a power of two of ticks.
+fn coarse_shift(length: u32) -> u32 {
+    18_u32.saturating_sub(length.leading_zeros())
 }

@@ -21,9 +21,9 @@ use crate::setup::{Derived, QUANTISATION_VAR};
 /// How the run before stopped, for its bracket.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Stop {
-    /// Its last sample, 2^-16 counts, and what that adds to the variance of a total that ends on it.
+    /// Its last sample, 2^-16 counts, and what of a sample's variance that adds to a total that ends on it.
     pub(crate) last_q16: i64,
-    pub(crate) last_var: f32,
+    pub(crate) last_weight: f32,
     /// Whether the level went on into the zero without an interruption.
     pub(crate) unbroken: bool,
 }
@@ -227,7 +227,7 @@ impl Zeroing {
         &mut self,
         tick: u32,
         terms: Terms,
-        stop: Option<Stop>,
+        stop: Option<&Stop>,
         derived: &Derived,
     ) -> Option<RateChange> {
         self.finish(tick, terms, stop, derived);

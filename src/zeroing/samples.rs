@@ -4,6 +4,7 @@ use super::gate::Verdict;
 use super::{Checkpoint, Stop, Taken, Zeroing, advance};
 use crate::clock::Span;
 use crate::estimate::{BlockMean, Bracket};
+use crate::ledger::{to_q16, whole_q16};
 use crate::level::{Seen, Terms};
 use crate::math;
 use crate::setup::Derived;
@@ -23,7 +24,7 @@ impl Zeroing {
     }
 
     /// A sample in a zero.
-    pub(crate) fn take(&mut self, seen: &Seen, stop: Option<Stop>, derived: &Derived) -> Taken {
+    pub(crate) fn take(&mut self, seen: &Seen, stop: Option<&Stop>, derived: &Derived) -> Taken {
         let ticks = seen.ticks;
         if self.disturbed {
             self.skip(ticks);
@@ -49,7 +50,7 @@ impl Zeroing {
     }
 
     /// The zero ends or is asked about before its first block was full: what there is of it has to do.
-    pub(crate) fn finish(&mut self, tick: u32, terms: Terms, stop: Option<Stop>, derived: &Derived) {
+    pub(crate) fn finish(&mut self, tick: u32, terms: Terms, stop: Option<&Stop>, derived: &Derived) {
         if !self.level_known && !self.disturbed {
             self.finish_block(tick, terms, stop, derived);
         }
@@ -57,21 +58,31 @@ impl Zeroing {
 
     /// Whether a sample is too far off to be noise; while too little is known to tell, none is.
     fn judge(&mut self, seen: &Seen, derived: &Derived) -> Verdict {
-        if !self.level_known || (derived.block_ticks > 0 && !self.noise.has_scatter()) {
-            return Verdict::Noise;
+        let ticks = self.pending.ticks.saturating_add(u64::from(seen.ticks));
+        if self.gate.is_beyond(ticks) || (self.gate.is_open() && self.can_aim(derived)) {
+            self.aim(ticks.saturating_add(u64::from(derived.block_ticks)), derived);
         }
-        let ahead_s = math::seconds(self.pending.ticks.saturating_add(u64::from(seen.ticks)), derived.tick_s);
-        let expected = self.trend.residual() + self.trend.rate() * ahead_s;
-        let (counts, part) = (seen.level_q16 >> 16, (seen.level_q16 & 0xFFFF) as f32 * (1.0 / 65536.0));
-        let off = counts.saturating_sub(self.trend.anchor()) as f32 - expected + part;
-        let spread = ahead_s * (2.0 * self.trend.covariance() + ahead_s * self.trend.rate_variance());
-        let walked = derived.level_walk * ahead_s;
-        let sample_var = self.noise.sample_var().max(derived.readout_var);
-        let figures = self.considered.lag_variance();
-        self.gate.judge(seen.tick, off, sample_var + self.trend.level_variance() + spread + walked + figures)
+        self.gate.judge(seen.tick, seen.level_q16, ticks)
     }
 
-    fn finish_block(&mut self, tick: u32, terms: Terms, stop: Option<Stop>, derived: &Derived) -> Taken {
+    /// Whether enough is known to tell noise from more.
+    fn can_aim(&self, derived: &Derived) -> bool {
+        self.level_known && (derived.block_ticks == 0 || self.noise.has_scatter())
+    }
+
+    /// Tells the gate what to expect for so many ticks from the trend's instant.
+    fn aim(&mut self, ticks: u64, derived: &Derived) {
+        let trend = &self.trend;
+        let ahead_s = math::seconds(ticks, derived.tick_s);
+        let spread = ahead_s * (2.0 * trend.covariance() + ahead_s * trend.rate_variance());
+        let walked = derived.level_walk * ahead_s;
+        let sample_var = self.noise.sample_var().max(derived.readout_var);
+        let variance = sample_var + trend.level_variance() + spread + walked + self.considered.lag_variance();
+        let level_q16 = whole_q16(trend.anchor()).saturating_add(to_q16(trend.residual()));
+        self.gate.aim(level_q16, trend.rate() * derived.tick_s, ticks, variance);
+    }
+
+    fn finish_block(&mut self, tick: u32, terms: Terms, stop: Option<&Stop>, derived: &Derived) -> Taken {
         let Some(mean) = self.block.take(derived.fine_bits) else { return Taken::Used };
         if !self.level_known && self.noise.is_torn(&mean) {
             return Taken::Spike;
@@ -80,6 +91,7 @@ impl Zeroing {
         let variance = derived.block_var(mean.samples);
         if !self.level_known {
             self.find_level(&mean, variance, terms, stop, derived);
+            self.aim_next(mean.span, derived);
             return Taken::Used;
         }
         let span = self.pending.leave(mean.age);
@@ -129,14 +141,23 @@ impl Zeroing {
                 known,
             });
         }
+        self.aim_next(mean.span, derived);
         Taken::Used
     }
 
+    /// Tells the gate what to expect until the next block of the same length is full.
+    fn aim_next(&mut self, block: u64, derived: &Derived) {
+        if self.can_aim(derived) {
+            self.aim(self.pending.ticks.saturating_add(block).saturating_add(block >> 2), derived);
+        }
+    }
+
     /// The first block of a zero: the level starts from it, and a run that has just stopped is bracketed.
-    fn find_level(&mut self, mean: &BlockMean, variance: f32, terms: Terms, stop: Option<Stop>, derived: &Derived) {
+    fn find_level(&mut self, mean: &BlockMean, variance: f32, terms: Terms, stop: Option<&Stop>, derived: &Derived) {
         let span = self.pending.leave(mean.age);
         let elapsed = span.ticks;
-        match stop {
+        // A second zero after the same run goes on with the bracket that there is.
+        match stop.filter(|_| self.bracket.is_none()) {
             // Level and baseline drift together from the stop on.
             Some(stop) if stop.unbroken => {
                 advance(&mut self.trend, span, derived);
@@ -146,7 +167,8 @@ impl Zeroing {
                 self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, variance, &self.trend));
             }
             Some(stop) => {
-                self.bracket = Some(Bracket::on_rate(stop.last_q16, stop.last_var, &self.trend));
+                let last_var = self.noise.sample_var() * stop.last_weight;
+                self.bracket = Some(Bracket::on_rate(stop.last_q16, last_var, &self.trend));
                 self.resting = self.resting.saturating_add(elapsed);
             }
             None => self.resting = self.resting.saturating_add(elapsed),
