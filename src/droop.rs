@@ -2,9 +2,10 @@
 
 use crate::clock::Span;
 use crate::estimate::{Block, Trend};
-use crate::level::Seen;
+use crate::level::{Seen, Terms};
+use crate::math;
 use crate::setup::Derived;
-use crate::zeroing::advance;
+use crate::zeroing::{advance, squares};
 
 /// Growth of the droop's variance from hold to hold.
 const FADING: f32 = 4.0;
@@ -19,6 +20,11 @@ pub(crate) struct Droop {
     level_known: bool,
     /// Time that holds have told of it, ticks.
     known_ticks: u64,
+    /// Leak and soakage when the present hold found its level, what an uncertainty of each has made of the level since, and
+    /// how long ago that was, ticks.
+    start: Terms,
+    doubts: [f32; 2],
+    held: u64,
 }
 
 impl Droop {
@@ -30,6 +36,9 @@ impl Droop {
             pending: Span::default(),
             level_known: false,
             known_ticks: 0,
+            start: Terms::default(),
+            doubts: [0.0; 2],
+            held: 0,
         }
     }
 
@@ -54,15 +63,25 @@ impl Droop {
             advance(&mut self.trend, span, derived);
             self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
             self.known_ticks = self.known_ticks.saturating_add(span.ticks);
+            self.held = self.held.saturating_add(span.ticks);
+            self.doubts = seen.terms.doubts_since(self.start, derived);
         } else {
             self.trend.restart(mean.counts, mean.rest, variance);
             self.level_known = true;
+            (self.start, self.held) = (seen.terms, 0);
         }
     }
 
     /// The droop, counts/s, and its variance; that of the data sheet before any hold.
     pub(crate) fn rate(&self, derived: &Derived) -> (f32, f32) {
-        (self.trend.rate(), self.trend.rate_variance() + derived.rate_rounding_var(self.known_ticks))
+        let figures = squares(self.doubts(derived));
+        (self.trend.rate(), self.trend.rate_variance() + derived.rate_rounding_var(self.known_ticks) + figures)
+    }
+
+    /// What one uncertainty of leak and of soakage makes of the latest hold's droop, counts/s.
+    pub(crate) fn doubts(&self, derived: &Derived) -> [f32; 2] {
+        let held_s = math::seconds(self.held, derived.tick_s);
+        if held_s > 0.0 { self.doubts.map(|doubt| doubt / held_s) } else { [0.0; 2] }
     }
 
     /// Whether any hold was long enough to tell of it.

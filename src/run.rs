@@ -196,7 +196,7 @@ impl Run {
             input_noise: not_negative(walk + self.ledger.walk_var),
             drift: drift + shown.rounding.1 * driven_s * driven_s,
             dead_time: self.dead_time_var(derived) - of_dead_time,
-            leak_and_soakage: leaked + considered,
+            leak_and_soakage: leaked + self.leaked_rounding(derived) + considered,
         }
     }
 
@@ -236,7 +236,7 @@ impl Run {
             input_noise,
             drift: rest - readout,
             dead_time: self.dead_time_var(derived),
-            leak_and_soakage: leaked + considered,
+            leak_and_soakage: leaked + self.leaked_rounding(derived) + considered,
         }
     }
 
@@ -246,9 +246,14 @@ impl Run {
         self.ledger.dead_time_var + pedestal_var * self.ledger.pedestal_lever * self.ledger.pedestal_lever
     }
 
-    /// Variance that readout noise has put into what leaked during the run.
+    /// Variance that readout noise has put into what leaked during the run, as a walk of the baseline.
     fn leaked_readout(&self, derived: &Derived) -> f32 {
         derived.leak_walk * self.driven.squares as f32
+    }
+
+    /// The same for rounding that nothing dithers, which is no walk.
+    fn leaked_rounding(&self, derived: &Derived) -> f32 {
+        derived.leaked_rounding_var(math::seconds(self.driven.ticks, derived.tick_s))
     }
 
     /// What is known of the level at which the present segment began: the reset level and a known pedestal.

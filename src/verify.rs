@@ -143,11 +143,13 @@ impl Verification {
             return false;
         }
         let (pedestal, pedestal_var) = derived.pedestal.unwrap_or((0.0, 0.0));
+        // A leak holds the level back: it moves as far in all of t as it would without one in at least t / (1 + t / tau).
+        let t = t / (1.0 + t * derived.leak_per_s);
         let doubt = 4.0 * math::sqrt(pedestal_var + mover.rate_var * t * t);
         let moved = math::abs(pedestal + mover.rate * t) - doubt;
         let reach = if mover.input { 8.0 } else { 2.0 } * NEAR * deviation;
         let band = NEAR * deviation;
-        moved > reach || derived.level_walk * t > WALKED_BANDS * band * band
+        moved > reach || 0.5 * derived.level_walk * t > WALKED_BANDS * band * band
     }
 
     /// How many resets in a row have failed.

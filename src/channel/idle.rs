@@ -4,7 +4,7 @@ use super::Channel;
 use crate::health::Health;
 use crate::math;
 use crate::quantity::{Current, Integral, Measured, Voltage, VoltageRate};
-use crate::zeroing::squares;
+use crate::zeroing::{square_distance, squares};
 
 impl<Q: Integral> Channel<'_, Q> {
     /// The drift of the output and its standard uncertainty, as of the latest zero.
@@ -29,7 +29,7 @@ impl<Q: Integral> Channel<'_, Q> {
     /// holds: the drift of a zero is both, the droop of a hold is the bias alone. `None` before there was one of each.
     ///
     /// `bias = droop / (+-1/C)`, `offset = (drift - droop) R / (+-1/C)`, minus where the circuit inverts; `R` is the input
-    /// resistance, or that of the source at a current input.
+    /// resistance, or that of the source at a current input. What the open input switch leaks in a hold counts as bias.
     pub fn offset_and_bias(&self) -> Option<(Measured<Voltage>, Measured<Current>)> {
         if !self.droop.is_known() || self.zeroing.known_ticks() == 0 {
             return None;
@@ -40,8 +40,21 @@ impl<Q: Integral> Channel<'_, Q> {
         let capacitance_f = circuit.capacitance_f;
         let signed = if circuit.inverting { -capacitance_f } else { capacitance_f };
         let resistance = circuit.offset_resistance_ohm();
+        // A leak at the reset level droops as a bias would.
+        let leaking_u = match circuit.leak_time_constant_s {
+            Some(time_constant_s) => {
+                let offset_var = circuit.offset_limit_v * circuit.offset_limit_v / 3.0;
+                let zero_u = self.setup.converter().code_zero_u_v;
+                math::sqrt_f64(offset_var + zero_u * zero_u) / time_constant_s
+            }
+            None => 0.0,
+        };
         let (drift_u, droop_u) = (volts_per_second(drift.u), volts_per_second(droop.u));
-        let u = math::sqrt_f64(drift_u * drift_u + droop_u * droop_u);
+        // Uncertain figures of leak and soakage move both alike, which their difference does not see.
+        let (of_drift, of_droop) = (self.zeroing.considered.rate(), self.droop.doubts(self.setup.derived()));
+        let lsb_v = self.setup.converter().lsb_v;
+        let alike = squares(of_drift) + squares(of_droop) - square_distance(of_drift, of_droop);
+        let u = math::sqrt_f64(drift_u * drift_u + droop_u * droop_u - f64::from(alike) * lsb_v * lsb_v);
         let apart = volts_per_second(drift.value) - volts_per_second(droop.value);
         Some((
             Measured::new(
@@ -50,7 +63,7 @@ impl<Q: Integral> Channel<'_, Q> {
             ),
             Measured::new(
                 Current::from_amperes(volts_per_second(droop.value) * signed),
-                Current::from_amperes(droop_u * capacitance_f),
+                Current::from_amperes(math::sqrt_f64(droop_u * droop_u + leaking_u * leaking_u) * capacitance_f),
             ),
         ))
     }

@@ -26,6 +26,18 @@ impl Terms {
     }
 }
 
+impl Terms {
+    /// What one standard uncertainty of leak and of soakage has made of the level since `start`, counts.
+    pub(crate) fn doubts_since(self, start: Self, derived: &Derived) -> [f32; 2] {
+        let [leak_u_rel, soakage_u_rel] = derived.terms_u_rel;
+        let counts = |now: i64, then: i64| now.saturating_sub(then) as f32 * (1.0 / 65536.0);
+        [
+            counts(self.leaked_q16, start.leaked_q16) * leak_u_rel,
+            counts(self.soaked_q16, start.soaked_q16) * soakage_u_rel,
+        ]
+    }
+}
+
 /// A sample as the estimator sees it.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Seen {

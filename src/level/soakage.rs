@@ -31,11 +31,31 @@ impl BranchLaw {
     }
 }
 
-/// The part of the way to the level's that a branch's voltage goes in a step, and what a ramp of the level adds, 2^-32.
+/// The part of the way to the level's that a branch's voltage goes in a step, and what a ramp of the level adds.
 #[derive(Clone, Copy, Debug, Default)]
 struct Gains {
-    settled: u32,
-    ramped: u32,
+    settled: Share,
+    ramped: Share,
+}
+
+/// A number below 1 to 24 bits, however small: `mantissa 2^-(32 + shift)`.
+#[derive(Clone, Copy, Debug, Default)]
+struct Share {
+    mantissa: u32,
+    shift: u8,
+}
+
+impl Share {
+    fn of(x: f32) -> Self {
+        // Below 2^56, and exact.
+        let q56 = (x * 72_057_594_037_927_936.0) as u64;
+        let leading = q56.leading_zeros().min(63);
+        Self { mantissa: ((q56 << leading) >> 32) as u32, shift: leading.saturating_sub(8) as u8 }
+    }
+
+    fn part(self, number: i64) -> i64 {
+        part(number, self.mantissa) >> self.shift
+    }
 }
 
 impl Gains {
@@ -49,8 +69,7 @@ impl Gains {
         } else {
             1.0 - settled / a
         };
-        let q32 = |x: f32| (x * 4_294_967_296.0) as u32;
-        Self { settled: q32(settled), ramped: q32(ramped) }
+        Self { settled: Share::of(settled), ramped: Share::of(ramped) }
     }
 }
 
@@ -81,7 +100,7 @@ impl Soakage {
         let ramp = i64::from(to).saturating_sub(i64::from(from)) << 24;
         for (voltage, gains) in self.voltages.iter_mut().zip(&self.gains) {
             let behind = (i64::from(from) << 24).saturating_sub(*voltage);
-            *voltage = voltage.saturating_add(part(behind, gains.settled)).saturating_add(part(ramp, gains.ramped));
+            *voltage = voltage.saturating_add(gains.settled.part(behind)).saturating_add(gains.ramped.part(ramp));
         }
     }
 

@@ -92,6 +92,8 @@ pub(crate) struct Derived {
     reset_q16: i64,
     pub(crate) leak: Option<LeakLaw>,
     pub(crate) soakage: Option<SoakageLaw>,
+    /// One over the leak's time constant, 1/s; 0: no leak.
+    pub(crate) leak_per_s: f32,
     /// Variance that the readout noise of one sample adds to the effective level through the leak, counts^2 per squared tick.
     pub(crate) leak_walk: f32,
     /// Relative standard uncertainties of what leaks and of what soaks.
@@ -134,7 +136,7 @@ impl Derived {
         check!(flicker <= 1e6, "input_flicker", "small enough to change the drift by at most 1e6 counts/s");
         let mut rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
         let mut leak = None;
-        let mut leak_per_tick = 0.0;
+        let (mut leak_per_tick, mut leaking_limit) = (0.0, 0.0);
         if let Some(time_constant_s) = circuit.leak_time_constant_s {
             leak = match LeakLaw::new(time_constant_s, converter.tick_hz) {
                 Ok(law) => Some(law),
@@ -143,7 +145,8 @@ impl Derived {
             leak_per_tick = 1.0 / (time_constant_s * converter.tick_hz);
             // What leaks at the reset level, by the offsets of amplifier and converter, is drift as well.
             let leaking_v = circuit.offset_limit_v + 2.0 * converter.code_zero_u_v;
-            rate_limit += leaking_v / time_constant_s / converter.lsb_v;
+            leaking_limit = leaking_v / time_constant_s / converter.lsb_v;
+            rate_limit += leaking_limit;
         }
         let soakage = match soakage(circuit, converter.tick_hz) {
             Ok(law) => law,
@@ -166,7 +169,7 @@ impl Derived {
                 }
             }
         };
-        let droop_limit = circuit.bias_limit_a * per_current;
+        let droop_limit = circuit.bias_limit_a * per_current + leaking_limit;
         let low = ceil(converter.code(circuit.rail_low_v));
         let high = floor(converter.code(circuit.rail_high_v));
         let usable = (
@@ -264,6 +267,7 @@ impl Derived {
             reset_q16: (reset_code * 65536.0) as i64,
             leak,
             soakage,
+            leak_per_s: (leak_per_tick * converter.tick_hz) as f32,
             leak_walk: ((noise.readout_counts * noise.readout_counts + 1.0 / 12.0) * leak_per_tick * leak_per_tick)
                 as f32,
             terms_u_rel: [circuit.leak_u_rel as f32, circuit.soakage_u_rel as f32],
@@ -286,13 +290,20 @@ impl Derived {
         if self.dithered { block_var } else { 4.0 * block_var }
     }
 
-    /// Added to the variance of a rate that `ticks` of samples have told, for rounding that nothing dithers, (counts/s)^2.
+    /// Added to the variance of a rate that `ticks` of samples have told, for rounding that nothing dithers, (counts/s)^2:
+    /// of the levels at both ends, and of the level that leaks.
     pub(crate) fn rate_rounding_var(&self, ticks: u64) -> f32 {
         if self.dithered || ticks == 0 {
             return 0.0;
         }
         let known_s = ticks as f32 * self.tick_s;
-        2.0 * QUANTISATION_VAR / (known_s * known_s)
+        2.0 * QUANTISATION_VAR / (known_s * known_s) + self.leaked_rounding_var(1.0)
+    }
+
+    /// Variance of what rounding that nothing dithers makes leak in `seconds`, counts^2.
+    pub(crate) fn leaked_rounding_var(&self, seconds: f32) -> f32 {
+        let taus = seconds * self.leak_per_s;
+        if self.dithered { 0.0 } else { QUANTISATION_VAR * taus * taus }
     }
 
     /// Whether figures of leak or soakage are uncertain.

@@ -21,6 +21,8 @@ pub(crate) struct Considered {
     rate: [f32; FIGURES],
     /// The movement of the run that has stopped, counts.
     run: [f32; FIGURES],
+    /// By how much the samples' levels changed when they were last followed.
+    step: [f32; FIGURES],
 }
 
 impl Considered {
@@ -29,12 +31,9 @@ impl Considered {
         if !derived.has_doubts() {
             return;
         }
-        let changes = [
-            terms.leaked_q16.saturating_sub(self.followed.leaked_q16),
-            terms.soaked_q16.saturating_sub(self.followed.soaked_q16),
-        ];
-        for ((level, change), u_rel) in self.level.iter_mut().zip(changes).zip(derived.terms_u_rel) {
-            *level += change as f32 * (1.0 / 65536.0) * u_rel;
+        self.step = terms.doubts_since(self.followed, derived);
+        for (level, step) in self.level.iter_mut().zip(self.step) {
+            *level += step;
         }
         self.followed = terms;
     }
@@ -74,7 +73,14 @@ impl Considered {
 
     /// The run is what the level is above the baseline now.
     pub(crate) fn close_run(&mut self) {
-        self.run = self.level;
+        self.run = core::mem::take(&mut self.level);
+    }
+
+    /// The level went on after the run had stopped, and is the run's for so much longer.
+    pub(crate) fn extend_run(&mut self) {
+        for (run, level) in self.run.iter_mut().zip(self.level) {
+            *run += level;
+        }
     }
 
     /// Of the run that goes on or, since [`close_run`](Self::close_run), has stopped, counts.
@@ -90,6 +96,15 @@ impl Considered {
     /// How much farther off than noise a sample may lie, as a variance, counts^2.
     pub(crate) fn lag_variance(&self) -> f32 {
         squares(self.level)
+    }
+
+    /// The same until they are followed again: creep slows down, so it goes on by less than before.
+    pub(crate) fn lag_variance_ahead(&self) -> f32 {
+        let mut farthest = self.level;
+        for (level, step) in farthest.iter_mut().zip(self.step) {
+            *level = math::abs(*level) + math::abs(step);
+        }
+        squares(farthest)
     }
 }
 

@@ -12,6 +12,11 @@ use crate::setup::Derived;
 /// An onset before so many innovations is as good as the beginning of the zero.
 const EARLY_INNOVATIONS: u16 = 16;
 
+/// Standard deviations of leak and soakage that are no onset; and how much of that, in deviations of an innovation, the
+/// watch over the noise may overlook.
+const DOUBTED: f32 = 3.0;
+const NEGLIGIBLE: f32 = 0.3;
+
 /// Variance by which flicker parts the mean rates of two equal stretches of time side by side, 4 ln 2 (IEEE Std 1139-2008:
 /// twice the Allan variance); taken for what is new in each e-fold of a zero's age. Simulated zeros bear it out.
 const FLICKER_SHARE: f32 = 2.772_588_7;
@@ -77,7 +82,8 @@ impl Zeroing {
         let spread = ahead_s * (2.0 * trend.covariance() + ahead_s * trend.rate_variance());
         let walked = derived.level_walk * ahead_s;
         let sample_var = self.noise.sample_var().max(derived.readout_var);
-        let variance = sample_var + trend.level_variance() + spread + walked + self.considered.lag_variance();
+        let figures = DOUBTED * DOUBTED * self.considered.lag_variance_ahead();
+        let variance = sample_var + trend.level_variance() + spread + walked + figures;
         let level_q16 = whole_q16(trend.anchor()).saturating_add(to_q16(trend.residual()));
         self.gate.aim(level_q16, trend.rate() * derived.tick_s, ticks, variance);
     }
@@ -118,12 +124,13 @@ impl Zeroing {
         }
         self.known_ticks = self.known_ticks.saturating_add(elapsed);
         self.known_innovations = self.known_innovations.saturating_add(1);
-        let precision = match lag_var > 0.0 {
-            true => innovation.precision / (1.0 + lag_var * innovation.precision),
-            false => innovation.precision,
-        };
-        let deviation = innovation.residual * math::sqrt(precision / self.noise.dispersion());
-        self.noise.take_innovation(deviation);
+        let per_deviation = math::sqrt(innovation.precision / self.noise.dispersion());
+        // What wrong figures of leak and soakage may have done is the same in block after block: no noise, and no onset.
+        let doubt = DOUBTED * math::sqrt(lag_var) * per_deviation;
+        let deviation = beyond(innovation.residual * per_deviation, doubt);
+        if doubt < NEGLIGIBLE {
+            self.noise.take_innovation(deviation);
+        }
         if self.cusum.take(deviation, derived.onset_threshold) {
             let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
             self.roll_back();
@@ -163,7 +170,7 @@ impl Zeroing {
                 advance(&mut self.trend, span, derived);
                 self.considered.advance(elapsed, derived);
                 self.considered.follow(terms, derived);
-                self.considered.close_run();
+                self.considered.extend_run();
                 self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, variance, &self.trend));
             }
             Some(stop) => {
@@ -205,4 +212,9 @@ impl Zeroing {
             self.pending.join(checkpoint.age);
         }
     }
+}
+
+/// By how much `x` lies outside `-doubt` to `doubt`.
+fn beyond(x: f32, doubt: f32) -> f32 {
+    x - x.clamp(-doubt, doubt)
 }
