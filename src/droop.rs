@@ -45,6 +45,11 @@ impl Droop {
     /// A hold begins: the level is to be found. The bias may have changed since the last: what that told counts a quarter.
     pub(crate) fn enter(&mut self, derived: &Derived) {
         self.trend.doubt_rate((FADING * self.trend.rate_variance()).min(derived.droop_prior_var));
+        self.forget_level();
+    }
+
+    /// The level is to be found anew.
+    pub(crate) fn forget_level(&mut self) {
         self.block = Block::default();
         self.pending = Span::default();
         self.level_known = false;

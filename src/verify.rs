@@ -1,6 +1,7 @@
 //! Whether each reset did what it should.
 
 use crate::health::Health;
+use crate::level::{Seen, Terms};
 use crate::math;
 use crate::setup::Derived;
 
@@ -10,6 +11,8 @@ const NEAR: f32 = 6.0;
 /// within `+-a` for a time `t` with the probability `4/pi e^(-pi^2 q t / 8 a^2)`: 1e-8 for `q t = 15 a^2`, and here even if
 /// the walk is a third of what the set-up says.
 const WALKED_BANDS: f32 = 135.0;
+/// Samples in which a steady input that has just cancelled a pedestal has moved the level on.
+const STEADY_SAMPLES: u8 = 3;
 /// Growth of the settling time constant over the set-up's `R_on C` that is worth a word, as a factor.
 const SLOW: f32 = 2.0;
 
@@ -32,6 +35,17 @@ pub(crate) struct Settled {
     pub(crate) var: f32,
 }
 
+/// A level that has yet to leave the reset level.
+#[derive(Clone, Copy, Debug)]
+struct Leaving {
+    settled: Settled,
+    /// What the dielectric held when the switch opened, 2^-16 counts.
+    soaked_q16: i64,
+    /// Ticks and samples since.
+    ticks: u64,
+    samples: u8,
+}
+
 /// What should move a level off the reset level once the switch is open.
 #[derive(Clone, Copy, Debug)]
 pub(crate) struct Mover {
@@ -40,7 +54,8 @@ pub(crate) struct Mover {
     pub(crate) rate_var: f32,
     /// Variance of one sample.
     pub(crate) sample_var: f32,
-    /// Whether an input that just cancels the drift has to be thought of.
+    /// Whether there may be an input that just cancels the drift: then drift tells nothing, and a pedestal only if no steady
+    /// input could have hidden it.
     pub(crate) input: bool,
 }
 
@@ -54,11 +69,13 @@ pub(crate) struct Verification {
     /// the next is compared with it.
     first: Option<(i64, u64)>,
     compared: bool,
+    /// Of the samples that should have settled: the first, the sum of all above it, their number, and the latest.
+    settled_q16: i64,
     sum_q16: i64,
     samples: u16,
+    latest_q16: i64,
     failed: bool,
-    /// The level to leave once the switch is open, and for how long it has not been left.
-    leaving: Option<(Settled, u64)>,
+    leaving: Option<Leaving>,
     failures: u8,
     latched: bool,
 }
@@ -74,7 +91,11 @@ impl Verification {
     pub(crate) fn take_closed(&mut self, level_q16: i64, ticks: u32, derived: &Derived) -> Closed {
         self.ticks = self.ticks.saturating_add(u64::from(ticks));
         if self.ticks > u64::from(derived.settling_ticks) {
-            self.sum_q16 = self.sum_q16.saturating_add(level_q16);
+            if self.samples == 0 {
+                self.settled_q16 = level_q16;
+            }
+            self.latest_q16 = level_q16;
+            self.sum_q16 = self.sum_q16.saturating_add(level_q16 - self.settled_q16);
             self.samples = self.samples.saturating_add(1);
             if !self.failed && Health::outside((level_q16 + 0x8000) >> 16, derived.reset_window) {
                 return Closed::NotArrived;
@@ -106,11 +127,15 @@ impl Verification {
     }
 
     /// The switch opens. Gives the reset level if it was seen settled, and in its place.
-    pub(crate) fn open(&mut self, derived: &Derived) -> Option<Settled> {
+    pub(crate) fn open(&mut self, terms: Terms, derived: &Derived) -> Option<Settled> {
         let samples = i64::from(self.samples);
-        let level_q16 = self.sum_q16.checked_div(samples).filter(|_| !self.failed)?;
-        let settled = Settled { level_q16, var: derived.readout_var / f32::from(self.samples) };
-        self.leaving = Some((settled, 0));
+        let above_q16 = self.sum_q16.checked_div(samples).filter(|_| !self.failed)?;
+        // What still moves by more than noise has not settled, and what it moves by is not known better.
+        let moved = math::abs((self.latest_q16 - self.settled_q16) as f32 * (1.0 / 65536.0));
+        let unrest = (moved - 4.0 * math::sqrt(derived.readout_var)).max(0.0);
+        let var = derived.readout_var / f32::from(self.samples) + unrest * unrest;
+        let settled = Settled { level_q16: self.settled_q16.saturating_add(above_q16), var };
+        self.leaving = Some(Leaving { settled, soaked_q16: terms.soaked_q16, ticks: 0, samples: 0 });
         Some(settled)
     }
 
@@ -132,24 +157,32 @@ impl Verification {
 
     /// A sample with the switch open: `true` if the level stays where the closed switch held it although drift, walk or
     /// pedestal should have moved it. Only a level that has left is free.
-    pub(crate) fn is_held(&mut self, level_q16: i64, ticks: u32, mover: &Mover, derived: &Derived) -> bool {
-        let Some((settled, passed)) = self.leaving.as_mut() else { return false };
-        *passed = passed.saturating_add(u64::from(ticks));
-        let t = math::seconds(*passed, derived.tick_s);
-        let deviation = math::sqrt(mover.sample_var + settled.var);
-        let off = math::abs(level_q16.saturating_sub(settled.level_q16) as f32 * (1.0 / 65536.0));
-        if off > NEAR * deviation {
+    pub(crate) fn is_held(&mut self, seen: &Seen, mover: &Mover, derived: &Derived) -> bool {
+        let Some(leaving) = self.leaving.as_mut() else { return false };
+        leaving.ticks = leaving.ticks.saturating_add(u64::from(seen.ticks));
+        leaving.samples = leaving.samples.saturating_add(1);
+        let Leaving { settled, soaked_q16, ticks, samples } = *leaving;
+        let counts = |q16: i64| q16 as f32 * (1.0 / 65536.0);
+        let band = NEAR * math::sqrt(mover.sample_var + settled.var);
+        if math::abs(counts(seen.linear_q16().saturating_sub(settled.level_q16))) > band {
             self.leaving = None;
             return false;
         }
+        // A leak holds the level back: by drift it moves as far in all of t as without one in at least t / (1 + t / tau), by
+        // walk in t / (1 + 2 t / tau). What the dielectric gives back moves it too.
+        let t = math::seconds(ticks, derived.tick_s);
+        let drifting = t / (1.0 + t * derived.leak_per_s);
+        let walking = t / (1.0 + 2.0 * t * derived.leak_per_s);
+        let walked = derived.level_walk * walking > WALKED_BANDS * band * band;
         let (pedestal, pedestal_var) = derived.pedestal.unwrap_or((0.0, 0.0));
-        // A leak holds the level back: it moves as far in all of t as it would without one in at least t / (1 + t / tau).
-        let t = t / (1.0 + t * derived.leak_per_s);
-        let doubt = 4.0 * math::sqrt(pedestal_var + mover.rate_var * t * t);
-        let moved = math::abs(pedestal + mover.rate * t) - doubt;
-        let reach = if mover.input { 8.0 } else { 2.0 } * NEAR * deviation;
-        let band = NEAR * deviation;
-        moved > reach || 0.5 * derived.level_walk * t > WALKED_BANDS * band * band
+        if mover.input {
+            let doubt = 4.0 * math::sqrt(pedestal_var);
+            return walked || (samples >= STEADY_SAMPLES && math::abs(pedestal) - doubt > 8.0 * band);
+        }
+        let soaked = counts(seen.terms.soaked_q16.saturating_sub(soaked_q16));
+        let doubt = 4.0 * math::sqrt(pedestal_var + mover.rate_var * drifting * drifting);
+        let moved = math::abs(pedestal + mover.rate * drifting - soaked) - doubt;
+        walked || moved > 2.0 * band
     }
 
     /// How many resets in a row have failed.

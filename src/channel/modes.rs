@@ -26,7 +26,8 @@ impl<Q: Integral> Channel<'_, Q> {
                 }
                 notices.push(sample.tick, Event::Spike);
             }
-            Taken::Onset { since, contradicts_run } => {
+            Taken::Onset { since, contradicts_run, change } => {
+                self.tell_decay(change, false, sample.tick, notices);
                 notices.push(since, Event::InputInZero);
                 if contradicts_run && let Some(run) = self.run.as_mut() {
                     run.reasons.insert(Reason::InputInZero);
@@ -61,7 +62,7 @@ impl<Q: Integral> Channel<'_, Q> {
     pub(super) fn hold(&mut self, sample: Sample, seen: &Seen) {
         let derived = self.setup.derived();
         if Health::at_rail(sample.counts, derived) {
-            self.droop.enter(derived);
+            self.droop.forget_level();
         } else {
             self.droop.take(seen, derived);
         }

@@ -18,7 +18,7 @@ impl<Q: Integral> Channel<'_, Q> {
         match self.mode {
             Some(Mode::Integrate) => self.leave_integrate(to, tick, notices),
             Some(Mode::Zero) => self.leave_zero(tick, notices),
-            Some(Mode::Reset) => settled = self.verification.open(self.setup.derived()),
+            Some(Mode::Reset) => settled = self.verification.open(self.level.terms(), self.setup.derived()),
             Some(Mode::Hold) if self.droop_outside_limits() => {
                 self.fault(Reason::DroopOutsideLimits, tick, notices);
             }
@@ -37,11 +37,7 @@ impl<Q: Integral> Channel<'_, Q> {
     fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         let change = self.zeroing.leave(tick, self.level.terms(), stop(&self.run), derived);
-        let level = self.health.last_q16();
-        let risen = self.zero_level_q16.replace(level).map_or(0.0, |before| (level - before) as f32 * (1.0 / 65536.0));
-        if let Some(time_constant_s) = change.and_then(|change| change.decay_s(risen)) {
-            notices.push(tick, Event::Decay { time_constant_s });
-        }
+        self.tell_decay(change, true, tick, notices);
         if let Some((stated_centicounts, observed_centicounts)) = self.zeroing.readout_centicounts(derived) {
             notices.push(tick, Event::ReadoutNoise { stated_centicounts, observed_centicounts });
         }

@@ -6,6 +6,7 @@ use crate::notice::{Event, Notices, Reason};
 use crate::quantity::Integral;
 use crate::sample::Mode;
 use crate::verify::{Closed, Mover};
+use crate::zeroing::RateChange;
 
 impl<Q: Integral> Channel<'_, Q> {
     /// Whether the switch has been given up after too many resets in a row that failed. No reset is asked for then, and
@@ -41,11 +42,23 @@ impl<Q: Integral> Channel<'_, Q> {
             sample_var: self.zeroing.shown(derived).sample_var,
             input: mode == Mode::Integrate,
         };
-        if self.verification.is_held(seen.linear_q16(), seen.ticks, &mover, derived) {
+        if self.verification.is_held(seen, &mover, derived) {
             if mode == Mode::Zero {
                 self.zeroing.abandon();
             }
             self.reset_failed(Reason::SwitchStuckClosed, seen.tick, notices);
+        }
+    }
+
+    /// States a change of the drift that a level which decays would show; `over`: whether the zero has ended.
+    pub(super) fn tell_decay(&mut self, change: Option<RateChange>, over: bool, tick: u32, notices: &mut Notices) {
+        let level = self.health.last_q16();
+        let risen = self.zero_level_q16.map_or(0.0, |before| (level - before) as f32 * (1.0 / 65536.0));
+        if over {
+            self.zero_level_q16 = Some(level);
+        }
+        if let Some(time_constant_s) = change.and_then(|change| change.decay_s(risen)) {
+            notices.push(tick, Event::Decay { time_constant_s });
         }
     }
 

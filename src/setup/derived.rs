@@ -224,6 +224,11 @@ impl Derived {
         let innovation_s = if policy.zero_block_s > 0.0 { policy.zero_block_s } else { 1e-3 };
         let sigma = noise.readout_counts + QUANTISATION_RMS;
         let min_on_time_s = policy.settling_s + circuit.settling_time_s(span * converter.lsb_v, 0.5 * converter.lsb_v);
+        let slewing_s = match circuit.slew_v_per_s {
+            Some(slew) => span * converter.lsb_v / slew,
+            None => 0.0,
+        };
+        let follow_s = policy.settling_s + slewing_s;
         let switch_tau_s = circuit.switch_resistance_ohm * circuit.capacitance_f;
         let pedestal = match circuit.pedestal_u_v {
             Some(u) => {
@@ -246,7 +251,7 @@ impl Derived {
             reset_window: (floor(reset_code - tolerance), ceil(reset_code + tolerance)),
             opened_window: (floor(opened_code - opened_tolerance), ceil(opened_code + opened_tolerance)),
             settling_ticks: (min_on_time_s * converter.tick_hz) as u32,
-            follow_ticks: (policy.settling_s * converter.tick_hz) as u32,
+            follow_ticks: (follow_s * converter.tick_hz) as u32,
             min_on_time_s,
             per_switch_tau: if switch_tau_s > 0.0 { (1.0 / switch_tau_s) as f32 } else { 0.0 },
             reset_attempts: policy.reset_attempts,

@@ -29,7 +29,7 @@ pub(crate) struct Stop {
 }
 
 /// What came of a zero sample.
-#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+#[derive(Clone, Copy, Debug)]
 pub(crate) enum Taken {
     Used,
     /// Too far off for noise, and left out.
@@ -38,8 +38,10 @@ pub(crate) enum Taken {
     Onset {
         /// When, at the latest found.
         since: u32,
-        /// Whether that is as good as the beginning of the zero: then the drift may have changed before, in the run.
+        /// Whether that is as good as the beginning of the zero: then the drift may have changed before, in the run; and by
+        /// how much.
         contradicts_run: bool,
+        change: Option<RateChange>,
     },
 }
 
@@ -241,16 +243,22 @@ impl Zeroing {
 
     /// The zero is over: how far was the drift from what was expected?
     fn judge_rate(&mut self) -> Option<RateChange> {
-        let (rate, variance, considered) = self.expected_rate.take().filter(|_| self.level_known && !self.disturbed)?;
+        let change = self.rate_change().filter(|_| !self.disturbed);
+        self.expected_rate = None;
+        if let Some(change) = change {
+            self.noise.take_rate(change.off * change.off / change.off_var);
+        }
+        change
+    }
+
+    /// How far the drift is from what was expected; `None` while the zero has not told enough of it.
+    fn rate_change(&self) -> Option<RateChange> {
+        let (rate, variance, considered) = self.expected_rate.filter(|_| self.level_known)?;
         // What the zero added to the knowledge of the rate has the variance that it took away.
         let learned = variance - self.trend.rate_variance();
-        if learned <= 0.1 * variance {
-            return None;
-        }
-        let off = self.trend.rate() - rate;
         let off_var = learned + square_distance(self.considered.rate(), considered);
-        self.noise.take_rate(off * off / off_var);
-        Some(RateChange { off, off_var, share: learned / variance })
+        let off = self.trend.rate() - rate;
+        (learned > 0.1 * variance).then(|| RateChange { off, off_var, share: learned / variance })
     }
 
     /// Brings the trend up to the latest sample: what is drift from here on belongs to a run.

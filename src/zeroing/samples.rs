@@ -1,7 +1,7 @@
 //! A zero's samples: one by one through the gate, in blocks to the filter, and back to the checkpoint on an onset.
 
 use super::gate::Verdict;
-use super::{Checkpoint, Stop, Taken, Zeroing, advance};
+use super::{Checkpoint, RateChange, Stop, Taken, Zeroing, advance};
 use crate::clock::Span;
 use crate::estimate::{BlockMean, Bracket};
 use crate::ledger::{to_q16, whole_q16};
@@ -41,10 +41,12 @@ impl Zeroing {
                 self.skip(ticks);
                 return Taken::Spike;
             }
-            Verdict::Onset(since) => {
+            Verdict::Onset(since, off) => {
+                let change = self.leap(off, self.pending.ticks, 1.0, derived);
                 self.skip(ticks);
                 self.roll_back();
-                return Taken::Onset { since, contradicts_run: false };
+                let contradicts_run = self.known_innovations < EARLY_INNOVATIONS;
+                return Taken::Onset { since, contradicts_run, change };
             }
         }
         self.pending.add(ticks);
@@ -52,6 +54,15 @@ impl Zeroing {
             return self.finish_block(seen.tick, seen.terms, stop, derived);
         }
         Taken::Used
+    }
+
+    /// What a level that lies `off` counts off after so many `ticks` makes of the rate, if the zero has hardly begun. `lag`: the
+    /// inverse of the part of the way that such a level is ahead of the mean of those before it.
+    fn leap(&self, off: f32, ticks: u64, lag: f32, derived: &Derived) -> Option<RateChange> {
+        let early = self.known_innovations < EARLY_INNOVATIONS && ticks > 0;
+        let per_s = lag / math::seconds(ticks.max(1), derived.tick_s);
+        let off_var = 2.0 * self.noise.sample_var() * per_s * per_s + self.trend.rate_variance();
+        early.then_some(RateChange { off: off * per_s, off_var, share: 1.0 })
     }
 
     /// The zero ends or is asked about before its first block was full: what there is of it has to do.
@@ -133,8 +144,11 @@ impl Zeroing {
         }
         if self.cusum.take(deviation, derived.onset_threshold) {
             let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
+            let contradicts_run = known < EARLY_INNOVATIONS;
+            let n = f32::from(self.known_innovations);
+            let change = self.leap(innovation.residual, self.known_ticks, 2.0 * n / (n + 1.0), derived);
             self.roll_back();
-            return Taken::Onset { since, contradicts_run: known < EARLY_INNOVATIONS };
+            return Taken::Onset { since, contradicts_run, change };
         }
         if self.cusum.is_quiet() || self.checkpoint.is_none() {
             let known = self.known_innovations;
