@@ -3,6 +3,7 @@
 //!
 //! Integers carry what is large (levels in counts), `f32` what is small (residuals, variances).
 
+mod bend;
 mod block;
 mod bracket;
 mod constant;

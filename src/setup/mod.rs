@@ -8,6 +8,7 @@ mod noise;
 mod policy;
 mod soakage;
 mod temperature;
+mod working_out;
 
 use core::marker::PhantomData;
 
