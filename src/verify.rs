@@ -121,7 +121,8 @@ impl Verification {
         if left <= 2.0 * NEAR * noise || all <= left {
             return Closed::Nothing;
         }
-        let tau_s = math::seconds(ticks, derived.tick_s) / math::ln(all / left);
+        let settling_s = math::seconds(ticks, derived.tick_s) - all * derived.slewing_s;
+        let tau_s = settling_s / math::ln(all / left);
         let growth = tau_s * derived.per_switch_tau;
         if growth > SLOW { Closed::Slow((100.0 * growth) as u16) } else { Closed::Nothing }
     }

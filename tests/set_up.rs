@@ -2,11 +2,18 @@
 
 mod script;
 
-use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup};
+use brimline::{Charge, Circuit, Converter, Flux, Noise, Policy, Setup, SoakageBranch};
 use script::{CIRCUIT, CONVERTER, NOISE, POLICY};
 
 fn refused(circuit: Circuit, converter: Converter, noise: Noise, policy: Policy) -> &'static str {
     Setup::<Charge>::try_new(circuit, converter, noise, policy).map_or_else(|e| e.parameter, |_| "accepted")
+}
+
+/// A branch in the last place, where it must not be overlooked.
+fn branch(share: f64, time_constant_s: f64) -> [SoakageBranch; 4] {
+    let mut branches = [SoakageBranch::NONE; 4];
+    branches[3] = SoakageBranch { share, time_constant_s };
+    branches
 }
 
 /// Each value goes into its field and is refused under that field's name.
@@ -40,12 +47,28 @@ fn each_parameter_is_refused_by_name() {
         circuit.source_resistance_ohm: [0.0, -1.0, 2e18, nan]
         circuit.pedestal_v: [1.1, -1.1, nan]
         circuit.pedestal_u_v: [Some(-1e-6), Some(1.1), Some(nan)]
+        circuit.leak_time_constant_s: [Some(0.0), Some(-1.0), Some(nan), Some(infinite), Some(15e-6), Some(1.71e7)]
+        circuit.leak_u_rel: [-0.1, 1.1, nan]
+        circuit.soakage: [
+            branch(-1e-9, 1.0),
+            branch(0.51, 1.0),
+            branch(nan, 1.0),
+            branch(0.01, 0.0),
+            branch(0.01, -1.0),
+            branch(0.01, 0.9e-6),
+            branch(0.01, 1.1e9),
+            branch(0.01, nan),
+        ]
+        circuit.soakage_u_rel: [-0.1, 1.1, nan]
+        circuit.slew_v_per_s: [Some(0.0), Some(-1.0), Some(1.1e12), Some(nan), Some(infinite)]
         circuit.switch_resistance_ohm: [-1.0, 2e6, nan]
         circuit.gain_u_rel: [-0.1, 1.1, nan]
         converter.code_zero_v: [2e6, nan]
         converter.lsb_v: [0.0, -1e-6, 1001.0, nan]
         converter.code_min: [i32::MIN, i32::MAX]
         converter.code_max: [-200_000, i32::MAX]
+        converter.code_zero_u_v: [-1e-9, 1.1e6, nan, infinite]
+        converter.lsb_u_rel: [-0.1, 1.1, nan]
         converter.tick_hz: [0.5, 5e9, nan]
         noise.readout_counts: [-0.1, 2e6, nan]
         noise.input_density: [-1e-15, 1.1, nan, 1e-3]
@@ -58,8 +81,47 @@ fn each_parameter_is_refused_by_name() {
         policy.latency_s: [-1.0, 4000.0, nan]
         policy.guard_sigma: [-1.0, 101.0, nan]
         policy.settling_s: [-1.0, 4000.0, nan]
+        policy.reset_attempts: [0]
         policy.arrival_tolerance_v: [Some(0.0), Some(nan), Some(2000.0)]
     }
+}
+
+/// The same with values at the ends of what is allowed.
+macro_rules! accepts {
+    ($($part:ident . $field:ident : [$($value:expr),+ $(,)?])+) => {
+        $($(
+            let mut set = (CIRCUIT, CONVERTER, NOISE, POLICY);
+            refuses!(@ set $part).$field = $value;
+            assert_eq!(refused(set.0, set.1, set.2, set.3), "accepted", "{} {:?}", stringify!($field), $value);
+        )+)+
+    };
+}
+
+#[test]
+fn the_ends_of_each_range_are_accepted() {
+    accepts! {
+        circuit.leak_time_constant_s: [None::<f64>, Some(16e-6), Some(1.69e7)]
+        circuit.leak_u_rel: [0.0, 1.0]
+        circuit.soakage: [branch(0.0, 1.0), branch(0.0, f64::NAN), branch(0.5, 1e-6), branch(0.5, 0.99e9)]
+        circuit.soakage_u_rel: [0.0, 1.0]
+        circuit.slew_v_per_s: [None::<f64>, Some(1e-6), Some(1e12)]
+        circuit.switch_resistance_ohm: [0.0, 1e6]
+        converter.code_zero_u_v: [0.0, 1.0]
+        converter.lsb_u_rel: [0.0, 1.0]
+        policy.reset_attempts: [1, 255]
+    }
+}
+
+/// An offset that a short leak turns into more drift than numbers hold is refused as the offset's.
+#[test]
+fn a_leak_so_fast_that_the_offset_is_drift_without_limit_is_refused() {
+    let circuit = Circuit { offset_limit_v: 0.5, leak_time_constant_s: Some(16e-6), ..CIRCUIT };
+    assert_eq!(refused(circuit, CONVERTER, NOISE, POLICY), "offset_limit_v");
+    let noise = Noise { readout_counts: 0.0, ..NOISE };
+    let unsure = Converter { code_zero_u_v: 0.5, ..CONVERTER };
+    let circuit = Circuit { offset_limit_v: 0.0, ..circuit };
+    assert_eq!(refused(circuit, unsure, noise, POLICY), "offset_limit_v");
+    assert_eq!(refused(circuit, CONVERTER, noise, POLICY), "accepted");
 }
 
 #[test]

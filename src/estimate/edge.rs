@@ -140,13 +140,19 @@ impl Edge {
         let distances = samples.map(|(ticks, _)| (ticks as f32 * tick_s, taken(ticks)));
         edge.add_error(left, bend_at);
         edge.charge(distances.clone(), noise, misfit);
-        if let Some(hint) = hint.filter(|_| edge.slope.is_some()) {
+        if let Some(hint) = hint.filter(|hint| edge.slope.is_some() && edge.bears_out(hint)) {
             let gain = edge.take_hint(&hint, forward);
             edge.add_error(left, [bend_at[0] * (1.0 - gain[0]), bend_at[1] - bend_at[0] * gain[1]]);
             edge.add_error(hint.own_var, gain);
             edge.charge(distances, noise, misfit);
         }
         Some(edge)
+    }
+
+    /// Whether a hint lies within 5 standard deviations of the line: one that does not is wrong.
+    fn bears_out(&self, hint: &Hint) -> bool {
+        let off = hint.level - self.level;
+        off * off <= 25.0 * (self.readout_variance(0.0) + hint.own_var + hint.shared_var)
     }
 
     /// Pulls the line toward a hint and gives the gains of level and extrapolation; the quadratic forms start afresh.

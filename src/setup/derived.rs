@@ -56,6 +56,8 @@ pub(crate) struct Derived {
     /// Ticks that the amplifier is given to follow the switch.
     pub(crate) follow_ticks: u32,
     pub(crate) min_on_time_s: f64,
+    /// Time in which the amplifier slews by a count, s.
+    pub(crate) slewing_s: f32,
     /// One over `R_on C`, 1/s; 0: not known.
     pub(crate) per_switch_tau: f32,
     /// Resets in a row that may fail.

@@ -154,6 +154,7 @@ impl Derived {
             settling_ticks: (min_on_time_s * converter.tick_hz) as u32,
             follow_ticks: (follow_s * converter.tick_hz) as u32,
             min_on_time_s,
+            slewing_s: (slewing_s / span) as f32,
             per_switch_tau: if switch_tau_s > 0.0 { (1.0 / switch_tau_s) as f32 } else { 0.0 },
             reset_attempts: policy.reset_attempts,
             pedestal,

@@ -8,12 +8,12 @@ const ONSET_SAMPLES: i8 = 3;
 const SPIKE_DEVIATIONS: f32 = 6.0;
 
 /// What a sample is, by how far it lies off.
-#[derive(Clone, Copy, Debug, PartialEq)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub(super) enum Verdict {
     Noise,
     Spike,
-    /// The last of several in a row, which began at this tick, and how far it lies off, counts.
-    Onset(u32, f32),
+    /// The last of several in a row, which began at this tick.
+    Onset(u32),
 }
 
 /// Where the next samples are expected, in integers, so that a sample costs no float.
@@ -78,10 +78,6 @@ impl Gate {
             self.since = tick;
         }
         self.astray = self.astray.saturating_add(sign);
-        if self.astray.saturating_abs() >= ONSET_SAMPLES {
-            Verdict::Onset(self.since, off_q16 as f32 * (1.0 / 65536.0))
-        } else {
-            Verdict::Spike
-        }
+        if self.astray.saturating_abs() >= ONSET_SAMPLES { Verdict::Onset(self.since) } else { Verdict::Spike }
     }
 }

@@ -102,6 +102,9 @@ pub(crate) struct Zeroing {
     gate: Gate,
     noise: NoiseSeen,
     warmth: Warmth,
+    /// Where the zero found its level, 2^-16 counts, and the variance of that, counts^2.
+    found_q16: i64,
+    found_var: f32,
     /// The drift and its variance as expected when the zero found its level, and what leak and soakage may have made of it.
     expected_rate: Option<(f32, f32, [f32; 2])>,
     /// How long the latest zero that is over had known its level, ticks.
@@ -147,6 +150,8 @@ impl Zeroing {
             gate: Gate::default(),
             noise: NoiseSeen::new(derived),
             warmth: Warmth::new(derived),
+            found_q16: 0,
+            found_var: 0.0,
             expected_rate: None,
             told_ticks: 0,
             known_ticks: 0,

@@ -41,8 +41,9 @@ impl Zeroing {
                 self.skip(ticks);
                 return Taken::Spike;
             }
-            Verdict::Onset(since, off) => {
-                let change = self.leap(off, self.pending.ticks, 1.0, derived);
+            Verdict::Onset(since) => {
+                let ticks_known = self.known_ticks.saturating_add(self.pending.ticks).saturating_add(u64::from(ticks));
+                let change = self.turn(seen.level_q16, self.noise.sample_var(), ticks_known, derived);
                 self.skip(ticks);
                 self.roll_back();
                 let contradicts_run = self.known_innovations < EARLY_INNOVATIONS;
@@ -56,13 +57,17 @@ impl Zeroing {
         Taken::Used
     }
 
-    /// What a level that lies `off` counts off after so many `ticks` makes of the rate, if the zero has hardly begun. `lag`: the
-    /// inverse of the part of the way that such a level is ahead of the mean of those before it.
-    fn leap(&self, off: f32, ticks: u64, lag: f32, derived: &Derived) -> Option<RateChange> {
-        let early = self.known_innovations < EARLY_INNOVATIONS && ticks > 0;
-        let per_s = lag / math::seconds(ticks.max(1), derived.tick_s);
-        let off_var = 2.0 * self.noise.sample_var() * per_s * per_s + self.trend.rate_variance();
-        early.then_some(RateChange { off: off * per_s, off_var, share: 1.0 })
+    /// How the rate has changed from what was expected, if the level is `level_q16` (2^-16 counts, with the variance `var`) so
+    /// many ticks after it was found; only while the zero has hardly begun.
+    fn turn(&self, level_q16: i64, var: f32, ticks: u64, derived: &Derived) -> Option<RateChange> {
+        let (rate, rate_var, _) = self.expected_rate?;
+        if self.known_innovations >= EARLY_INNOVATIONS || ticks == 0 {
+            return None;
+        }
+        let per_s = 1.0 / math::seconds(ticks, derived.tick_s);
+        let moved = level_q16.saturating_sub(self.found_q16) as f32 * (1.0 / 65536.0);
+        let off_var = (var + self.found_var) * per_s * per_s + rate_var;
+        Some(RateChange { off: moved * per_s - rate, off_var, share: 1.0 })
     }
 
     /// The zero ends or is asked about before its first block was full: what there is of it has to do.
@@ -145,8 +150,8 @@ impl Zeroing {
         if self.cusum.take(deviation, derived.onset_threshold) {
             let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
             let contradicts_run = known < EARLY_INNOVATIONS;
-            let n = f32::from(self.known_innovations);
-            let change = self.leap(innovation.residual, self.known_ticks, 2.0 * n / (n + 1.0), derived);
+            let level_q16 = whole_q16(mean.counts).saturating_add(to_q16(mean.rest));
+            let change = self.turn(level_q16, variance, self.known_ticks, derived);
             self.roll_back();
             return Taken::Onset { since, contradicts_run, change };
         }
@@ -197,6 +202,8 @@ impl Zeroing {
         self.rest(derived);
         self.warmth.whole_step(&mut self.trend);
         self.trend.restart(mean.counts, mean.rest, variance);
+        self.found_q16 = whole_q16(mean.counts).saturating_add(to_q16(mean.rest));
+        self.found_var = variance;
         self.considered.release_level();
         self.considered.skip(terms);
         self.expected_rate = Some((self.trend.rate(), self.trend.rate_variance(), self.considered.rate()));
