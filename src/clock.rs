@@ -22,10 +22,12 @@ pub(crate) struct Span {
 }
 
 impl Span {
-    /// Adds the step to another sample.
-    pub(crate) fn add(&mut self, ticks: u32) {
+    /// Adds the step to another sample. Squares matter only where the level leaks.
+    pub(crate) fn add(&mut self, ticks: u32, leaks: bool) {
         self.ticks = self.ticks.saturating_add(u64::from(ticks));
-        self.squares = self.squares.saturating_add(u64::from(ticks) * u64::from(ticks));
+        if leaks {
+            self.squares = self.squares.saturating_add(u64::from(ticks) * u64::from(ticks));
+        }
     }
 
     /// Adds a length that follows this one.

@@ -57,7 +57,7 @@ impl Droop {
 
     /// A sample in a hold.
     pub(crate) fn take(&mut self, seen: &Seen, derived: &Derived) {
-        self.pending.add(seen.ticks);
+        self.pending.add(seen.ticks, derived.leak.is_some());
         if !self.block.push(seen.level_q16, seen.ticks, derived.block_ticks, derived.fine_bits) {
             return;
         }

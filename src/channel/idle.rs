@@ -56,21 +56,25 @@ impl<Q: Integral> Channel<'_, Q> {
         let alike = squares(of_drift) + squares(of_droop) - square_distance(of_drift, of_droop);
         let u = math::sqrt_f64(drift_u * drift_u + droop_u * droop_u - f64::from(alike) * lsb_v * lsb_v);
         let apart = volts_per_second(drift.value) - volts_per_second(droop.value);
+        let gain_var = f64::from(self.setup.derived().gain_var_rel);
+        let with_gain = |u: f64, value: f64| math::sqrt_f64(u * u + gain_var * value * value);
+        let bias_u = math::sqrt_f64(droop_u * droop_u + leaking_u * leaking_u);
         Some((
             Measured::new(
                 Voltage::from_volts(apart * resistance * signed),
-                Voltage::from_volts(u * resistance * capacitance_f),
+                Voltage::from_volts(with_gain(u, apart) * resistance * capacitance_f),
             ),
             Measured::new(
                 Current::from_amperes(volts_per_second(droop.value) * signed),
-                Current::from_amperes(math::sqrt_f64(droop_u * droop_u + leaking_u * leaking_u) * capacitance_f),
+                Current::from_amperes(with_gain(bias_u, volts_per_second(droop.value)) * capacitance_f),
             ),
         ))
     }
 
     pub(super) fn drift_outside_limits(&self) -> bool {
         let (trend, derived) = (&self.zeroing.trend, self.setup.derived());
-        Health::rate_outside(trend.rate(), trend.rate_variance(), derived.rate_limit)
+        let figures = squares(self.zeroing.considered.rate());
+        Health::rate_outside(trend.rate(), trend.rate_variance() + figures, derived.rate_limit)
     }
 
     pub(super) fn droop_outside_limits(&self) -> bool {

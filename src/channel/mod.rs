@@ -74,46 +74,51 @@ impl<'s, Q: Integral> Channel<'s, Q> {
     /// A sample whose tick does not move forward is not used and makes the reading invalid; after a few of them that agree
     /// with each other the counter is taken for restarted.
     pub fn feed(&mut self, sample: Sample) -> Step {
-        let mut notices = Notices::default();
+        // Built where it is returned: a step is large to copy.
+        let mut step = Step::default();
+        step.request = self.take(sample, &mut step.notices);
+        step
+    }
+
+    fn take(&mut self, sample: Sample, notices: &mut Notices) -> Option<Mode> {
         let before = self.clock.tick();
         let (ticks, switched_tick) = match self.clock.advance(sample.tick) {
             Elapsed::Start => (0, sample.tick),
             Elapsed::Ticks(ticks) => (ticks, before),
             Elapsed::Stalled => {
-                self.fault(Reason::ClockStalled, sample.tick, &mut notices);
-                return Step { request: self.advise(sample, 0, &mut notices), notices };
+                self.fault(Reason::ClockStalled, sample.tick, notices);
+                return self.advise(sample, 0, notices);
             }
             Elapsed::Restarted => {
-                self.lose_time(sample.tick, &mut notices);
+                self.lose_time(sample.tick, notices);
                 (0, sample.tick)
             }
         };
         let was_running = self.is_running();
         let jumped = self.has_jumped(sample, ticks);
         if self.mode != Some(sample.mode) {
-            self.switch(sample.mode, switched_tick, &mut notices);
+            self.switch(sample.mode, switched_tick, notices);
         }
         if jumped {
-            self.fault(Reason::Jump, sample.tick, &mut notices);
+            self.fault(Reason::Jump, sample.tick, notices);
         }
         if ticks > self.setup.derived().gap_limit_ticks {
-            self.gap(was_running, sample.tick, &mut notices);
+            self.gap(was_running, sample.tick, notices);
         }
         self.zeroing.take_temperature(sample.temperature, self.setup.derived());
         let seen = self.level.take(sample, ticks, self.setup.derived());
         match sample.mode {
-            Mode::Zero => self.zero(sample, &seen, &mut notices),
-            Mode::Integrate => self.integrate(sample, &seen, &mut notices),
+            Mode::Zero => self.zero(sample, &seen, notices),
+            Mode::Integrate => self.integrate(sample, &seen, notices),
             Mode::Hold => self.hold(sample, &seen),
-            Mode::Reset => self.reset(&seen, &mut notices),
+            Mode::Reset => self.reset(&seen, notices),
         }
-        self.watch_opened(sample.mode, &seen, &mut notices);
+        self.watch_opened(sample.mode, &seen, notices);
         self.health.take(sample.counts);
         if sample.mode != Mode::Reset {
-            self.watch(sample, &mut notices);
+            self.watch(sample, notices);
         }
-        let request = self.advise(sample, ticks, &mut notices);
-        Step { request, notices }
+        self.advise(sample, ticks, notices)
     }
 
     /// The reading of the latest run; `None` before the first.

@@ -14,7 +14,7 @@ impl<Q: Integral> Channel<'_, Q> {
         let derived = self.setup.derived();
         self.zero_temperature = sample.temperature.or(self.zero_temperature);
         if Health::at_rail(sample.counts, derived) {
-            self.zeroing.skip(seen.ticks);
+            self.zeroing.skip(seen.ticks, derived);
             self.fault(Reason::AtRail, sample.tick, notices);
             return;
         }
@@ -41,11 +41,11 @@ impl<Q: Integral> Channel<'_, Q> {
 
     pub(super) fn integrate(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
         let derived = self.setup.derived();
-        self.zeroing.pending.add(seen.ticks);
+        self.zeroing.pending.add(seen.ticks, derived.leak.is_some());
         self.zeroing.drive(seen.ticks);
         let filled = self.window.push(seen.tick, seen.level_q16, derived);
         let Some(run) = self.run.as_mut() else { return };
-        run.driven.add(seen.ticks);
+        run.driven.add(seen.ticks, derived.leak.is_some());
         run.end_tick = seen.tick;
         run.last_q16 = seen.level_q16;
         if let (Some(now), Some(then)) = (sample.temperature, self.zero_temperature) {

@@ -5,12 +5,15 @@ use crate::setup::Derived;
 /// Whether the level could reach a rail before a reset asked for at the next sample would take effect:
 /// headroom at most `worst-case rate (sample period + latency) + z sigma`.
 ///
-/// `movement` is the worst-case rate times the sample period, counts. Without a worst-case input in the policy nothing is advised,
-/// nor at the reset level itself, where a reset changes nothing.
+/// `movement` is the worst-case rate times the sample period, counts. Without a worst-case input in the policy nothing is
+/// advised, nor at the reset level itself, where a reset changes nothing.
 pub(crate) fn due(counts: i32, movement: i64, derived: &Derived) -> bool {
-    let headroom =
-        (i64::from(counts) - i64::from(derived.usable.0)).min(i64::from(derived.usable.1) - i64::from(counts));
+    if derived.worst_rate_q16 == 0 {
+        return false;
+    }
+    // Codes are within 2^29, but what is fed may be anything.
+    let headroom = counts.saturating_sub(derived.usable.0).min(derived.usable.1.saturating_sub(counts));
     let guard = movement.saturating_add(i64::from(derived.guard_counts));
     let at_reset_level = counts >= derived.reset_window.0 && counts <= derived.reset_window.1;
-    derived.worst_rate_q16 > 0 && headroom <= guard && !at_reset_level
+    i64::from(headroom) <= guard && !at_reset_level
 }

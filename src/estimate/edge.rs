@@ -1,7 +1,10 @@
 //! The level and slope beside a switching instant, from the few samples next to it.
 
+use heapless::Vec;
+
 use super::bend::{Bend, unexplained};
 use super::line::{Line, Point};
+use crate::setup::EDGE_SAMPLES_MAX;
 
 /// On which side of its switching instant an edge lies.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
@@ -82,39 +85,112 @@ impl Weights {
     }
 }
 
+/// A bend that is left in: its variance, and what it does to the level and to the extrapolation.
+#[derive(Clone, Copy, Debug, Default)]
+struct Left {
+    var: f32,
+    at: [f32; 2],
+}
+
+/// Sums over a line's samples, of which the quadratic forms are made.
+///
+/// The run is charged with the full walk of its whole duration. A line's weights see the walk of its own window
+/// differently: of an increment between two samples the run keeps, instead of all, the square of the sum `h` of the
+/// weights of the samples nearer to the instant; `k` is the same of the weights' change with the extrapolation.
+#[derive(Clone, Copy, Debug, Default)]
+struct Sums {
+    /// Of the weights' products with each other, and with those that the line at the other end has taken.
+    pp: f32,
+    ps: f32,
+    ss: f32,
+    shared_p: f32,
+    shared_s: f32,
+    /// Of the increments' walk, and of that times products of `h` and `k`.
+    span: f32,
+    h: f32,
+    k: f32,
+    hh: f32,
+    hk: f32,
+    kk: f32,
+    /// What the weights at the other end of the segment add.
+    other: f32,
+    other_k: f32,
+    near: f32,
+    nearer: [f32; 2],
+    nearer_other: f32,
+}
+
+impl Sums {
+    /// Takes the samples in the order of growing distance.
+    fn add(&mut self, far: f32, (p, s): (f32, f32), shared: f32, level_walk: f32) {
+        if level_walk > 0.0 {
+            let walk = level_walk * (far - self.near);
+            let [h, k] = self.nearer;
+            let (walk_h, walk_k) = (walk * h, walk * k);
+            self.span += walk;
+            self.h += walk_h;
+            self.k += walk_k;
+            self.hh += walk_h * h;
+            self.hk += walk_h * k;
+            self.kk += walk_k * k;
+            self.nearer = [h + p, k + s];
+            self.near = far;
+            if self.nearer_other != 0.0 {
+                self.other += 2.0 * self.nearer_other * (walk - walk_h);
+                self.other_k += self.nearer_other * walk_k;
+            }
+        }
+        self.pp += p * p;
+        self.ps += p * s;
+        self.ss += s * s;
+        if shared != 0.0 {
+            self.shared_p += p * shared;
+            self.shared_s += s * shared;
+            self.nearer_other += shared;
+        }
+    }
+}
+
 impl Edge {
     /// Fits the samples `(ticks from the instant, counts above anchor)`, in the order of growing distance; `None` if there
     /// are none.
     ///
-    /// `hint`: what else is known of the level at the instant. `taken(ticks)`: the weight that the sample so far from the instant has already in the line at the other end of its
-    /// segment, 0 if none. Noise that both lines share is charged once and with its sign.
+    /// `hint`: what else is known of the level at the instant. `taken(ticks)`: the weight that the sample so far from the
+    /// instant has already in the line at the other end of its segment, 0 if none. Noise that both lines share is charged once and with its sign.
     pub(crate) fn fit(
         side: Side,
         anchor_q16: i64,
-        samples: impl Iterator<Item = (u32, f32)> + Clone,
+        samples: impl Iterator<Item = (u32, f32)>,
         tick_s: f32,
         noise: EdgeNoise,
         hint: Option<Hint>,
         taken: impl Fn(u32) -> f32,
     ) -> Option<Self> {
-        let (first_ticks, first) = samples.clone().next()?;
         let weight = 1.0 / noise.readout_var;
-        let points = samples.clone().map(move |(ticks, above)| Point { x: ticks as f32 * tick_s, y: above, weight });
+        let mut points: Vec<Point, EDGE_SAMPLES_MAX> = Vec::new();
+        let mut sums = Sums::default();
+        let mut shares: Vec<f32, EDGE_SAMPLES_MAX> = Vec::new();
+        for (ticks, y) in samples {
+            let _ = points.push(Point { x: ticks as f32 * tick_s, y, weight });
+            let _ = shares.push(taken(ticks));
+        }
+        let first = points.first()?;
         let forward = match side {
             Side::Before => -1.0,
             Side::After => 1.0,
         };
         let mut edge = Self {
             anchor_q16,
-            level: first,
-            reach: first_ticks as f32 * tick_s,
+            level: first.y,
+            reach: first.x,
             slope: None,
             readout: [0.0; 3],
             walk: [0.0; 3],
             weights: Weights { centre: 0.0, at_instant: [1.0, 0.0, 0.0], per_second: [0.0; 3] },
             hinted: [0.0; 2],
         };
-        let (mut left, mut bend_at) = (0.0, [0.0; 2]);
+        let points = points.iter().copied();
+        let mut left = Left::default();
         let mut misfit = 1.0;
         if let Some(line) = Line::fit(points.clone()) {
             let share = line.level_variance * weight;
@@ -127,24 +203,23 @@ impl Edge {
             let bend = Bend::of(&line, points.clone(), noise);
             let mut slope = line.slope;
             if let Some(bend) = bend {
-                let taken_off;
-                (taken_off, left) = bend.share_to_take_off(noise.bend_var);
+                let (taken_off, left_in) = bend.share_to_take_off(noise.bend_var);
                 edge.level += taken_off * bend.amount * bend.at_instant;
                 slope -= taken_off * bend.amount * bend.per_second;
                 bend.add_to(&mut edge.weights, taken_off);
-                bend_at = [bend.at_instant, bend.per_second];
+                left = Left { var: left_in, at: [bend.at_instant, bend.per_second] };
             }
             edge.slope = Some(forward * slope);
             misfit = unexplained(&line, bend, points.clone(), noise);
         }
-        let distances = samples.map(|(ticks, _)| (ticks as f32 * tick_s, taken(ticks)));
-        edge.add_error(left, bend_at);
-        edge.charge(distances.clone(), noise, misfit);
+        for (point, share) in points.zip(shares) {
+            sums.add(point.x, edge.weights.parts(point.x), share, noise.level_walk);
+        }
+        edge.charge(&sums, noise.readout_var, misfit, &left);
         if let Some(hint) = hint.filter(|hint| edge.slope.is_some() && edge.bears_out(hint)) {
-            let gain = edge.take_hint(&hint, forward);
-            edge.add_error(left, [bend_at[0] * (1.0 - gain[0]), bend_at[1] - bend_at[0] * gain[1]]);
-            edge.add_error(hint.own_var, gain);
-            edge.charge(distances, noise, misfit);
+            edge.take_hint(&hint, forward);
+            edge.charge(&sums, noise.readout_var, misfit, &left);
+            edge.add_error(hint.own_var, edge.hinted);
         }
         Some(edge)
     }
@@ -155,11 +230,11 @@ impl Edge {
         off * off <= 25.0 * (self.readout_variance(0.0) + hint.own_var + hint.shared_var)
     }
 
-    /// Pulls the line toward a hint and gives the gains of level and extrapolation; the quadratic forms start afresh.
+    /// Pulls the line toward a hint; the quadratic forms are to be worked out anew.
     ///
     /// With the line's variance `v`, the gain `(v - lever s) / (v + own + s)` makes the total's variance least, where `s` is
     /// the variance of the shared error: that adds up from hint to hint, and in the end it is better not to ask.
-    fn take_hint(&mut self, hint: &Hint, forward: f32) -> [f32; 2] {
+    fn take_hint(&mut self, hint: &Hint, forward: f32) {
         let [level_var, cross, _] = self.readout;
         let sum = level_var + hint.own_var + hint.shared_var;
         let gain = ((level_var - hint.lever * hint.shared_var) / sum).max(0.0);
@@ -172,9 +247,6 @@ impl Edge {
             *at_instant *= 1.0 - gains[0];
         }
         self.hinted = gains;
-        self.readout = [0.0; 3];
-        self.walk = [0.0; 3];
-        gains
     }
 
     /// Adds an error of variance `var` that weighs `at` in the level and in the extrapolation.
@@ -191,28 +263,24 @@ impl Edge {
         level + d * per_second
     }
 
-    /// Works out the quadratic forms from the samples' distances and the weights that are taken already.
-    ///
-    /// The run is charged with the full walk of its whole duration. A fit's weights see the walk of its own window
-    /// differently: of an increment between two samples the run keeps, instead of all, the square of the sum `h` of the
-    /// weights of the samples nearer to the instant.
-    fn charge(&mut self, samples: impl Iterator<Item = (f32, f32)>, noise: EdgeNoise, misfit: f32) {
-        let [mut h, mut k] = self.hinted;
-        let (mut other, mut near) = (0.0_f32, 0.0_f32);
-        for (far, shared) in samples {
-            let span = noise.level_walk * (far - near);
-            self.walk[0] += span * (h * h - 1.0 + 2.0 * other * (1.0 - h));
-            self.walk[1] += span * (h * k - other * k);
-            self.walk[2] += span * k * k;
-            near = far;
-            let (p, s) = self.weights.parts(far);
-            self.readout[0] += noise.readout_var * (misfit * p * p - 2.0 * p * shared);
-            self.readout[1] += noise.readout_var * (misfit * p * s - s * shared);
-            self.readout[2] += noise.readout_var * misfit * s * s;
-            h += p;
-            k += s;
-            other += shared;
-        }
+    /// Works out the quadratic forms from sums over the line as fitted, of which a hint has left `1 - gain`.
+    fn charge(&mut self, sums: &Sums, readout_var: f32, misfit: f32, left: &Left) {
+        let [g, j] = self.hinted;
+        let a = 1.0 - g;
+        let Sums { pp, ps, ss, shared_p, shared_s, .. } = *sums;
+        self.readout = [
+            readout_var * (misfit * a * a * pp - 2.0 * a * shared_p),
+            readout_var * (misfit * a * (ps - j * pp) - shared_s + j * shared_p),
+            readout_var * misfit * (ss - j * (2.0 * ps - j * pp)),
+        ];
+        let Sums { span, h, k, hh, hk, kk, other, other_k, .. } = *sums;
+        self.walk = [
+            (g * g - 1.0) * span + a * (2.0 * g * h + a * hh) + other,
+            g * j * span + g * k + j * (a - g) * h + a * (hk - j * hh) - other_k,
+            kk + j * (2.0 * (k - hk) + j * (span - 2.0 * h + hh)),
+        ];
+        let [level, per_second] = left.at;
+        self.add_error(left.var, [a * level, per_second - j * level]);
     }
 
     /// The level at the switching instant above `anchor`, counts, when the level moves by `slope`.

@@ -148,7 +148,10 @@ impl Trend {
     pub fn rest(&mut self, rate_walk: f32) {
         let walked = (self.rate_variance + rate_walk).min(RATE_VARIANCE_MAX);
         if walked > 0.0 {
-            self.coupling *= self.rate_variance / walked;
+            // The level's own variance and its covariance with the rate stay.
+            let kept = self.rate_variance / walked;
+            self.level_given_rate += self.coupling * self.coupling * self.rate_variance * (1.0 - kept);
+            self.coupling *= kept;
             self.rate_variance = walked;
         }
     }

@@ -23,8 +23,8 @@ const FLICKER_SHARE: f32 = 2.772_588_7;
 
 impl Zeroing {
     /// Time in a zero without a usable sample.
-    pub(crate) fn skip(&mut self, ticks: u32) {
-        self.pending.add(ticks);
+    pub(crate) fn skip(&mut self, ticks: u32, derived: &Derived) {
+        self.pending.add(ticks, derived.leak.is_some());
         self.block.skip(ticks);
     }
 
@@ -32,25 +32,25 @@ impl Zeroing {
     pub(crate) fn take(&mut self, seen: &Seen, stop: Option<&Stop>, derived: &Derived) -> Taken {
         let ticks = seen.ticks;
         if self.disturbed {
-            self.skip(ticks);
+            self.skip(ticks, derived);
             return Taken::Used;
         }
         match self.judge(seen, derived) {
             Verdict::Noise => {}
             Verdict::Spike => {
-                self.skip(ticks);
+                self.skip(ticks, derived);
                 return Taken::Spike;
             }
             Verdict::Onset(since) => {
                 let ticks_known = self.known_ticks.saturating_add(self.pending.ticks).saturating_add(u64::from(ticks));
                 let change = self.turn(seen.level_q16, self.noise.sample_var(), ticks_known, derived);
-                self.skip(ticks);
+                self.skip(ticks, derived);
                 self.roll_back();
                 let contradicts_run = self.known_innovations < EARLY_INNOVATIONS;
                 return Taken::Onset { since, contradicts_run, change };
             }
         }
-        self.pending.add(ticks);
+        self.pending.add(ticks, derived.leak.is_some());
         if self.block.push(seen.level_q16, ticks, derived.block_ticks, derived.fine_bits) {
             return self.finish_block(seen.tick, seen.terms, stop, derived);
         }
@@ -213,6 +213,9 @@ impl Zeroing {
     /// How far flicker makes the rate wander in the next `ticks` of a zero: it has as much variance in each octave of time, so
     /// the older the zero the less is new.
     fn flicker_walk(&self, ticks: u64, derived: &Derived) -> f32 {
+        if derived.flicker <= 0.0 {
+            return 0.0;
+        }
         let age = self.known_ticks.saturating_add(ticks).max(1);
         FLICKER_SHARE * derived.flicker * (ticks as f32 / age as f32)
     }
@@ -237,5 +240,5 @@ impl Zeroing {
 
 /// By how much `x` lies outside `-doubt` to `doubt`.
 fn beyond(x: f32, doubt: f32) -> f32 {
-    x - x.clamp(-doubt, doubt)
+    x - x.max(-doubt).min(doubt)
 }

@@ -52,7 +52,10 @@ impl Warmth {
 
     /// Time in which the baseline drifts.
     pub(super) fn drive(&mut self, ticks: u32) {
-        self.area = self.area.saturating_add(i64::from(self.risen()).saturating_mul(i64::from(ticks)));
+        let risen = self.risen();
+        if risen != 0 {
+            self.area = self.area.saturating_add(i64::from(risen).saturating_mul(i64::from(ticks)));
+        }
     }
 
     /// What the warming in a run of `driven_s` seconds has done to a baseline, and how uncertain that is.
