@@ -4,6 +4,8 @@
 // The core is total: nothing in it may panic.
 #![cfg_attr(not(test), deny(clippy::indexing_slicing, clippy::unwrap_used, clippy::expect_used,))]
 
+#[cfg(feature = "micromath")]
+pub mod approximate;
 mod channel;
 mod clock;
 mod decide;

@@ -1,0 +1,26 @@
+//! Prints a hash over the results' bits of each approximate function, which must be equal on host and targets; on a
+//! target it prints to its standard error what a call costs, beside the exact function.
+#![cfg_attr(target_os = "none", no_std, no_main)]
+
+#[cfg(target_os = "none")]
+mod cost;
+#[cfg(target_os = "none")]
+#[path = "../../cost/src/counter.rs"]
+mod counter;
+mod hash;
+
+#[cfg(not(target_os = "none"))]
+fn main() {
+    for (name, hash) in hash::all() {
+        println!("{name} {hash:016x}");
+    }
+}
+
+#[cfg(target_os = "none")]
+#[cortex_m_rt::entry]
+fn main() -> ! {
+    for (name, hash) in hash::all() {
+        semihosting::println!("{name} {hash:016x}");
+    }
+    semihosting::process::exit(i32::from(!cost::print()))
+}
