@@ -6,10 +6,10 @@ use brimline::{Channel, Flux, Mode, Sample};
 
 use crate::board::{Board, Fault, Taken};
 use crate::button::Button;
-use crate::outbox::Outbox;
 use crate::plan::{Plan, Turn};
 use crate::report;
 use crate::setup::{COIL, PER_SECOND};
+use outbox::Outbox;
 
 const PAUSE: u32 = 10 * PER_SECOND;
 

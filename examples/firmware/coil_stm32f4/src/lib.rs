@@ -5,7 +5,6 @@
 mod board;
 mod button;
 mod fluxmeter;
-mod outbox;
 mod plan;
 mod report;
 mod setup;

@@ -4,7 +4,7 @@ use core::fmt::{Display, Formatter, Result};
 
 use brimline::{Channel, Estimate, Event, Flux, Notice, Reading, Trust};
 
-use crate::outbox::Outbox;
+use outbox::Outbox;
 
 /// Says a notice.
 pub(crate) fn notice(out: &mut Outbox, notice: &Notice) {

@@ -2,7 +2,7 @@
 
 use brimline::Mode;
 
-use crate::outbox::Outbox;
+use outbox::Outbox;
 
 /// A board with its switches, its converter and its serial line.
 pub trait Board {

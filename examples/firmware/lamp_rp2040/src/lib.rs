@@ -4,7 +4,6 @@
 
 mod board;
 mod monitor;
-mod outbox;
 mod plan;
 mod report;
 mod setup;

@@ -5,10 +5,10 @@ use core::convert::Infallible;
 use brimline::{Channel, Mode, Sample};
 
 use crate::board::{Board, Fault};
-use crate::outbox::Outbox;
 use crate::plan::Plan;
 use crate::report::{self, Total};
 use crate::setup::{LAMP, PER_SECOND};
+use outbox::Outbox;
 
 const PROGRESS: u32 = 10 * PER_SECOND;
 const PAUSE: u32 = 10 * PER_SECOND;

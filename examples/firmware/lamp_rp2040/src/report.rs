@@ -4,8 +4,8 @@ use core::fmt::{Display, Formatter, Result};
 
 use brimline::{Charge, Event, Measured, Notice, RadiantExposure, Reading, Reasons, Trust};
 
-use crate::outbox::Outbox;
 use crate::setup::DETECTOR;
+use outbox::Outbox;
 
 /// Says a notice.
 pub(crate) fn notice(out: &mut Outbox, notice: &Notice) {

@@ -1,4 +1,6 @@
 //! Text on its way to the serial line. Samples never wait for it: what finds no room is dropped, and that is said.
+#![no_std]
+#![deny(clippy::indexing_slicing, clippy::unwrap_used, clippy::expect_used, clippy::panic)]
 
 use core::fmt::{Arguments, Write};
 

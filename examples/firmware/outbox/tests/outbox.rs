@@ -1,6 +1,6 @@
 //! Text without room is dropped as whole lines, and that is said.
 
-use coil_stm32f4::Outbox;
+use outbox::Outbox;
 
 #[test]
 fn lines_arrive_in_order_and_lost_ones_are_told() {
