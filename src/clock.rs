@@ -17,16 +17,18 @@ pub(crate) enum Elapsed {
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub(crate) struct Span {
     pub(crate) ticks: u64,
-    /// Sum of the squares of the steps between samples, ticks^2.
+    /// Sum of the squares of the steps between samples, in coarse ticks; 0 where nothing leaks.
     pub(crate) squares: u64,
 }
 
 impl Span {
-    /// Adds the step to another sample. Squares matter only where the level leaks.
-    pub(crate) fn add(&mut self, ticks: u32, leaks: bool) {
+    /// Adds the step to another sample. Squares matter only where the level leaks, in coarse ticks of `2^shift`, so
+    /// that they last for years whatever the counter's rate.
+    pub(crate) fn add(&mut self, ticks: u32, coarse_shift: Option<u8>) {
         self.ticks = self.ticks.saturating_add(u64::from(ticks));
-        if leaks {
-            self.squares = self.squares.saturating_add(u64::from(ticks) * u64::from(ticks));
+        if let Some(shift) = coarse_shift {
+            let coarse = (u64::from(ticks) + (1 << shift >> 1)) >> shift;
+            self.squares = self.squares.saturating_add(coarse * coarse);
         }
     }
 

@@ -20,8 +20,8 @@ pub(crate) struct Droop {
     level_known: bool,
     /// Time that holds have told of it, ticks.
     known_ticks: u64,
-    /// Leak and soakage when the present hold found its level, what an uncertainty of each has made of the level since, and
-    /// how long ago that was, ticks.
+    /// Leak and soakage when the present hold found its level, what an uncertainty of each has made of the level since,
+    /// and how long ago that was, ticks.
     start: Terms,
     doubts: [f32; 2],
     held: u64,
@@ -42,7 +42,8 @@ impl Droop {
         }
     }
 
-    /// A hold begins: the level is to be found. The bias may have changed since the last: what that told counts a quarter.
+    /// A hold begins: the level is to be found. The bias may have changed since the last: what that told counts a
+    /// quarter.
     pub(crate) fn enter(&mut self, derived: &Derived) {
         self.trend.doubt_rate((FADING * self.trend.rate_variance()).min(derived.droop_prior_var));
         self.forget_level();
@@ -57,7 +58,7 @@ impl Droop {
 
     /// A sample in a hold.
     pub(crate) fn take(&mut self, seen: &Seen, derived: &Derived) {
-        self.pending.add(seen.ticks, derived.leak.is_some());
+        self.pending.add(seen.ticks, derived.coarse_shift);
         if !self.block.push(seen.level_q16, seen.ticks, derived.block_ticks, derived.fine_bits) {
             return;
         }

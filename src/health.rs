@@ -18,11 +18,6 @@ impl Health {
         counts < derived.usable.0 || counts > derived.usable.1
     }
 
-    /// The latest reading, 2^-16 counts; 0 before the first.
-    pub(crate) fn last_q16(&self) -> i64 {
-        i64::from(self.last.unwrap_or(0)) << 16
-    }
-
     /// Takes a sample.
     pub(crate) fn take(&mut self, counts: i32) {
         self.repeats = if self.last == Some(counts) { self.repeats.saturating_add(1) } else { 1 };

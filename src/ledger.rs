@@ -46,8 +46,8 @@ impl Ledger {
     /// their noise, the input changed at an unknown instant in between: a rectangular distribution of the full width
     /// `|difference| dead`, variance `width^2 / 12` (GUM 4.3.7).
     ///
-    /// Where a slope is not known, nothing is taken for input: the level is carried over, the dead time adds its drift at
-    /// `rate`, and what the known slope would have added is the uncertainty.
+    /// Where a slope is not known, nothing is taken for input: the level is carried over, the dead time adds its drift
+    /// at `rate`, and what the known slope would have added is the uncertainty.
     pub(crate) fn bridge(&mut self, before: &Edge, after: &Edge, dead_s: f32, rate: f32, level_walk: f32) -> Bridged {
         let half = 0.5 * dead_s;
         let (slopes, bridged) = match (before.slope, after.slope) {
@@ -73,11 +73,11 @@ impl Ledger {
         self.dead_drift_q16 = self.dead_drift_q16.saturating_add(drifted);
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
         let fits = before.readout_variance(half) + after.readout_variance(half);
-        self.dead_time_var = (self.dead_time_var + fits + input).clamp(0.0, LEVEL_VARIANCE_MAX);
+        self.dead_time_var = bounded(self.dead_time_var + fits + input).max(0.0);
         self.pedestal_lever += after.hinted(half);
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
         let walk = before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
-        self.walk_var = (self.walk_var + walk).clamp(-LEVEL_VARIANCE_MAX, LEVEL_VARIANCE_MAX);
+        self.walk_var = bounded(self.walk_var + walk);
         bridged
     }
 
@@ -85,4 +85,9 @@ impl Ledger {
     pub(crate) fn total_q16(&self) -> i64 {
         self.carried_q16.saturating_add(self.interpolated_q16)
     }
+}
+
+/// Within what is known at all; what is not a number is not known.
+fn bounded(variance: f32) -> f32 {
+    if variance < LEVEL_VARIANCE_MAX { variance.max(-LEVEL_VARIANCE_MAX) } else { LEVEL_VARIANCE_MAX }
 }

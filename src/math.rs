@@ -1,8 +1,15 @@
 //! The only place where a float function is taken from: `libm` in plain Rust gives the same bits on every target.
 
-/// Square root, correctly rounded; 0 for a negative argument (a variance that rounding took below zero).
+/// Square root, correctly rounded; 0 for a negative argument (a variance that rounding took below zero), infinite for
+/// one that is not a number (of which nothing is known).
 pub(crate) fn sqrt(x: f32) -> f32 {
-    if x > 0.0 { libm::sqrtf(x) } else { 0.0 }
+    if x > 0.0 {
+        libm::sqrtf(x)
+    } else if x <= 0.0 {
+        0.0
+    } else {
+        f32::INFINITY
+    }
 }
 
 /// Square root of a number that is not negative, correctly rounded; not for the path of a sample.

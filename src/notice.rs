@@ -31,17 +31,17 @@ pub enum Event {
         /// Failures in a row.
         in_a_row: u8,
     },
-    /// With the reset switch closed the output settled slowly: with so many per cent of `switch_resistance_ohm` times the
-    /// capacitance. A switch whose resistance grows from reset to reset will fail.
+    /// With the reset switch closed the output settled slowly: with so many per cent of `switch_resistance_ohm` times
+    /// the capacitance. A switch whose resistance grows from reset to reset will fail.
     SettlingSlow {
         /// Observed over expected time constant, per cent; at least the former.
         percent: u16,
     },
-    /// The drift of a zero differs from that of the zero before by more than 5 of its uncertainties, and in the way of a level
-    /// that decays toward the reset level: a leak of reset switch or board that the set-up does not know, or one that it
-    /// has wrong. Stated at the end of a zero.
+    /// The drift of a zero differs from that of the zero before by more than 5 of its uncertainties, and in the way of
+    /// a level that decays toward the reset level: a leak of reset switch or board that the set-up does not know, or
+    /// more of one than it says. Stated at the end of a zero.
     Decay {
-        /// The time constant that would explain it, s.
+        /// The time constant of what is missing, s, rounded down: 0 is below a second.
         time_constant_s: u32,
     },
     /// A sample of a zero was too far off for noise, and was left out.
@@ -49,8 +49,8 @@ pub enum Event {
     /// Input began during a zero, at this tick at the latest found. The zero is not used from there on; what arrives is
     /// kept in the run that follows.
     InputInZero,
-    /// Single samples scatter clearly otherwise than `readout_counts` says: by more than a fifth, either way. Readings use
-    /// the observed figure. Hum counts as scatter. Stated at the end of a zero.
+    /// Single samples scatter clearly otherwise than `readout_counts` says: by more than a fifth, either way. Readings
+    /// use the observed figure. Hum counts as scatter. Stated at the end of a zero.
     ReadoutNoise {
         /// Of the set-up with rounding, hundredths of a count rms.
         stated_centicounts: u16,
@@ -63,9 +63,9 @@ pub enum Event {
         /// Observed over expected standard deviation, per cent.
         percent: u16,
     },
-    /// The drifts of successive zeros differ by so many per cent of what the set-up's walks allow, clearly more than 100: the
-    /// offset wanders more than stated, or something else moves it. Uncertainties are widened by as much. Stated at the end
-    /// of a zero.
+    /// The drifts of successive zeros differ by so many per cent of what the set-up's walks allow, clearly more than
+    /// 100: the offset wanders more than stated, or something else moves it. Uncertainties are widened by as much.
+    /// Stated at the end of a zero.
     DriftWander {
         /// Observed over expected standard deviation, per cent.
         percent: u16,
@@ -100,19 +100,21 @@ pub enum Reason {
     InputInZero = 8,
     /// The value at stop and the closed one differ by more than the closing zero can have added.
     Inconsistent = 9,
-    /// The droop of a hold lies outside what the bias current can cause by more than 4 of its uncertainties: the input or
-    /// the reset switch leaks.
+    /// The droop of a hold lies outside what the bias current can cause by more than 4 of its uncertainties: the input
+    /// or the reset switch leaks. The hold's own movement is cut out of the run, but the switch leaks in the run too.
     DroopOutsideLimits = 10,
-    /// After a reset the level stayed where the closed switch had held it, although drift, noise or pedestal should have
-    /// moved it.
+    /// After a reset the level stayed where the closed switch had held it, although drift, noise or pedestal should
+    /// have moved it.
     SwitchStuckClosed = 11,
     /// As many resets in a row as the policy allows have failed: the switch is given up until it is repaired.
     SwitchFailed = 12,
+    /// The run, with what leaked in it, came to more than 2^46 counts of movement: its books end there.
+    OutOfRange = 13,
 }
 
 impl Reason {
     /// All reasons, in the order of their bits.
-    pub const ALL: [Self; 13] = [
+    pub const ALL: [Self; 14] = [
         Self::AtRail,
         Self::Gap,
         Self::Jump,
@@ -126,6 +128,7 @@ impl Reason {
         Self::DroopOutsideLimits,
         Self::SwitchStuckClosed,
         Self::SwitchFailed,
+        Self::OutOfRange,
     ];
 
     /// A stable name for logs: lower case, words joined by `_`.
@@ -144,6 +147,7 @@ impl Reason {
             Self::DroopOutsideLimits => "droop_outside_limits",
             Self::SwitchStuckClosed => "switch_stuck_closed",
             Self::SwitchFailed => "switch_failed",
+            Self::OutOfRange => "out_of_range",
         }
     }
 
@@ -199,9 +203,10 @@ impl Reasons {
 pub enum Trust {
     /// Value and uncertainty hold.
     Good,
-    /// Input may have gone unseen: for an input that keeps one sign, the true integral is at least this large.
+    /// Input may have gone unseen: for an input that keeps one sign, the true integral is at least this large. By
+    /// `AtRail`, `Gap`, `DeadTime` and `InputInZero` alone.
     LowerBound,
-    /// The value means nothing.
+    /// The value means nothing. By any other reason.
     Invalid,
 }
 
@@ -221,7 +226,8 @@ impl Notices {
     }
 
     pub(crate) fn push(&mut self, tick: u32, event: Event) {
-        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the seventeenth cannot come.
+        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the seventeenth cannot
+        // come.
         let _ = self.0.push(Notice { tick, event });
     }
 }

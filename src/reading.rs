@@ -22,7 +22,8 @@ pub struct Budget<Q> {
     pub drift: Q,
     /// Fits beside the resets, pedestals, and interpolation of the input while the switch was closed.
     pub dead_time: Q,
-    /// Uncertain figures of leak and soakage, and the readout noise that the leak integrates.
+    /// Uncertain figures of leak and soakage, and the readout noise that the leak integrates. Runs of one board are
+    /// wrong alike by the former: do not add them as if they were independent.
     pub leak_and_soakage: Q,
     /// Relative uncertainty of the gain, times the value.
     pub scale: Q,
@@ -79,6 +80,8 @@ pub struct Reading<Q> {
     pub measured: Q,
     /// Part of the latest estimate that was interpolated over dead time, drift taken off.
     pub interpolated: Q,
+    /// What leak and soakage had taken from the run, and was put back.
+    pub restored: Q,
     /// What the drift would have added to the value at stop, and was taken off.
     pub drift_removed: Q,
     /// Samples of the zero after the run that were too far off and left out.
@@ -91,10 +94,13 @@ pub struct Reading<Q> {
     pub end_tick: u32,
     /// From start to the last integrating sample, resets and holds included, s.
     pub elapsed_s: f64,
-    /// How much warmer the board was at the last integrating sample than at the zero before, mK; `None` if not measured.
+    /// Of that the time in holds, s.
+    pub held_s: f64,
+    /// How much warmer the board was at the last integrating sample than at the zero before, mK; `None` if not
+    /// measured.
     pub warming_mk: Option<i32>,
-    /// Whether the zeros so far were enough to show noise figures of the set-up that are wrong by a factor of 3: 64 blocks
-    /// and 6 zeros that have ended. Until then `u` is as true as the figures.
+    /// Whether the zeros so far were enough to show noise figures of the set-up that are wrong by a factor of 3: 64
+    /// blocks and 6 zeros that have ended. Until then `u` is as true as the figures.
     pub noise_tested: bool,
     /// How far the reading can be trusted.
     pub trust: Trust,
@@ -119,12 +125,14 @@ impl<Q: Integral> Reading<Q> {
             closed: closed.map(|total| Estimate::new(setup, total)),
             measured: integral(latest.movement_q16.saturating_sub(interpolated_q16)),
             interpolated: integral(interpolated_q16),
+            restored: integral(run.restored_q16),
             drift_removed: integral(run.drift_q16),
             spikes: run.spikes,
             resets: run.resets,
             start_tick: run.start_tick,
             end_tick: run.end_tick,
             elapsed_s: ticks as f64 / setup.converter().tick_hz,
+            held_s: run.held as f64 / setup.converter().tick_hz,
             warming_mk: run.warming,
             noise_tested,
             trust: run.reasons.trust(),

@@ -66,6 +66,8 @@ pub(crate) struct Run {
     pub(crate) start_tick: u32,
     pub(crate) end_tick: u32,
     pub(crate) resets: u32,
+    /// Interruptions of any kind.
+    pub(crate) bridges: u32,
     pub(crate) reasons: Reasons,
     pub(crate) ledger: Ledger,
     pub(crate) crossing: Option<Crossing>,
@@ -75,6 +77,8 @@ pub(crate) struct Run {
     pub(crate) opened_tick: u32,
     /// Leak and soakage then, 2^-16 counts, and the settled reset level, where the segment began with a reset.
     pub(crate) opened_terms_q16: i64,
+    /// What leak and soakage took in the segments before, and was put back, 2^-16 counts.
+    pub(crate) restored_q16: i64,
     pub(crate) settled: Option<Settled>,
     /// The last integrating sample, 2^-16 counts.
     pub(crate) last_q16: i64,
@@ -99,8 +103,8 @@ impl Total {
         self.readout + self.input_noise + self.drift + self.dead_time + self.leak_and_soakage
     }
 
-    /// Whether a closed total differs from the one at stop by no more than 4 standard deviations: what the closing zero has
-    /// added has the variance that it has taken away, but for the last sample, which only the one at stop rests on.
+    /// Whether a closed total differs from the one at stop by no more than 4 standard deviations: what the closing zero
+    /// has added has the variance that it has taken away, but for the last sample, which only the one at stop rests on.
     /// `self` and `plain_var` are as if nothing had been widened; what was gained is, as the zeros have shown since.
     /// `considered` is the variance by which uncertain figures of leak and soakage part the two.
     pub(crate) fn agrees_with(&self, at_stop: &Self, plain_var: f32, considered: f32, shown: &Shown) -> bool {
@@ -118,12 +122,14 @@ impl Run {
             start_tick: tick,
             end_tick: tick,
             resets: 0,
+            bridges: 0,
             reasons,
             ledger: Ledger::default(),
             crossing: None,
             opening: None,
             opened_tick: tick,
             opened_terms_q16: 0,
+            restored_q16: 0,
             settled: None,
             last_q16: 0,
             driven: Span::default(),
@@ -175,8 +181,8 @@ impl Run {
 
     /// The total up to the last integrating sample, with the baseline at that time.
     ///
-    /// What rests on the zeros is widened by what they have shown of the noise. `considered` is the variance by uncertain
-    /// figures of leak and soakage.
+    /// What rests on the zeros is widened by what they have shown of the noise. `considered` is the variance by
+    /// uncertain figures of leak and soakage.
     pub(crate) fn total(&self, baseline: &Trend, considered: f32, shown: &Shown, derived: &Derived) -> Total {
         let driven_s = math::seconds(self.driven.ticks, derived.tick_s);
         let walk = derived.level_walk * driven_s;
@@ -192,7 +198,8 @@ impl Run {
         };
         Total {
             movement_q16: movement_q16(self.last_q16, baseline).saturating_add(self.ledger.total_q16()),
-            readout: (shown.sample_var * own * own + start_var - of_start).max(QUANTISATION_VAR),
+            readout: (shown.sample_var * own * own + start_var - of_start).max(QUANTISATION_VAR)
+                + 2.0 * derived.linearity_var,
             input_noise: not_negative(walk + self.ledger.walk_var),
             drift: drift + shown.rounding.1 * driven_s * driven_s,
             dead_time: self.dead_time_var(derived) - of_dead_time,
@@ -232,7 +239,7 @@ impl Run {
         let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {
             movement_q16: bracket.movement_q16().saturating_add(self.ledger.total_q16()),
-            readout,
+            readout: readout + 2.0 * derived.linearity_var,
             input_noise,
             drift: rest - readout,
             dead_time: self.dead_time_var(derived),
@@ -243,7 +250,8 @@ impl Run {
     /// Variance that resets have added.
     fn dead_time_var(&self, derived: &Derived) -> f32 {
         let (_, pedestal_var) = derived.pedestal.unwrap_or_default();
-        self.ledger.dead_time_var + pedestal_var * self.ledger.pedestal_lever * self.ledger.pedestal_lever
+        let bridges = 2.0 * derived.linearity_var * self.bridges as f32;
+        self.ledger.dead_time_var + pedestal_var * self.ledger.pedestal_lever * self.ledger.pedestal_lever + bridges
     }
 
     /// Variance that readout noise has put into what leaked during the run, as a walk of the baseline.

@@ -7,9 +7,9 @@ use crate::setup::Derived;
 
 /// How far a level may lie from where it is thought to be, standard deviations of a sample.
 const NEAR: f32 = 6.0;
-/// A level whose walk has had the chance to leave that band so many times over, and has not, is held. A Brownian path stays
-/// within `+-a` for a time `t` with the probability `4/pi e^(-pi^2 q t / 8 a^2)`: 1e-8 for `q t = 15 a^2`, and here even if
-/// the walk is a third of what the set-up says.
+/// A level whose walk has had the chance to leave that band so many times over, and has not, is held. A Brownian path
+/// stays within `+-a` for a time `t` with the probability `4/pi e^(-pi^2 q t / 8 a^2)`: 1e-8 for `q t = 15 a^2`, and
+/// here even if the walk is a third of what the set-up says.
 const WALKED_BANDS: f32 = 135.0;
 /// Samples in which a steady input that has just cancelled a pedestal has moved the level on.
 const STEADY_SAMPLES: u8 = 3;
@@ -54,8 +54,8 @@ pub(crate) struct Mover {
     pub(crate) rate_var: f32,
     /// Variance of one sample.
     pub(crate) sample_var: f32,
-    /// Whether there may be an input that just cancels the drift: then drift tells nothing, and a pedestal only if no steady
-    /// input could have hidden it.
+    /// Whether there may be an input that just cancels the drift: then drift tells nothing, and a pedestal only if no
+    /// steady input could have hidden it.
     pub(crate) input: bool,
 }
 
@@ -65,8 +65,8 @@ pub(crate) struct Verification {
     /// Level when the switch closed, 2^-16 counts, and ticks since.
     from_q16: i64,
     ticks: u64,
-    /// The first sample with the switch closed that the amplifier has had time for: level, and ticks after closing; until
-    /// the next is compared with it.
+    /// The first sample with the switch closed that the amplifier has had time for: level, and ticks after closing;
+    /// until the next is compared with it.
     first: Option<(i64, u64)>,
     compared: bool,
     /// Of the samples that should have settled: the first, the sum of all above it, their number, and the latest.
@@ -112,8 +112,8 @@ impl Verification {
         }
     }
 
-    /// Two samples that differ by more than noise tell how fast the level settles: what was left at the first is at least
-    /// what it has moved by since.
+    /// Two samples that differ by more than noise tell how fast the level settles: what was left at the first is at
+    /// least what it has moved by since.
     fn speed(&self, first_q16: i64, ticks: u64, level_q16: i64, derived: &Derived) -> Closed {
         let counts = |q16: i64| math::abs(q16 as f32 * (1.0 / 65536.0));
         let (left, all) = (counts(first_q16 - level_q16), counts(self.from_q16 - level_q16));
@@ -169,8 +169,8 @@ impl Verification {
             self.leaving = None;
             return false;
         }
-        // A leak holds the level back: by drift it moves as far in all of t as without one in at least t / (1 + t / tau), by
-        // walk in t / (1 + 2 t / tau). What the dielectric gives back moves it too.
+        // A leak holds the level back: by drift it moves as far in all of t as without one in at least t / (1 + t /
+        // tau), by walk in t / (1 + 2 t / tau). What the dielectric gives back moves it too.
         let t = math::seconds(ticks, derived.tick_s);
         let drifting = t / (1.0 + t * derived.leak_per_s);
         let walking = t / (1.0 + 2.0 * t * derived.leak_per_s);

@@ -67,7 +67,8 @@ fn coverage_recovers_from_an_understated_wander_within_a_few_zeros() {
     }
 }
 
-/// What the set-up says of the readout and what the zeros show, both in the notice; and the reading goes by what they show.
+/// What the set-up says of the readout and what the zeros show, both in the notice; and the reading goes by what they
+/// show.
 #[test]
 fn a_readout_noise_that_is_not_as_stated_is_told_with_both_figures() {
     for (noise, expected) in [(3.0, Some(301)), (1.0, None), (0.5, Some(58))] {

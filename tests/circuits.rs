@@ -1,5 +1,5 @@
-//! Circuits that a simulator which knows nothing of the crate has integrated: errors within 3 uncertainties, uncertainties
-//! within a factor of 2 of an f64 reference's, and out of bounds once a correction is switched off.
+//! Circuits that a simulator which knows nothing of the crate has integrated: errors within 3 uncertainties,
+//! uncertainties within a factor of 2 of an f64 reference's, and out of bounds once a correction is switched off.
 //!
 //! How the traces were made: `circuits/README.md`. The reference: `common/recorded.rs`.
 

@@ -184,9 +184,9 @@ fn three_long_resets_of_a_quiet_channel() {
     ResetMix { name: "3 resets, 200 ms", character, ripple: 0.0, when, ..THREE_RESETS }.check();
 }
 
-/// An input that bends the lines, by a known slew: the bend is part of `u`. The bends before and after a short reset are
-/// much alike and cancel for the most part, which is not counted on: `u` is on the safe side, by at most a fifth, as long
-/// as the window of the fits is no longer than a sixth of the ripple's period.
+/// An input that bends the lines, by a known slew: the bend is part of `u`. The bends before and after a short reset
+/// are much alike and cancel for the most part, which is not counted on: `u` is on the safe side, by at most a fifth,
+/// as long as the window of the fits is no longer than a sixth of the ripple's period.
 #[test]
 fn three_resets_under_a_ripple_of_known_slew() {
     let character = Character { walk: 0.05, ..NO_WANDER };
@@ -273,7 +273,8 @@ fn ten_resets_with_20_samples_between() {
 }
 
 /// The input ends anywhere within the dead time. Half way is the best guess, wrong by a rectangular distribution whose
-/// width is the input times the dead time: `u` is its standard deviation, `width / sqrt(12)`, and `1.96 u` covers it all.
+/// width is the input times the dead time: `u` is its standard deviation, `width / sqrt(12)`, and `1.96 u` covers it
+/// all.
 #[test]
 fn an_input_that_ends_within_a_reset() {
     let board = Board::current(true, &NO_WANDER);

@@ -1,4 +1,5 @@
-//! Figures and decisions that no other test holds to a number: each of these fails when one term of the code is left out.
+//! Figures and decisions that no other test holds to a number: each of these fails when one term of the code is left
+//! out.
 #![allow(clippy::disallowed_methods, reason = "a reference on the host computes in f64; only src must give equal bits")]
 
 mod script;

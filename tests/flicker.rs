@@ -21,8 +21,8 @@ const SETUP: Setup<Charge> = Setup::new(
     Policy::DEFAULT,
 );
 
-/// A rate with the one-sided density `FLICKER^2 / f` between about 1 mHz and 20 Hz: a relaxation for each octave, with the
-/// variance `FLICKER^2 ln 2` that an octave of such noise holds.
+/// A rate with the one-sided density `FLICKER^2 / f` between about 1 mHz and 20 Hz: a relaxation for each octave, with
+/// the variance `FLICKER^2 ln 2` that an octave of such noise holds.
 struct Flicker {
     states: [f64; 16],
 }

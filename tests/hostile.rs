@@ -1,4 +1,5 @@
-//! Any samples in any order: no panic, no NaN, no negative uncertainty, and a total that is only good when it should be.
+//! Any samples in any order: no panic, no NaN, no negative uncertainty, and a total that is only good when it should
+//! be.
 
 mod script;
 

@@ -113,9 +113,9 @@ fn sums_are_those_of_the_definition_over_several_zeros() {
     }
 }
 
-/// `E[D^2] = 2 tau^2 sigma^2(tau)` with the Allan variance as the integral of the rate's one-sided spectral density over
-/// its transfer function `2 sin^4(pi tau f) / (pi tau f)^2` (IEEE Std 1139-2008; NIST SP 1065, section 3.3): `2 q_w` for
-/// white rate noise, `K / f`, and `2 q_d / (2 pi f)^2`.
+/// `E[D^2] = 2 tau^2 sigma^2(tau)` with the Allan variance as the integral of the rate's one-sided spectral density
+/// over its transfer function `2 sin^4(pi tau f) / (pi tau f)^2` (IEEE Std 1139-2008; NIST SP 1065, section 3.3): `2
+/// q_w` for white rate noise, `K / f`, and `2 q_d / (2 pi f)^2`.
 #[test]
 fn coefficients_are_the_integrals_of_the_spectral_densities() {
     use core::f64::consts::PI;
@@ -156,8 +156,8 @@ fn slope(octaves: &[Octave]) -> (f64, f64) {
     ((xy - x * y / w) / (xx - x * x / w), 1.0 / (xx - x * x / w).sqrt())
 }
 
-/// IEEE Std 1139-2008, NIST SP 1065 table 3: white phase, white, flicker and random-walk frequency noise. The simulations
-/// share the definition of the noises with the fit; the last one shares nothing else.
+/// IEEE Std 1139-2008, NIST SP 1065 table 3: white phase, white, flicker and random-walk frequency noise. The
+/// simulations share the definition of the noises with the fit; the last one shares nothing else.
 #[test]
 fn deviations_have_the_slopes_of_the_standard() {
     const N: usize = 1 << 16;
@@ -268,8 +268,8 @@ fn uncertainties_are_those_of_a_direct_sum() {
     }
 }
 
-/// Durbin & Koopman 2012, p. 37: a local level model of the Nile, maximum likelihood 15099 and 1469.1 (verified). The fit is
-/// free to find flicker and wander as well and has but 100 values.
+/// Durbin & Koopman 2012, p. 37: a local level model of the Nile, maximum likelihood 15099 and 1469.1 (verified). The
+/// fit is free to find flicker and wander as well and has but 100 values.
 #[test]
 fn nile_agrees_with_maximum_likelihood_within_uncertainty() {
     let figures = fit(&octaves(counts(include_str!("reference/nile_local_level_filter.csv"), "volume", 1.0)), 1.0);

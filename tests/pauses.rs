@@ -10,8 +10,8 @@ fn counts(charge: Charge) -> f64 {
     charge.as_coulombs() / script::COULOMBS_PER_COUNT
 }
 
-/// The board warms by 2 K while the input is open, while the switch is closed, or from one sample of a zero to the next; the
-/// drift rises by 3 counts/s for each kelvin. The run after it is 10 K warmer and lasts 4 s.
+/// The board warms by 2 K while the input is open, while the switch is closed, or from one sample of a zero to the
+/// next; the drift rises by 3 counts/s for each kelvin. The run after it is 10 K warmer and lasts 4 s.
 #[test]
 fn a_step_of_the_temperature_tells_what_warming_does() {
     let temperature_law = TemperatureLaw::Offset { limit_v_per_k: 50e-6 };
@@ -42,7 +42,8 @@ fn a_step_of_the_temperature_tells_what_warming_does() {
     assert!(wrong.is_empty(), "{wrong:#?}");
 }
 
-/// A pause does not make the drift of the zero before it any better known: rounding that nothing dithers is in it still.
+/// A pause does not make the drift of the zero before it any better known: rounding that nothing dithers is in it
+/// still.
 #[test]
 fn the_rounding_of_a_zero_is_in_its_drift_after_a_reset_too() {
     let setup = Setup::new(CIRCUIT, CONVERTER, Noise { readout_counts: 0.1, ..NOISE }, POLICY);
@@ -71,7 +72,8 @@ fn the_rounding_of_a_zero_that_has_just_begun_does_not_count_for_the_run() {
     }
 }
 
-/// A zero's age counts for the flicker of the run after it, whether or not the switch was closed for a moment in between.
+/// A zero's age counts for the flicker of the run after it, whether or not the switch was closed for a moment in
+/// between.
 #[test]
 fn a_reset_before_a_run_does_not_make_the_zero_forgotten() {
     let setup = Setup::new(CIRCUIT, CONVERTER, Noise { input_flicker: 1e-12, ..NOISE }, POLICY);

@@ -56,8 +56,8 @@ fn drift_of_a_long_record_with_walk_stays_within_its_uncertainty() {
     }
 }
 
-/// Every variance `f32` can hold as a normal number, steps from a microsecond to three years, and samples that jump from
-/// one end of 32 bits to the other: never a NaN, an infinity or a variance below zero.
+/// Every variance `f32` can hold as a normal number, steps from a microsecond to three years, and samples that jump
+/// from one end of 32 bits to the other: never a NaN, an infinity or a variance below zero.
 #[test]
 fn extreme_input_leaves_numbers_finite_and_variances_positive() {
     const VARIANCES: [f32; 5] = [f32::MIN_POSITIVE, 1e-20, 1.0, 1e20, 1e30];

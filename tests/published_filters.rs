@@ -207,8 +207,8 @@ fn trend_of_white_samples_is_the_regression_line() {
 
 const SLOPE: f64 = 7.0 * 16.0 * ROUNDING;
 
-/// Expanding-memory line filter: `a_n = 2 (2n - 1) / (n (n + 1))`, `b_n = 6 / (n (n + 1))` (regression theory, same file,
-/// verified).
+/// Expanding-memory line filter: `a_n = 2 (2n - 1) / (n (n + 1))`, `b_n = 6 / (n (n + 1))` (regression theory, same
+/// file, verified).
 #[test]
 fn trend_gains_are_those_of_the_expanding_memory_line() {
     let mut trend = Trend::new(0, 1.0, 0.0, DIFFUSE);

@@ -127,8 +127,9 @@ fn run<'s, Q: Integral>(setup: &'s Setup<Q>, zeros: u32, moved: i32) -> Channel<
 }
 
 /// An ideal converter's rounding has the standard deviation `LSB / sqrt(12)` (IEEE Std 1241 and general textbooks;
-/// verified): without other noise it is what the readout's share of a reading consists of, once for the sample at the end
-/// and once for the zero, however many samples that has: without noise to dither them their rounding does not average.
+/// verified): without other noise it is what the readout's share of a reading consists of, once for the sample at the
+/// end and once for the zero, however many samples that has: without noise to dither them their rounding does not
+/// average.
 #[test]
 fn readout_share_of_a_noiseless_converter_is_one_lsb_over_the_root_of_twelve() {
     let handbook = Figures::of(include_str!("reference/electronics_noise_and_drift.toml"));

@@ -236,9 +236,9 @@ fn a_reading_tells_how_far_the_board_has_warmed() {
     assert_eq!(script.reading().warming_mk, Some(3_500));
 }
 
-/// Two lines of 16 samples, read out half a dead time (one sample period) beyond the switching instants, which lie on the
-/// last sample before and one period ahead of the first sample after. Variance of a line at a point: Draper & Smith,
-/// Applied Regression Analysis (from memory); see `reference/estimation_limits.toml`.
+/// Two lines of 16 samples, read out half a dead time (one sample period) beyond the switching instants, which lie on
+/// the last sample before and one period ahead of the first sample after. Variance of a line at a point: Draper &
+/// Smith, Applied Regression Analysis (from memory); see `reference/estimation_limits.toml`.
 #[test]
 fn a_reset_costs_what_the_two_lines_cost() {
     // Without blocks, the readings that lack the noise of the set-up do not show that.

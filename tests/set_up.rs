@@ -68,6 +68,7 @@ fn each_parameter_is_refused_by_name() {
         converter.code_min: [i32::MIN, i32::MAX]
         converter.code_max: [-200_000, i32::MAX]
         converter.code_zero_u_v: [-1e-9, 1.1e6, nan, infinite]
+        converter.linearity_u_counts: [-0.1, 2e4, nan]
         converter.lsb_u_rel: [-0.1, 1.1, nan]
         converter.tick_hz: [0.5, 5e9, nan]
         noise.readout_counts: [-0.1, 2e6, nan]
@@ -104,8 +105,8 @@ fn the_ends_of_each_range_are_accepted() {
         circuit.leak_u_rel: [0.0, 1.0]
         circuit.soakage: [branch(0.0, 1.0), branch(0.0, f64::NAN), branch(0.5, 1e-6), branch(0.5, 0.99e9)]
         circuit.soakage_u_rel: [0.0, 1.0]
-        circuit.slew_v_per_s: [None::<f64>, Some(1e-6), Some(1e12)]
-        circuit.switch_resistance_ohm: [0.0, 1e6]
+        circuit.slew_v_per_s: [None::<f64>, Some(10.0), Some(1e12)]
+        circuit.switch_resistance_ohm: [0.0, 7e5]
         converter.code_zero_u_v: [0.0, 1.0]
         converter.lsb_u_rel: [0.0, 1.0]
         policy.reset_attempts: [1, 255]
@@ -148,4 +149,12 @@ fn the_message_says_what_is_allowed() {
 fn rails_that_leave_no_codes_are_refused() {
     let narrow = Circuit { rail_low_v: -20e-6, rail_high_v: 20e-6, ..CIRCUIT };
     assert_eq!(refused(narrow, CONVERTER, NOISE, POLICY), "rail_high_v");
+}
+
+/// A reset that has to last longer than the longest dead time would spoil every run.
+#[test]
+fn a_reset_longer_than_the_longest_gap_is_refused() {
+    let slow = Circuit { switch_resistance_ohm: 1e6, ..CIRCUIT };
+    assert_eq!(refused(slow, CONVERTER, NOISE, POLICY), "gap_limit_s");
+    assert_eq!(refused(slow, CONVERTER, NOISE, Policy { gap_limit_s: 2.0, ..POLICY }), "accepted");
 }

@@ -83,6 +83,9 @@ pub(crate) struct RunRecord {
     pub(crate) measured: f64,
     pub(crate) interpolated: f64,
     pub(crate) drift_removed: f64,
+    pub(crate) restored: f64,
+    /// Time in holds, s.
+    pub(crate) held_s: f64,
     pub(crate) resets: u32,
     pub(crate) warming_mk: Option<i32>,
     pub(crate) noise_tested: bool,
@@ -284,6 +287,8 @@ impl<'s, Q: Amount> Replay<'s, Q> {
             measured: reading.measured.number(),
             interpolated: reading.interpolated.number(),
             drift_removed: reading.drift_removed.number(),
+            restored: reading.restored.number(),
+            held_s: reading.held_s,
             resets: reading.resets,
             warming_mk: reading.warming_mk,
             noise_tested: reading.noise_tested,

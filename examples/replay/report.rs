@@ -42,9 +42,10 @@ pub(crate) fn write(out: &mut impl Write, outcome: &Outcome, title: &str) -> io:
 fn write_run(out: &mut impl Write, run: &RunRecord, number: usize, outcome: &Outcome) -> io::Result<()> {
     let unit = outcome.unit;
     let plural = if run.resets == 1 { "" } else { "s" };
+    let held = if run.held_s > 0.0 { format!(", {:.3} s of it held", run.held_s) } else { String::new() };
     writeln!(
         out,
-        "Run {number}: {:.3} s to {:.3} s, {:.3} s long, {} reset{plural}",
+        "Run {number}: {:.3} s to {:.3} s, {:.3} s long{held}, {} reset{plural}",
         run.start_s,
         run.start_s + run.elapsed_s,
         run.elapsed_s,
@@ -70,7 +71,14 @@ fn write_run(out: &mut impl Write, run: &RunRecord, number: usize, outcome: &Out
         line(out, "measured", &like_result(run.measured))?;
         line(out, "interpolated", &format!("{}   while the reset switch was closed", like_result(run.interpolated)))?;
     }
+    if run.restored != 0.0 {
+        let text = format!("{}   put back of what had leaked or soaked away", like_result(run.restored));
+        line(out, "restored", &text)?;
+    }
     write_budget(out, run, unit)?;
+    if latest.scale <= 0.0 {
+        line(out, "gain", "taken as exact: what it is not known to is no part of U")?;
+    }
     if let Some(warming) = run.warming_mk {
         line(out, "board", &format!("{:+.2} K from the zero before to the end of the run", f64::from(warming) / 1e3))?;
     }

@@ -174,6 +174,7 @@ fn converter(c: &ConverterKeys) -> Result<Converter, Refusal> {
         code_zero_u_v: c.code_zero_u_v.unwrap_or(d.code_zero_u_v),
         lsb_u_rel: c.lsb_u_rel.unwrap_or(d.lsb_u_rel),
         linearity,
+        linearity_u_counts: c.linearity_u_counts.unwrap_or(d.linearity_u_counts),
     })
 }
 
@@ -223,6 +224,10 @@ fn syntax(error: &toml::de::Error, text: &str, name: &str) -> SetupFileError {
     let line_number = text.get(..at).map_or(1, |before| before.matches('\n').count() + 1);
     let line = text.lines().nth(line_number - 1).unwrap_or("").trim();
     let missing = message.strip_prefix("missing field ");
+    const BRANCH: [&str; 2] = ["share", "time_constant_s"];
+    if let Some(key) = missing.filter(|key| BRANCH.contains(key)) {
+        return SetupFileError(format!("{name}:{line_number}: [circuit] soakage: a branch lacks {key}."));
+    }
     if let Some(section) = missing.filter(|key| about(key).is_none()) {
         return SetupFileError(format!("{name}: missing section [{section}]: it must be given."));
     }

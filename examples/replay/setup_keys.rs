@@ -56,6 +56,7 @@ pub(crate) struct ConverterKeys {
     pub(crate) tick_hz: f64,
     pub(crate) code_zero_u_v: Option<f64>,
     pub(crate) lsb_u_rel: Option<f64>,
+    pub(crate) linearity_u_counts: Option<f64>,
     #[serde(default)]
     pub(crate) nonlinearity: Vec<(i32, f64)>,
 }
@@ -148,6 +149,11 @@ const KEYS: &[(&str, &str, &str)] = &[
         "converter",
         "nonlinearity",
         "a list of 2 to 33 points [code, error in counts] with rising codes; absent if the converter is straight enough",
+    ),
+    (
+        "converter",
+        "linearity_u_counts",
+        "the non-linearity that the table leaves, rms counts, 0 to 1e4 (default 0: not part of the uncertainty)",
     ),
     ("noise", "readout_counts", "the noise of one sample in rms counts, 0 to 1e6"),
     ("noise", "input_density", "the input's white noise, A (or V) per square root of hertz, 0 to 1"),

@@ -25,7 +25,11 @@ pub(crate) fn budget(figure: &Figure) -> Vec<Part> {
             remedy: "a shorter run, or a quieter source and amplifier",
         },
         Part { u: figure.drift, name: "drift", remedy: "longer zeros before and after the run, or a shorter run" },
-        Part { u: figure.dead_time, name: "dead time at resets", remedy: "fewer resets, or more samples beside them" },
+        Part {
+            u: figure.dead_time,
+            name: "dead time at resets",
+            remedy: "fewer resets, or faster sampling beside them",
+        },
         Part {
             u: figure.leak_and_soakage,
             name: "leak and soakage",
@@ -105,6 +109,9 @@ pub(crate) fn reason(reason: Reason) -> (&'static str, &'static str) {
             "after a reset the level stayed at the reset level although drift, noise or pedestal should have moved it",
             "check whether the reset switch opens, and its drive",
         ),
+        Reason::OutOfRange => {
+            ("the run came to more movement than its books hold", "end runs with a zero now and then")
+        }
         Reason::SwitchFailed => (
             "as many resets in a row as reset_attempts allows have failed, and the switch was given up",
             "replace the reset switch or repair its drive; what was measured since cannot be saved",

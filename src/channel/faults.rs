@@ -9,8 +9,8 @@ use crate::run::{Run, Stage};
 use crate::sample::{Mode, Sample};
 
 impl<Q: Integral> Channel<'_, Q> {
-    /// Whether the level moved since the sample before by more than the input can move it. Within a zero the spread of the
-    /// samples tells more; through a reset or hold nothing is expected.
+    /// Whether the level moved since the sample before by more than the input can move it. Within a zero the spread of
+    /// the samples tells more; through a reset or hold nothing is expected.
     pub(super) fn has_jumped(&mut self, sample: Sample, ticks: u32) -> bool {
         let watched = matches!(
             (self.mode, sample.mode),

@@ -1,4 +1,5 @@
-//! What moves the output without input: the drift of the zeros, the droop of the holds, and what both say of the amplifier.
+//! What moves the output without input: the drift of the zeros, the droop of the holds, and what both say of the
+//! amplifier.
 
 use super::Channel;
 use crate::health::Health;
@@ -17,19 +18,21 @@ impl<Q: Integral> Channel<'_, Q> {
         measured(trend.rate(), variance, lsb_v)
     }
 
-    /// The droop of the output while the input is open, and its standard uncertainty, as of the latest hold; before any,
-    /// what the data sheet allows.
+    /// The droop of the output while the input is open, and its standard uncertainty, as of the latest hold; before
+    /// any, what the data sheet allows.
     pub fn droop(&self) -> Measured<VoltageRate> {
         let lsb_v = self.setup.converter().lsb_v;
         let (rate, variance) = self.droop.rate(self.setup.derived());
         measured(rate, variance, lsb_v)
     }
 
-    /// The amplifier's offset voltage and bias current, referred to the input and with its sign, told apart by zeros and
-    /// holds: the drift of a zero is both, the droop of a hold is the bias alone. `None` before there was one of each.
+    /// The amplifier's offset voltage and bias current, referred to the input and with its sign, told apart by zeros
+    /// and holds: the drift of a zero is both, the droop of a hold is the bias alone. `None` before there was one of
+    /// each.
     ///
-    /// `bias = droop / (+-1/C)`, `offset = (drift - droop) R / (+-1/C)`, minus where the circuit inverts; `R` is the input
-    /// resistance, or that of the source at a current input. What the open input switch leaks in a hold counts as bias.
+    /// `bias = droop / (+-1/C)`, `offset = (drift - droop) R / (+-1/C)`, minus where the circuit inverts; `R` is the
+    /// input resistance, or that of the source at a current input. What the open input switch leaks in a hold counts as
+    /// bias.
     pub fn offset_and_bias(&self) -> Option<(Measured<Voltage>, Measured<Current>)> {
         if !self.droop.is_known() || self.zeroing.known_ticks() == 0 {
             return None;
@@ -53,8 +56,10 @@ impl<Q: Integral> Channel<'_, Q> {
         // Uncertain figures of leak and soakage move both alike, which their difference does not see.
         let (of_drift, of_droop) = (self.zeroing.considered.rate(), self.droop.doubts(self.setup.derived()));
         let lsb_v = self.setup.converter().lsb_v;
-        let alike = squares(of_drift) + squares(of_droop) - square_distance(of_drift, of_droop);
-        let u = math::sqrt_f64(drift_u * drift_u + droop_u * droop_u - f64::from(alike) * lsb_v * lsb_v);
+        let volts_squared = |square: f32| f64::from(square) * lsb_v * lsb_v;
+        let without = |u: f64, figures| (u * u - volts_squared(squares(figures))).max(0.0);
+        let figures = volts_squared(square_distance(of_drift, of_droop));
+        let u = math::sqrt_f64(without(drift_u, of_drift) + without(droop_u, of_droop) + figures);
         let apart = volts_per_second(drift.value) - volts_per_second(droop.value);
         let gain_var = f64::from(self.setup.derived().gain_var_rel);
         let with_gain = |u: f64, value: f64| math::sqrt_f64(u * u + gain_var * value * value);

@@ -26,7 +26,8 @@ use crate::zeroing::{Stop, Zeroing, advance, square_distance, squares};
 /// each mode at least one, in `Integrate` a few. [`reading`](Self::reading) may be asked for at any time; a run's
 /// reading is final when the zero after it ends, so take it before the first sample of the next run.
 ///
-/// Between two samples at most 2^31 - 1 ticks may pass. Totals saturate after 2^47 counts of movement.
+/// Between two samples at most 2^31 - 1 ticks may pass. A run's movement, what leaked in it included, may come to 2^46
+/// counts; past that the run has the reason `OutOfRange`.
 #[derive(Clone, Debug)]
 pub struct Channel<'s, Q> {
     setup: &'s Setup<Q>,
@@ -71,8 +72,8 @@ impl<'s, Q: Integral> Channel<'s, Q> {
 
     /// Takes one sample. Bounded work; in `Integrate` integers only, except for the lines beside a reset.
     ///
-    /// A sample whose tick does not move forward is not used and makes the reading invalid; after a few of them that agree
-    /// with each other the counter is taken for restarted.
+    /// A sample whose tick does not move forward is not used and makes the reading invalid; after a few of them that
+    /// agree with each other the counter is taken for restarted.
     pub fn feed(&mut self, sample: Sample) -> Step {
         // Built where it is returned: a step is large to copy.
         let mut step = Step::default();
@@ -134,6 +135,8 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             let mut considered = self.zeroing.considered;
             self.settle(&mut run, &mut baseline);
             if matches!(run.stage, Stage::Integrating) {
+                let terms_q16 = self.level.terms().sum_q16();
+                run.restored_q16 = run.restored_q16.saturating_add(terms_q16.saturating_sub(run.opened_terms_q16));
                 considered.advance(self.zeroing.pending.ticks, derived);
                 considered.follow(self.level.terms(), derived);
             }

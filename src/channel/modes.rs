@@ -9,6 +9,9 @@ use crate::run::Crossing;
 use crate::sample::Sample;
 use crate::zeroing::Taken;
 
+/// Past this the books of a run may saturate: 2^46 counts.
+const LEVEL_END_Q16: u64 = 1 << 62;
+
 impl<Q: Integral> Channel<'_, Q> {
     pub(super) fn zero(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
         let derived = self.setup.derived();
@@ -41,11 +44,11 @@ impl<Q: Integral> Channel<'_, Q> {
 
     pub(super) fn integrate(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
         let derived = self.setup.derived();
-        self.zeroing.pending.add(seen.ticks, derived.leak.is_some());
+        self.zeroing.pending.add(seen.ticks, derived.coarse_shift);
         self.zeroing.drive(seen.ticks);
         let filled = self.window.push(seen.tick, seen.level_q16, derived);
         let Some(run) = self.run.as_mut() else { return };
-        run.driven.add(seen.ticks, derived.leak.is_some());
+        run.driven.add(seen.ticks, derived.coarse_shift);
         run.end_tick = seen.tick;
         run.last_q16 = seen.level_q16;
         if let (Some(now), Some(then)) = (sample.temperature, self.zero_temperature) {
@@ -53,6 +56,9 @@ impl<Q: Integral> Channel<'_, Q> {
         }
         if Health::at_rail(sample.counts, derived) {
             self.fault(Reason::AtRail, sample.tick, notices);
+        }
+        if seen.level_q16.unsigned_abs() > LEVEL_END_Q16 {
+            self.fault(Reason::OutOfRange, sample.tick, notices);
         }
         if filled {
             self.settle_for_good(sample.tick, notices);

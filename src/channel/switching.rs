@@ -57,6 +57,10 @@ impl<Q: Integral> Channel<'_, Q> {
         let derived = self.setup.derived();
         self.settle_for_good(tick, notices);
         self.zeroing.catch_up(self.level.terms(), derived);
+        let terms_q16 = self.level.terms().sum_q16();
+        if let Some(run) = self.run.as_mut() {
+            run.restored_q16 = run.restored_q16.saturating_add(terms_q16.saturating_sub(run.opened_terms_q16));
+        }
         if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
             let sample_var = self.zeroing.shown(derived).sample_var;
             let before = self.window.before(tick, run.opening.as_ref(), sample_var, derived);
@@ -73,7 +77,8 @@ impl<Q: Integral> Channel<'_, Q> {
         self.zero_reasons = Reasons::default();
         match self.run.as_mut() {
             Some(run) if run.is_running() => {
-                // The drift has stepped by flicker once on the way into the run, and does so again on the way out of it.
+                // The drift has stepped by flicker once on the way into the run, and does so again on the way out of
+                // it.
                 let flicker = run.flicker(derived);
                 self.zeroing.warm_for_good(run.driven.ticks, derived);
                 self.zeroing.trend.advance(0.0, flicker);
@@ -105,6 +110,9 @@ impl<Q: Integral> Channel<'_, Q> {
         let derived = self.setup.derived();
         self.window.clear();
         let Some(run) = self.run.as_mut().filter(|run| run.is_running()) else {
+            let moved = self.level.rebase();
+            self.zeroing.trend.move_origin(moved);
+            self.zeroing.considered.skip(self.level.terms());
             let mut run = Run::new(tick, &self.zeroing.trend, self.zero_reasons);
             run.opened_terms_q16 = self.level.terms().sum_q16();
             run.settled = settled;
@@ -130,6 +138,7 @@ impl<Q: Integral> Channel<'_, Q> {
         self.zeroing.trend.rest(derived.rate_walk * math::seconds(crossing.held, derived.tick_s));
         run.driven.add_blind(crossing.dead);
         run.held = run.held.saturating_add(crossing.held);
+        run.bridges = run.bridges.saturating_add(1);
         run.stage = Stage::Integrating;
         run.opening = None;
         run.opened_tick = tick;
@@ -145,7 +154,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     fn enter_reset(&mut self, tick: u32, notices: &mut Notices) {
-        self.verification.close(self.health.last_q16());
+        self.verification.close(self.level.linear_q16());
         self.reset_advised = false;
         if let Some(run) = self.run.as_mut().filter(|run| run.is_running()) {
             if let Some(crossing) = run.crossing.as_mut() {

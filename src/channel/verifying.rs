@@ -44,7 +44,7 @@ impl<Q: Integral> Channel<'_, Q> {
         };
         if self.verification.is_held(seen, &mover, derived) {
             if mode == Mode::Zero {
-                self.zeroing.abandon();
+                self.zeroing.roll_back();
             }
             self.reset_failed(Reason::SwitchStuckClosed, seen.tick, notices);
         }
@@ -52,7 +52,7 @@ impl<Q: Integral> Channel<'_, Q> {
 
     /// States a change of the drift that a level which decays would show; `over`: whether the zero has ended.
     pub(super) fn tell_decay(&mut self, change: Option<RateChange>, over: bool, tick: u32, notices: &mut Notices) {
-        let level = self.health.last_q16();
+        let level = self.level.linear_q16();
         let risen = self.zero_level_q16.map_or(0.0, |before| (level - before) as f32 * (1.0 / 65536.0));
         if over {
             self.zero_level_q16 = Some(level);

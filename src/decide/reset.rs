@@ -5,8 +5,8 @@ use crate::setup::Derived;
 /// Whether the level could reach a rail before a reset asked for at the next sample would take effect:
 /// headroom at most `worst-case rate (sample period + latency) + z sigma`.
 ///
-/// `movement` is the worst-case rate times the sample period, counts. Without a worst-case input in the policy nothing is
-/// advised, nor at the reset level itself, where a reset changes nothing.
+/// `movement` is the worst-case rate times the sample period, counts. Without a worst-case input in the policy nothing
+/// is advised, nor at the reset level itself, where a reset changes nothing.
 pub(crate) fn due(counts: i32, movement: i64, derived: &Derived) -> bool {
     if derived.worst_rate_q16 == 0 {
         return false;

@@ -6,8 +6,8 @@ use crate::math;
 
 /// A bend that noise could hardly have made is taken off: a parabola instead of a line.
 const CORRECTED_BEND: f32 = 4.0;
-/// A bend that noise may have made is left in and charged in full. Taking it off as well would make errors of just those
-/// lines on which noise had played its tricks, and state them too small.
+/// A bend that noise may have made is left in and charged in full. Taking it off as well would make errors of just
+/// those lines on which noise had played its tricks, and state them too small.
 const CHARGED_BEND: f32 = 3.0;
 
 /// What the samples show of a curved input: the part of a parabola that no line holds,
@@ -98,8 +98,8 @@ impl Bend {
 
 /// Factor on the variances where the samples scatter about their curve by clearly more than their noise: hum, or an
 /// input that does more than curve. It is `chi^2` over its expectation, once it lies 3 standard deviations above (Birge
-/// ratio). The random walk adds `walk (n + 2)(n - 2) / (15 (n - 1))` to the expectation `n - 2`, where `walk` is what it
-/// gains over the window in readout variances.
+/// ratio). The random walk adds `walk (n + 2)(n - 2) / (15 (n - 1))` to the expectation `n - 2`, where `walk` is what
+/// it gains over the window in readout variances.
 pub(super) fn unexplained(
     line: &Line,
     bend: Option<Bend>,

@@ -15,8 +15,8 @@ pub(crate) struct Block {
     count: u16,
     /// Ticks since the block began.
     span: u64,
-    /// Sums over the samples: levels above the first in fine steps, instants since the block began in ticks and in coarse
-    /// steps, squares and product of levels and coarse instants.
+    /// Sums over the samples: levels above the first in fine steps, instants since the block began in ticks and in
+    /// coarse steps, squares and product of levels and coarse instants.
     levels: i64,
     ticks: u64,
     instants: u64,
@@ -46,11 +46,11 @@ impl Block {
         self.span = self.span.saturating_add(u64::from(ticks));
     }
 
-    /// Takes a level in 2^-16 counts, `ticks` after the one before. `true` when the block is as close to `length` ticks as
-    /// this spacing allows.
+    /// Takes a level in 2^-16 counts, `ticks` after the one before. `true` when the block is as close to `length` ticks
+    /// as this spacing allows.
     ///
-    /// Instants are summed in coarse steps of at most `length / 2^14`, levels in fine steps of `2^-fine_bits` counts, so that
-    /// products fit 64 bits and squares of instants 32.
+    /// Instants are summed in coarse steps of at most `length / 2^14`, levels in fine steps of `2^-fine_bits` counts,
+    /// so that products fit 64 bits and squares of instants 32.
     pub(crate) fn push(&mut self, level_q16: i64, ticks: u32, length: u32, fine_bits: u8) -> bool {
         if self.count == 0 {
             self.first_q16 = level_q16;

@@ -7,8 +7,8 @@ use crate::ledger::{to_q16, whole_q16};
 /// The movement of the level over a finished run, as the closing zero comes to know it.
 ///
 /// With no input, the level and the *baseline* (the level that there would have been without input) move by the same
-/// drift and the same noise: their difference, the run's movement, is a constant, the third state beside level and drift.
-/// A better drift pulls the run's baseline along, which is what bracketing a run between two zeros means.
+/// drift and the same noise: their difference, the run's movement, is a constant, the third state beside level and
+/// drift. A better drift pulls the run's baseline along, which is what bracketing a run between two zeros means.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Bracket {
     /// The movement as first known, 2^-16 counts.

@@ -2,9 +2,9 @@
 
 use super::trend::Innovation;
 
-/// A constant beside the two states of a [`Trend`](super::Trend): it needs no time update but its covariances', and a sample
-/// of the level moves it by its covariance with the level. (Fixed-point smoothing: Anderson & Moore 1979, Optimal
-/// Filtering, section 7.2, from memory.)
+/// A constant beside the two states of a [`Trend`](super::Trend): it needs no time update but its covariances', and a
+/// sample of the level moves it by its covariance with the level. (Fixed-point smoothing: Anderson & Moore 1979,
+/// Optimal Filtering, section 7.2, from memory.)
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub(crate) struct Constant {
     /// What the samples have added to its estimate.

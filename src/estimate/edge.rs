@@ -4,6 +4,7 @@ use heapless::Vec;
 
 use super::bend::{Bend, unexplained};
 use super::line::{Line, Point};
+use super::sums::Sums;
 use crate::setup::EDGE_SAMPLES_MAX;
 
 /// On which side of its switching instant an edge lies.
@@ -37,11 +38,11 @@ pub(crate) struct Hint {
     pub(crate) lever: f32,
 }
 
-/// A line through the samples beside a switching instant, described at that instant. Where the samples show plainly that
-/// the input changes, a parabola.
+/// A line through the samples beside a switching instant, described at that instant. Where the samples show plainly
+/// that the input changes, a parabola.
 ///
-/// Its quadratic forms give the variance that extrapolating it by `d` seconds away from its samples, into the dead time,
-/// adds to the run: `v[0] + 2 v[1] d + v[2] d^2`.
+/// Its quadratic forms give the variance that extrapolating it by `d` seconds away from its samples, into the dead
+/// time, adds to the run: `v[0] + 2 v[1] d + v[2] d^2`.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub(crate) struct Edge {
     /// A level near the instant, 2^-16 counts.
@@ -92,71 +93,13 @@ struct Left {
     at: [f32; 2],
 }
 
-/// Sums over a line's samples, of which the quadratic forms are made.
-///
-/// The run is charged with the full walk of its whole duration. A line's weights see the walk of its own window
-/// differently: of an increment between two samples the run keeps, instead of all, the square of the sum `h` of the
-/// weights of the samples nearer to the instant; `k` is the same of the weights' change with the extrapolation.
-#[derive(Clone, Copy, Debug, Default)]
-struct Sums {
-    /// Of the weights' products with each other, and with those that the line at the other end has taken.
-    pp: f32,
-    ps: f32,
-    ss: f32,
-    shared_p: f32,
-    shared_s: f32,
-    /// Of the increments' walk, and of that times products of `h` and `k`.
-    span: f32,
-    h: f32,
-    k: f32,
-    hh: f32,
-    hk: f32,
-    kk: f32,
-    /// What the weights at the other end of the segment add.
-    other: f32,
-    other_k: f32,
-    near: f32,
-    nearer: [f32; 2],
-    nearer_other: f32,
-}
-
-impl Sums {
-    /// Takes the samples in the order of growing distance.
-    fn add(&mut self, far: f32, (p, s): (f32, f32), shared: f32, level_walk: f32) {
-        if level_walk > 0.0 {
-            let walk = level_walk * (far - self.near);
-            let [h, k] = self.nearer;
-            let (walk_h, walk_k) = (walk * h, walk * k);
-            self.span += walk;
-            self.h += walk_h;
-            self.k += walk_k;
-            self.hh += walk_h * h;
-            self.hk += walk_h * k;
-            self.kk += walk_k * k;
-            self.nearer = [h + p, k + s];
-            self.near = far;
-            if self.nearer_other != 0.0 {
-                self.other += 2.0 * self.nearer_other * (walk - walk_h);
-                self.other_k += self.nearer_other * walk_k;
-            }
-        }
-        self.pp += p * p;
-        self.ps += p * s;
-        self.ss += s * s;
-        if shared != 0.0 {
-            self.shared_p += p * shared;
-            self.shared_s += s * shared;
-            self.nearer_other += shared;
-        }
-    }
-}
-
 impl Edge {
-    /// Fits the samples `(ticks from the instant, counts above anchor)`, in the order of growing distance; `None` if there
-    /// are none.
+    /// Fits the samples `(ticks from the instant, counts above anchor)`, in the order of growing distance; `None` if
+    /// there are none.
     ///
-    /// `hint`: what else is known of the level at the instant. `taken(ticks)`: the weight that the sample so far from the
-    /// instant has already in the line at the other end of its segment, 0 if none. Noise that both lines share is charged once and with its sign.
+    /// `hint`: what else is known of the level at the instant. `taken(ticks)`: the weight that the sample so far from
+    /// the instant has already in the line at the other end of its segment, 0 if none. Noise that both lines share is
+    /// charged once and with its sign.
     pub(crate) fn fit(
         side: Side,
         anchor_q16: i64,
@@ -232,8 +175,8 @@ impl Edge {
 
     /// Pulls the line toward a hint; the quadratic forms are to be worked out anew.
     ///
-    /// With the line's variance `v`, the gain `(v - lever s) / (v + own + s)` makes the total's variance least, where `s` is
-    /// the variance of the shared error: that adds up from hint to hint, and in the end it is better not to ask.
+    /// With the line's variance `v`, the gain `(v - lever s) / (v + own + s)` makes the total's variance least, where
+    /// `s` is the variance of the shared error: that adds up from hint to hint, and in the end it is better not to ask.
     fn take_hint(&mut self, hint: &Hint, forward: f32) {
         let [level_var, cross, _] = self.readout;
         let sum = level_var + hint.own_var + hint.shared_var;
@@ -290,7 +233,7 @@ impl Edge {
 
     /// Variance from readout noise when the line is extrapolated by `d` seconds, counts^2.
     pub(crate) fn readout_variance(&self, d: f32) -> f32 {
-        quadratic(&self.readout, d)
+        quadratic(&self.readout, d).max(0.0)
     }
 
     /// Change of the run's variance from input noise when the line is extrapolated by `d` seconds, counts^2.

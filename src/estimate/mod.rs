@@ -12,6 +12,7 @@ mod line;
 mod noise_fit;
 mod octave;
 mod onset;
+mod sums;
 mod trend;
 
 pub(crate) use block::{Block, BlockMean, fine_step};

@@ -25,8 +25,8 @@ const Z_95: f32 = 1.96;
 pub struct Figure {
     /// Best value, 0 or above.
     pub value: f32,
-    /// Standard uncertainty, given that *other* figures found to be 0 are 0; of a figure that is 0 itself, what it would
-    /// be if it were free to be negative. Infinite where the octaves do not tell it from the others.
+    /// Standard uncertainty, given that *other* figures found to be 0 are 0; of a figure that is 0 itself, what it
+    /// would be if it were free to be negative. Infinite where the octaves do not tell it from the others.
     pub u: f32,
     /// Lower end of the 95 % interval, 0 or above.
     pub low: f32,
@@ -89,9 +89,9 @@ pub struct NoiseFigures {
 }
 
 impl NoiseFigures {
-    /// Fits the figures to all octaves, weighted by their degrees of freedom, with none below 0. `sample_s` is the sample
-    /// period, s, above 0. `None` with fewer than four octaves, if all second differences were 0, or beyond the range of
-    /// `f32`.
+    /// Fits the figures to all octaves, weighted by their degrees of freedom, with none below 0. `sample_s` is the
+    /// sample period, s, above 0. `None` with fewer than four octaves, if all second differences were 0, or beyond the
+    /// range of `f32`.
     ///
     /// Uncertainties come from the covariance of the mean squares, within and between octaves (Gaussian noise). Bounded
     /// work, but tens of thousands of float operations: not for the path of a sample.
@@ -189,8 +189,8 @@ impl Row {
         self.weight = 1.0 / self.covariance(0, &self.parts, &self.parts);
     }
 
-    /// Covariance of this mean square with the one `apart` octaves above: of Gaussian noise, twice the mean of the squared
-    /// covariances of their differences. A bilinear form of what each noise adds to this mean square.
+    /// Covariance of this mean square with the one `apart` octaves above: of Gaussian noise, twice the mean of the
+    /// squared covariances of their differences. A bilinear form of what each noise adds to this mean square.
     fn covariance(&self, apart: usize, parts: &[f32; NOISES], again: &[f32; NOISES]) -> f32 {
         let mut squares = 0.0;
         for (p, a) in parts.iter().enumerate() {

@@ -2,12 +2,12 @@
 
 use crate::math;
 
-/// Sums of squared second differences `D = x(t) - 2 x(t - tau) + x(t - 2 tau)` of a level at the lags `tau` of 1, 2, 4 ...
-/// 2^(N-1) sample periods.
+/// Sums of squared second differences `D = x(t) - 2 x(t - tau) + x(t - 2 tau)` of a level at the lags `tau` of 1, 2, 4
+/// ... 2^(N-1) sample periods.
 ///
-/// Octave `k` takes every `2^k`-th sample and differences consecutive triples of those: the plain estimator of the Allan
-/// variance, `E[D^2] / (2 tau^2)` (IEEE Std 1139-2008; NIST SP 1065, section 5.2.1; the level is what these call phase).
-/// A steady drift cancels in `D`; so does any origin of the level. Samples must be equally spaced.
+/// Octave `k` takes every `2^k`-th sample and differences consecutive triples of those: the plain estimator of the
+/// Allan variance, `E[D^2] / (2 tau^2)` (IEEE Std 1139-2008; NIST SP 1065, section 5.2.1; the level is what these call
+/// phase). A steady drift cancels in `D`; so does any origin of the level. Samples must be equally spaced.
 ///
 /// All sums are integers and exact while levels lie within 2^61 counts of each other; beyond that differences saturate
 /// at the ends of `i64`, and sums at 2^128. After 2^32 - 1 differences an octave takes no more. Octaves past the 32nd
@@ -125,10 +125,10 @@ impl Octave {
     /// Effective degrees of freedom of [`mean_square`](Self::mean_square), whose relative standard uncertainty is
     /// `sqrt(2 / dof)`: the fewest that it can have whatever the noise is made of, at least 1.
     ///
-    /// Consecutive triples share samples, so their second differences correlate by `rho_m` over `m` lags, and `n` of them
-    /// are worth `n / (1 + 2 sum (1 - m/n) rho_m^2)`. White readout noise has the strongest correlations, -2/3 and 1/6:
-    /// 1.94 differences make a degree of freedom (white input noise: 1.50, flicker: 1.13, wander of the drift: 1.13).
-    /// Here all terms have the factor `1 - 1/n`.
+    /// Consecutive triples share samples, so their second differences correlate by `rho_m` over `m` lags, and `n` of
+    /// them are worth `n / (1 + 2 sum (1 - m/n) rho_m^2)`. White readout noise has the strongest correlations, -2/3 and
+    /// 1/6: 1.94 differences make a degree of freedom (white input noise: 1.50, flicker: 1.13, wander of the drift:
+    /// 1.13). Here all terms have the factor `1 - 1/n`.
     pub fn dof(&self) -> f32 {
         let n = self.count as f32;
         n / (1.0 + (overlap(0, 0, 0) - 1.0) * (1.0 - 1.0 / n))
@@ -146,15 +146,15 @@ impl Octave {
     }
 }
 
-/// Noises told apart: readout, random walk of the level, flicker and random walk of its rate. Noise `p` adds to `E[D^2]` in
-/// proportion to `tau^p`.
+/// Noises told apart: readout, random walk of the level, flicker and random walk of its rate. Noise `p` adds to
+/// `E[D^2]` in proportion to `tau^p`.
 pub(super) const NOISES: usize = 4;
 
 /// Octaves apart up to which overlaps count: all that are further apart change no uncertainty by 1 %.
 const APART: usize = 6;
 
-/// `sum rho_p rho_q` over all second differences of an octave, where `rho` are their covariances with one second difference
-/// `apart` octaves above, for two of the noises, relative to the variance of the former.
+/// `sum rho_p rho_q` over all second differences of an octave, where `rho` are their covariances with one second
+/// difference `apart` octaves above, for two of the noises, relative to the variance of the former.
 pub(super) fn overlap(apart: usize, p: usize, q: usize) -> f32 {
     OVERLAPS.get(apart).and_then(|table| table.get(p)).and_then(|row| row.get(q)).copied().unwrap_or(0.0)
 }
@@ -191,8 +191,8 @@ const fn overlaps() -> [[[f32; NOISES]; NOISES]; APART + 1] {
     overlaps
 }
 
-/// Covariance, for each noise, of a second difference of lag 1 with one of lag `long` that starts `shift` later, relative to
-/// the variance of the former.
+/// Covariance, for each noise, of a second difference of lag 1 with one of lag `long` that starts `shift` later,
+/// relative to the variance of the former.
 ///
 /// Second differences see a noise through its generalised covariance `g(h)`: 1 at 0, `-|h| / 2`, `h^2 ln|h| / 2` and
 /// `|h|^3 / 12`, whose fourth difference `6 g(0) - 8 g(1) + 2 g(2)` is the variance at lag 1.

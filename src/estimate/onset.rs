@@ -1,7 +1,7 @@
 //! Input that begins while there should be none.
 
-/// Two-sided cumulative sums of normalised innovations (Page 1954, Biometrika 41; from memory), with a reference value of
-/// half a standard deviation: the test for a shift of one.
+/// Two-sided cumulative sums of normalised innovations (Page 1954, Biometrika 41; from memory), with a reference value
+/// of half a standard deviation: the test for a shift of one.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Cusum {
     up: f32,

@@ -23,15 +23,13 @@ impl Walk {
         let half = rate * dt_s * 0.5;
         Self { level: level_walk * dt_s + half * dt_s * (2.0 / 3.0), cross: half, rate }
     }
-}
 
-impl Walk {
-    /// A step of the rate by flicker noise, `flicker` in (counts/s)^2, between a zero of `zero_s` seconds and a run of `run_s`
-    /// seconds, and what it did to the level over the run.
+    /// A step of the rate by flicker noise, `flicker` in (counts/s)^2, between a zero of `zero_s` seconds and a run of
+    /// `run_s` seconds, and what it did to the level over the run.
     ///
-    /// The mean rates over the two differ with the variance `K (1 + p)/p [(1 + p) ln(1 + p) - p ln p]`, `p = run / zero`:
-    /// for equal lengths `4 ln2 K`, twice the Allan variance of flicker frequency noise (IEEE Std 1139-2008). It grows
-    /// only as the logarithm of `p`, so the error of the run grows as its length.
+    /// The mean rates over the two differ with the variance `K (1 + p)/p [(1 + p) ln(1 + p) - p ln p]`, `p = run /
+    /// zero`: for equal lengths `4 ln2 K`, twice the Allan variance of flicker frequency noise (IEEE Std 1139-2008). It
+    /// grows only as the logarithm of `p`, so the error of the run grows as its length.
     pub fn of_flicker(flicker: f32, zero_s: f32, run_s: f32) -> Self {
         if flicker <= 0.0 || run_s <= 0.0 {
             return Self::default();
@@ -60,16 +58,16 @@ pub struct Innovation {
 /// Residuals this far from the anchor move the anchor by whole counts: `f32` resolves 2^-14 count there.
 const ANCHOR_REACH: f32 = 1024.0;
 
-/// Rates and variances end here: 10^10 counts/s, 10^15 counts. Past them nothing is known, and their products stay within
-/// `f32`.
+/// Rates and variances end here: 10^10 counts/s, 10^15 counts. Past them nothing is known, and their products stay
+/// within `f32`.
 const RATE_MAX: f32 = 1e10;
 pub(crate) const LEVEL_VARIANCE_MAX: f32 = 1e30;
 const RATE_VARIANCE_MAX: f32 = 1e20;
 
 /// A level in counts and its rate in counts per second, with their covariance.
 ///
-/// The level is an integer anchor plus a small `f32` residual, so that a 24-bit level loses nothing, nor a baseline that
-/// has drifted for a year. The covariance is
+/// The level is an integer anchor plus a small `f32` residual, so that a 24-bit level loses nothing, nor a baseline
+/// that has drifted for a year. The covariance is
 /// kept as the factors of `U D U^T` with `U = [1, s; 0, 1]`: the variance of the level *if the rate were known*, the
 /// coupling `s` and the variance of the rate. Every step multiplies, divides and adds positive numbers only, so the
 /// matrix cannot lose positive definiteness. Method: Bierman 1977, Factorization Methods for Discrete Sequential
@@ -123,15 +121,20 @@ impl Trend {
         self.rate_variance = (self.rate_variance + walk.rate).min(RATE_VARIANCE_MAX);
     }
 
+    /// Moves the origin of the levels by whole counts; no estimate changes.
+    pub(crate) fn move_origin(&mut self, counts: i64) {
+        self.anchor = self.anchor.saturating_sub(counts);
+    }
+
     /// Moves level and rate by what is known to have happened; the covariance stays.
     pub fn shift(&mut self, level: f32, rate: f32) {
         self.level += level;
-        self.rate += rate;
+        self.rate = (self.rate + rate).clamp(-RATE_MAX, RATE_MAX);
         self.recentre();
     }
 
-    /// Adds to the covariance what something with which level and rate are correlated did to them. The sum must be positive
-    /// definite but for rounding.
+    /// Adds to the covariance what something with which level and rate are correlated did to them. The sum must be
+    /// positive definite but for rounding.
     pub(crate) fn absorb(&mut self, added: Walk) {
         let level = (self.level_variance() + added.level).max(0.0);
         let cross = self.covariance() + added.cross;
@@ -163,8 +166,8 @@ impl Trend {
 
     /// Takes a sample of the level with `variance` (counts^2, above 0).
     ///
-    /// A sample that is not far off becomes the new anchor, so that the residual stays as small as the noise: `f32` then
-    /// loses nothing of a slow drift, however far the level has gone.
+    /// A sample that is not far off becomes the new anchor, so that the residual stays as small as the noise: `f32`
+    /// then loses nothing of a slow drift, however far the level has gone.
     ///
     /// The sample is `counts + rest`: a mean of several is not whole.
     pub fn update(&mut self, counts: i64, rest: f32, variance: f32) -> Innovation {

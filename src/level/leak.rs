@@ -40,9 +40,9 @@ impl LeakLaw {
 
 /// The area under the level so far: exact, whatever the steps.
 ///
-/// Between two samples the level bends by what leaks: with a steady input, a step of `a` time constants from `l0` to `l1`
-/// has leaked `a (l0 + l1) / 2 + (a / (1 - e^-a) - 1 - a / 2) (l1 - l0)`, a trapezoid and a bend. What is left is the
-/// input's own change: `h^2 / (12 tau)` times the change of the input's slope of the level, for samples `h` apart.
+/// Between two samples the level bends by what leaks: with a steady input, a step of `a` time constants from `l0` to
+/// `l1` has leaked `a (l0 + l1) / 2 + (a / (1 - e^-a) - 1 - a / 2) (l1 - l0)`, a trapezoid and a bend. What is left is
+/// the input's own change: `h^2 / (12 tau)` times the change of the input's slope of the level, for samples `h` apart.
 #[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
 pub(super) struct Leak {
     area: i64,
@@ -70,6 +70,11 @@ impl Leak {
             self.pages = self.pages.saturating_add(self.area.checked_div(law.page).unwrap_or(0));
             self.area = self.area.checked_rem(law.page).unwrap_or(0);
         }
+    }
+
+    /// Forgets whole pages and gives them, counts.
+    pub(super) fn rebase(&mut self) -> i64 {
+        core::mem::take(&mut self.pages).saturating_mul(1 << 15)
     }
 
     /// What has leaked, 2^-16 counts: to 2^-14 count of the area.

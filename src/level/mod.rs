@@ -24,9 +24,7 @@ impl Terms {
     pub(crate) fn sum_q16(self) -> i64 {
         self.leaked_q16.saturating_add(self.soaked_q16)
     }
-}
 
-impl Terms {
     /// What one standard uncertainty of leak and of soakage has made of the level since `start`, counts.
     pub(crate) fn doubts_since(self, start: Self, derived: &Derived) -> [f32; 2] {
         let [leak_u_rel, soakage_u_rel] = derived.terms_u_rel;
@@ -64,6 +62,7 @@ pub(crate) struct Level {
     leak: Leak,
     soakage: Soakage,
     terms: Terms,
+    linear_q16: i64,
 }
 
 impl Level {
@@ -78,6 +77,7 @@ impl Level {
             let above = if closed { 0 } else { derived.above_reset(linear_q16) };
             self.pass(above, ticks, closed, derived);
         }
+        self.linear_q16 = linear_q16;
         let level_q16 = linear_q16.saturating_add(self.terms.sum_q16());
         Seen { tick: sample.tick, ticks, level_q16, terms: self.terms }
     }
@@ -100,6 +100,19 @@ impl Level {
             self.soakage.take(from, above, ticks, law);
             self.terms.soaked_q16 = self.soakage.q16(law);
         }
+    }
+
+    /// Puts the zero of what has leaked near the present, and gives by how much, counts: only differences of the
+    /// effective level count, and what leaked in months must not use up its range.
+    pub(crate) fn rebase(&mut self) -> i64 {
+        let moved = self.leak.rebase();
+        self.terms.leaked_q16 = self.terms.leaked_q16.saturating_sub(moved.saturating_mul(1 << 16));
+        moved
+    }
+
+    /// The latest level as a straight converter would have seen it, 2^-16 counts; 0 before the first sample.
+    pub(crate) fn linear_q16(&self) -> i64 {
+        self.linear_q16
     }
 
     /// Leak and soakage as of the latest sample.

@@ -31,16 +31,18 @@ pub struct Circuit {
     /// A voltage input uses its input resistance instead.
     pub source_resistance_ohm: f64,
     /// Time constant of a leak across the capacitor, s: a feedback resistor times the capacitance, or the insulation's;
-    /// `None`: no leak to speak of. What leaks is put back, so that a run may last many time constants. The limit: a
-    /// drift of the converter's own offset counts as input, as much as `offset / tau` of the drift of the output.
+    /// `None`: no leak to speak of. 16 to 1.7e13 ticks of the counter. What leaks is put back, so that a run may last
+    /// many time constants. The limit: if the converter's offset has moved by `e` volts since the zero, the output
+    /// seems to move by `e / tau` V/s more, which counts as input.
     pub leak_time_constant_s: Option<f64>,
     /// Relative standard uncertainty of `leak_time_constant_s`: 0 to 1.
     pub leak_u_rel: f64,
     /// The dielectric's branches; those that are not there are [`SoakageBranch::NONE`].
     pub soakage: [SoakageBranch; SOAKAGE_BRANCHES],
-    /// Relative standard uncertainty of what the branches make of the level, shares and time constants together: 0 to 1.
+    /// Relative standard uncertainty of what the branches make of the level, shares and time constants together: 0 to
+    /// 1.
     pub soakage_u_rel: f64,
-    /// Step of the output when the reset switch opens (charge injection), V: within +-1.
+    /// Step of the output when the reset switch opens (charge injection), V, positive upward: within +-1.
     pub pedestal_v: f64,
     /// Standard uncertainty of the pedestal, V: 0 to 1; `None`: not known. Where it is known, the level just after a
     /// reset is known from the closed switch as well as from the samples that follow; and five times it is allowed when
@@ -48,7 +50,7 @@ pub struct Circuit {
     pub pedestal_u_v: Option<f64>,
     /// On-resistance of the reset switch, ohm: 0 to 1e6.
     pub switch_resistance_ohm: f64,
-    /// Slew rate of the output while the switch is closed, V/s: above 0; `None`: fast enough.
+    /// Slew rate of the output while the switch is closed, V/s: above 0 and at most 1e12; `None`: fast enough.
     pub slew_v_per_s: Option<f64>,
     /// How the drift follows the board's temperature. Only used where samples carry a temperature.
     pub temperature_law: TemperatureLaw,
@@ -58,8 +60,8 @@ pub struct Circuit {
 
 impl Circuit {
     /// A 100 nF inverting integrator with a current input between +-10 V rails, with an op amp of 1 mV and 100 pA
-    /// limits behind a source of 1 Gohm, a switch of 100 ohm of which no more is known, a capacitor that neither leaks nor
-    /// soaks, and a gain taken as exact.
+    /// limits behind a source of 1 Gohm, a switch of 100 ohm of which no more is known, a capacitor that neither leaks
+    /// nor soaks, and a gain taken as exact.
     pub const DEFAULT: Self = Self {
         capacitance_f: 100e-9,
         input_resistance_ohm: None,
@@ -98,9 +100,15 @@ impl Circuit {
     }
 
     /// How long the reset switch has to stay closed until a level that was `swing_v` away is within `residual_v` of the
-    /// reset level, s: `swing / slew + R_on C ln(swing / residual)`; 0 if it is already.
+    /// reset level, s: `swing / slew + R_on C ln(swing / residual)`, at most 0.1 % too long; 0 if it is already,
+    /// infinite for a residual of 0. The swing may have either sign.
     pub const fn settling_time_s(&self, swing_v: f64, residual_v: f64) -> f64 {
-        if !(swing_v > residual_v && residual_v > 0.0) {
+        let swing_v = if swing_v < 0.0 { -swing_v } else { swing_v };
+        let reachable = residual_v > 0.0;
+        if !reachable {
+            return f64::INFINITY;
+        }
+        if swing_v <= residual_v {
             return 0.0;
         }
         let slewing = match self.slew_v_per_s {

@@ -17,13 +17,16 @@ pub struct Converter {
     pub code_max: i32,
     /// Rate of the free-running 32-bit counter that stamps samples, Hz: 1 to 4e9.
     pub tick_hz: f64,
-    /// Standard uncertainty of `code_zero_v`, V: 0 to 1e6. It moves all levels alike and leaves totals alone; five times
-    /// it is allowed when a reset is verified.
+    /// Standard uncertainty of `code_zero_v`, V: 0 to 1e6. It moves all levels alike and leaves totals alone; five
+    /// times it is allowed when a reset is verified.
     pub code_zero_u_v: f64,
     /// Relative standard uncertainty of `lsb_v`: 0 to 1.
     pub lsb_u_rel: f64,
-    /// Integral non-linearity; `None`: straight enough.
+    /// Integral non-linearity; `None`: no table.
     pub linearity: Option<&'static Linearity>,
+    /// What non-linearity the table leaves, or all of it without one, rms counts: 0 to 1e4. It counts once for each
+    /// level between which a run is measured: two, and two more for each reset or hold.
+    pub linearity_u_counts: f64,
 }
 
 impl Converter {
@@ -37,6 +40,7 @@ impl Converter {
         code_zero_u_v: 0.0,
         lsb_u_rel: 0.0,
         linearity: None,
+        linearity_u_counts: 0.0,
     };
 
     /// Output voltage at `code`, V.
@@ -56,6 +60,7 @@ impl Converter {
         check!(self.code_min >= -SPAN && self.code_min <= SPAN, "code_min", "within -2^29 and 2^29");
         check!(self.code_max > self.code_min && self.code_max <= SPAN, "code_max", "above code_min and at most 2^29");
         check!(self.code_zero_u_v >= 0.0 && self.code_zero_u_v <= 1e6, "code_zero_u_v", "0 to 1e6 (volt)");
+        check!(self.linearity_u_counts >= 0.0 && self.linearity_u_counts <= 1e4, "linearity_u_counts", "0 to 1e4");
         check!(self.lsb_u_rel >= 0.0 && self.lsb_u_rel <= 1.0, "lsb_u_rel", "0 to 1");
         check!(self.tick_hz >= 1.0 && self.tick_hz <= 4e9, "tick_hz", "1 to 4e9 (hertz)");
         Ok(())

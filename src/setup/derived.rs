@@ -97,10 +97,15 @@ pub(crate) struct Derived {
     pub(crate) soakage: Option<SoakageLaw>,
     /// One over the leak's time constant, 1/s; 0: no leak.
     pub(crate) leak_per_s: f32,
-    /// Variance that the readout noise of one sample adds to the effective level through the leak, counts^2 per squared tick.
+    /// Coarse ticks, in which steps are squared: 2^18 to 2^19 a second or the counter's own; `None` without a leak.
+    pub(crate) coarse_shift: Option<u8>,
+    /// Variance that the readout noise of one sample adds to the effective level through the leak, counts^2 per squared
+    /// coarse tick.
     pub(crate) leak_walk: f32,
     /// Relative standard uncertainties of what leaks and of what soaks.
     pub(crate) terms_u_rel: [f32; 2],
+    /// Variance that the converter's remaining non-linearity gives to the level at each end of a segment, counts^2.
+    pub(crate) linearity_var: f32,
     /// Relative variance of the gain.
     pub(crate) gain_var_rel: f32,
     /// Droop that the data sheet allows, counts/s, and its variance, rectangular.
@@ -111,19 +116,20 @@ pub(crate) struct Derived {
 impl Derived {
     /// Variance of the mean of `samples` samples, counts^2: rounding that nothing dithers does not average.
     ///
-    /// Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside what
-    /// the walk does to a run longer than the block.
+    /// Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
+    /// what the walk does to a run longer than the block.
     pub(crate) fn block_var(&self, samples: u16) -> f32 {
         if self.dithered { self.readout_var / f32::from(samples) } else { self.readout_var }
     }
 
-    /// What the variance of one of many blocks in a row is worth: rounding that nothing dithers keeps its sign over them.
+    /// What the variance of one of many blocks in a row is worth: rounding that nothing dithers keeps its sign over
+    /// them.
     pub(crate) fn serial_var(&self, block_var: f32) -> f32 {
         if self.dithered { block_var } else { 4.0 * block_var }
     }
 
-    /// Added to the variance of a rate that `ticks` of samples have told, for rounding that nothing dithers, (counts/s)^2:
-    /// of the levels at both ends, and of the level that leaks.
+    /// Added to the variance of a rate that `ticks` of samples have told, for rounding that nothing dithers,
+    /// (counts/s)^2: of the levels at both ends, and of the level that leaks.
     pub(crate) fn rate_rounding_var(&self, ticks: u64) -> f32 {
         if self.dithered || ticks == 0 {
             return 0.0;
@@ -153,8 +159,8 @@ impl Derived {
 
     /// Whole counts of a level above the reset level.
     pub(crate) fn above_reset(&self, linear_q16: i64) -> i32 {
-        // Codes and reset level are within 2^29 and the table's errors within 2^14.
-        ((linear_q16 - self.reset_q16 + 0x8000) >> 16) as i32
+        // What is fed may be any code: beyond the converter's range the level ends, so that areas stay within 2^62.
+        ((linear_q16 - self.reset_q16 + 0x8000) >> 16).clamp(-(1 << 30), 1 << 30) as i32
     }
 
     /// Largest movement of the level in `ticks` at the worst-case input, counts, rounded up; 0 if that is not known.

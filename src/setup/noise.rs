@@ -15,8 +15,8 @@ pub struct Noise {
     /// Random walk of the input-referred offset, input units per sqrt(s): 0 or more. Integrated over T seconds it
     /// gives a variance of `wander^2 T^3 / 3`.
     pub offset_wander: f64,
-    /// Flicker (1/f) noise of the input: one-sided density at 1 Hz, input units per sqrt(Hz), 0 or more. Its square over the
-    /// frequency is the density. It makes the error of a run grow with its length, whatever the zero.
+    /// Flicker (1/f) noise of the input: one-sided density at 1 Hz, input units per sqrt(Hz), 0 or more. Its square
+    /// over the frequency is the density. It makes the error of a run grow with its length, whatever the zero.
     pub input_flicker: f64,
 }
 

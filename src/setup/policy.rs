@@ -17,15 +17,15 @@ pub struct Policy {
     /// Samples in the straight-line fits before and after a reset: 2 to 16. Fewer follow a fast input better, more
     /// average better.
     pub edge_samples: u8,
-    /// Longest time between samples, and longest time with the reset switch closed, that leaves a run whole, s: above 0,
-    /// and below half the counter's span.
+    /// Longest time between samples, and longest time with the reset switch closed, that leaves a run whole, s: above
+    /// 0, and below half the counter's span.
     pub gap_limit_s: f64,
     /// Equal readings in a row that mean a dead converter: 0 (never) to 65535. Only watched where `readout_counts` is
     /// at least 0.5: a quieter channel may rightly repeat itself.
     pub frozen_samples: u16,
     /// Largest magnitude of the input that the design allows, input units; `None`: unknown. With it the crate advises
-    /// resets and notices a level that jumped; without it only a jump by a quarter of the usable span is noticed. A design
-    /// constant, never an estimate.
+    /// resets and notices a level that jumped; without it only a jump by a quarter of the usable span is noticed. A
+    /// design constant, never an estimate.
     pub worst_input: Option<f64>,
     /// Fastest change of the input that the design expects, input units/s; `None`: unknown. It tells how far the input
     /// may bend beside a reset. Without it only a bend that stands out of the noise is seen, and one that just does not
@@ -36,11 +36,12 @@ pub struct Policy {
     pub latency_s: f64,
     /// How many standard deviations of the readout the reset advice keeps from the rail: 0 to 100.
     pub guard_sigma: f64,
-    /// Time the amplifier needs to follow the closed switch besides slewing, s: 0 to 3600. For how long the switch has to
-    /// stay closed see [`Setup::min_on_time_s`](crate::Setup::min_on_time_s).
+    /// Time the amplifier needs to follow the closed switch besides slewing, s: 0 to 3600. For how long the switch has
+    /// to stay closed see [`Setup::min_on_time_s`](crate::Setup::min_on_time_s).
     pub settling_s: f64,
-    /// Resets in a row that may fail before the switch is given up: 1 to 255. Until then another is asked for; from then on
-    /// none, and no reading is good before [`Channel::switch_repaired`](crate::Channel::switch_repaired).
+    /// Resets in a row that may fail before the switch is given up: 1 to 255. Until then another is asked for; from
+    /// then on none, and every run that starts or goes on has the reason `SwitchFailed` until
+    /// [`Channel::switch_repaired`](crate::Channel::switch_repaired).
     pub reset_attempts: u8,
     /// How far from the reset level a reset may arrive, V: above 0; `None`: one hundredth of the usable span.
     pub arrival_tolerance_v: Option<f64>,
@@ -48,7 +49,8 @@ pub struct Policy {
 
 impl Policy {
     /// Blocks of 0.1 s, a false alarm in four months of zeros, fits of 16 samples, gaps and resets up to 1 s, 64 equal
-    /// readings mean frozen, no worst-case input or slew known, 4 sigma of guard, 1 ms of settling, 3 attempts at a reset.
+    /// readings mean frozen, no worst-case input or slew known, 4 sigma of guard, 1 ms of settling, 3 attempts at a
+    /// reset.
     pub const DEFAULT: Self = Self {
         zero_block_s: 0.1,
         false_alarm_s: 1e7,

@@ -12,7 +12,7 @@ pub(crate) const SOAKAGE_BRANCHES: usize = 4;
 pub struct SoakageBranch {
     /// The branch's capacitance over the main one: 0 (no branch) to 0.5.
     pub share: f64,
-    /// The branch's resistance times its capacitance, s: above 0.
+    /// The branch's resistance times its capacitance, s: above 0, 1 to 1e15 ticks of the counter.
     pub time_constant_s: f64,
 }
 
@@ -42,13 +42,14 @@ pub struct Absorption {
 }
 
 impl Absorption {
-    /// How fast the output creeps `after_s` seconds after a reset from `step_v`, V/s: `V0 D / (2.303 t)`. Saturates to
-    /// infinity at 0 s.
+    /// How fast the output creeps `after_s` seconds after a reset from `step_v`, V/s, toward the voltage before the
+    /// reset: `V0 D / (2.303 t)`. Infinite at 0 s.
     pub const fn rate_v_per_s(&self, step_v: f64, after_s: f64) -> f64 {
         step_v * self.per_decade / (core::f64::consts::LN_10 * after_s)
     }
 
-    /// How long to wait after a reset from `step_v` until the output creeps by no more than `rate_v_per_s`, s.
+    /// How long to wait after a reset from `step_v` until the output creeps by no more than `rate_v_per_s`, s; signs do
+    /// not matter. Infinite for a rate of 0.
     pub const fn wait_s(&self, step_v: f64, rate_v_per_s: f64) -> f64 {
         let wait = step_v * self.per_decade / (core::f64::consts::LN_10 * rate_v_per_s);
         if wait < 0.0 { -wait } else { wait }

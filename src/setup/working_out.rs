@@ -49,6 +49,8 @@ impl Derived {
             leaking_limit = leaking_v / time_constant_s / converter.lsb_v;
             rate_limit += leaking_limit;
         }
+        let coarse_shift = coarse_shift(converter.tick_hz);
+        let coarse_tick = leak_per_tick * (1_u64 << coarse_shift) as f64;
         let soakage = match soakage(circuit, converter.tick_hz) {
             Ok(law) => law,
             Err(e) => return Err(e),
@@ -130,6 +132,12 @@ impl Derived {
             None => 0.0,
         };
         let follow_s = policy.settling_s + slewing_s;
+        check!(
+            min_on_time_s < policy.gap_limit_s,
+            "gap_limit_s",
+            "longer than a reset has to last (Setup::min_on_time_s)"
+        );
+        check!(min_on_time_s * converter.tick_hz <= 4e9, "settling_s", "such that a reset lasts at most 4e9 ticks");
         let switch_tau_s = circuit.switch_resistance_ohm * circuit.capacitance_f;
         let pedestal = match circuit.pedestal_u_v {
             Some(u) => {
@@ -175,8 +183,9 @@ impl Derived {
             leak,
             soakage,
             leak_per_s: (leak_per_tick * converter.tick_hz) as f32,
-            leak_walk: ((noise.readout_counts * noise.readout_counts + 1.0 / 12.0) * leak_per_tick * leak_per_tick)
-                as f32,
+            coarse_shift: if leak.is_some() { Some(coarse_shift) } else { None },
+            linearity_var: (converter.linearity_u_counts * converter.linearity_u_counts) as f32,
+            leak_walk: ((noise.readout_counts * noise.readout_counts + 1.0 / 12.0) * coarse_tick * coarse_tick) as f32,
             terms_u_rel: [circuit.leak_u_rel as f32, circuit.soakage_u_rel as f32],
             gain_var_rel: (circuit.gain_u_rel * circuit.gain_u_rel + converter.lsb_u_rel * converter.lsb_u_rel) as f32,
             droop_limit: droop_limit as f32,
@@ -208,6 +217,12 @@ const fn soakage(circuit: &Circuit, tick_hz: f64) -> Result<Option<SoakageLaw>, 
         (Ok(a), Ok(b), Ok(c), Ok(d)) => Ok(if shares > 0.0 { Some([a, b, c, d]) } else { None }),
         (Err(e), ..) | (_, Err(e), ..) | (_, _, Err(e), _) | (.., Err(e)) => Err(e),
     }
+}
+
+/// How far the counter's ticks are coarsened for squares: to between 2^18 and 2^19 a second.
+const fn coarse_shift(tick_hz: f64) -> u8 {
+    let bits = 64 - (tick_hz as u64).leading_zeros();
+    if bits > 19 { (bits - 19) as u8 } else { 0 }
 }
 
 /// Spare bits above the converter's span and a sign.

@@ -8,9 +8,9 @@ use crate::setup::Derived;
 /// Leak and soakage.
 const FIGURES: usize = 2;
 
-/// For each figure, what one of its standard uncertainties would change: the filter weighs samples, so it weighs what is
-/// wrong with them alike. The figures are not estimated, their uncertainty is carried along (Schmidt 1966, Advances in
-/// Control Systems 3, from memory: "consider" parameters).
+/// For each figure, what one of its standard uncertainties would change: the filter weighs samples, so it weighs what
+/// is wrong with them alike. The figures are not estimated, their uncertainty is carried along (Schmidt 1966, Advances
+/// in Control Systems 3, from memory: "consider" parameters).
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Considered {
     /// Leak and soakage when they were last followed.
@@ -33,7 +33,7 @@ impl Considered {
         }
         self.step = terms.doubts_since(self.followed, derived);
         for (level, step) in self.level.iter_mut().zip(self.step) {
-            *level += step;
+            *level = bounded(*level + step);
         }
         self.followed = terms;
     }
@@ -55,7 +55,7 @@ impl Considered {
         }
         let dt_s = math::seconds(ticks, derived.tick_s);
         for (level, rate) in self.level.iter_mut().zip(self.rate) {
-            *level -= rate * dt_s;
+            *level = bounded(*level - rate * dt_s);
         }
     }
 
@@ -65,8 +65,8 @@ impl Considered {
             return;
         }
         for ((level, rate), run) in self.level.iter_mut().zip(&mut self.rate).zip(&mut self.run) {
-            *run += run_gain * *level;
-            *rate += innovation.rate_gain * *level;
+            *run = bounded(*run + run_gain * *level);
+            *rate = bounded(*rate + innovation.rate_gain * *level);
             *level -= innovation.level_gain * *level;
         }
     }
@@ -116,4 +116,9 @@ pub(crate) fn squares(levers: [f32; FIGURES]) -> f32 {
 /// The variance of a difference.
 pub(crate) fn square_distance(a: [f32; FIGURES], b: [f32; FIGURES]) -> f32 {
     a.iter().zip(b).map(|(a, b)| (a - b) * (a - b)).sum()
+}
+
+/// So far off nothing is known, and squares stay within `f32`.
+fn bounded(lever: f32) -> f32 {
+    lever.clamp(-1e15, 1e15)
 }

@@ -40,8 +40,8 @@ pub(super) struct Gate {
 }
 
 impl Gate {
-    /// Expects levels `level_q16` (2^-16 counts) and onward by `rate` (counts per tick), for up to `ticks` from now, at the
-    /// end of which they have the variance `variance` (counts^2).
+    /// Expects levels `level_q16` (2^-16 counts) and onward by `rate` (counts per tick), for up to `ticks` from now, at
+    /// the end of which they have the variance `variance` (counts^2).
     pub(super) fn aim(&mut self, level_q16: i64, rate: f32, ticks: u64, variance: f32) {
         let shift = (64 - ticks.leading_zeros()).min(40) as u8;
         self.aim = Some(Aim {
@@ -63,10 +63,13 @@ impl Gate {
         self.aim.is_none()
     }
 
-    /// Judges a sample at `tick`, so many ticks after the filter's instant. While too little is known to tell, all is noise.
+    /// Judges a sample at `tick`, so many ticks after the filter's instant. While too little is known to tell, all is
+    /// noise.
     pub(super) fn judge(&mut self, tick: u32, level_q16: i64, ticks: u64) -> Verdict {
         let Some(aim) = self.aim else { return Verdict::Noise };
-        let drifted_q16 = aim.drift_q16.saturating_mul(ticks.cast_signed()) >> aim.shift;
+        // Steep drifts over long blocks of a fast counter: low bits give way.
+        let cut = aim.shift.saturating_sub(22);
+        let drifted_q16 = (aim.drift_q16 >> cut).saturating_mul(ticks.cast_signed()) >> (aim.shift - cut);
         let off_q16 = level_q16.saturating_sub(aim.level_q16).saturating_sub(drifted_q16);
         if off_q16.unsigned_abs() <= aim.reach_q16 {
             self.astray = 0;

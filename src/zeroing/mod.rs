@@ -3,12 +3,14 @@
 mod considered;
 mod gate;
 mod noise;
+mod rate_change;
 mod samples;
 mod warmth;
 
 pub(crate) use considered::{Considered, square_distance, squares};
 use gate::Gate;
 use noise::NoiseSeen;
+pub(crate) use rate_change::RateChange;
 use warmth::Warmth;
 
 use crate::clock::Span;
@@ -38,8 +40,8 @@ pub(crate) enum Taken {
     Onset {
         /// When, at the latest found.
         since: u32,
-        /// Whether that is as good as the beginning of the zero: then the drift may have changed before, in the run; and by
-        /// how much.
+        /// Whether that is as good as the beginning of the zero: then the drift may have changed before, in the run;
+        /// and by how much.
         contradicts_run: bool,
         change: Option<RateChange>,
     },
@@ -57,25 +59,6 @@ struct Checkpoint {
     age: Span,
     /// Innovations in the zero before it.
     known: u16,
-}
-
-/// How the drift that a zero found differs from the one expected.
-#[derive(Clone, Copy, Debug)]
-pub(crate) struct RateChange {
-    /// Change of the estimate, counts/s, and its variance if the drift has not changed.
-    pub(crate) off: f32,
-    pub(crate) off_var: f32,
-    /// How much of a change of the drift the estimate has followed.
-    pub(crate) share: f32,
-}
-
-impl RateChange {
-    /// The time constant of a decay that explains the change of a level that is `risen` counts farther from the reset level
-    /// than it was in the zero before, s; `None` if it needs no explaining, or not that one.
-    pub(crate) fn decay_s(&self, risen: f32) -> Option<u32> {
-        let clear = self.off * self.off > 25.0 * self.off_var && self.off * risen < 0.0;
-        clear.then(|| (-risen * self.share / self.off) as u32)
-    }
 }
 
 /// The filter of the zeros, which carries the baseline through the runs.
@@ -105,7 +88,8 @@ pub(crate) struct Zeroing {
     /// Where the zero found its level, 2^-16 counts, and the variance of that, counts^2.
     found_q16: i64,
     found_var: f32,
-    /// The drift and its variance as expected when the zero found its level, and what leak and soakage may have made of it.
+    /// The drift and its variance as expected when the zero found its level, and what leak and soakage may have made of
+    /// it.
     expected_rate: Option<(f32, f32, [f32; 2])>,
     /// How long the latest zero that is over had known its level, ticks.
     told_ticks: u64,
@@ -187,7 +171,8 @@ impl Zeroing {
         }
     }
 
-    /// How long the zero that the drift rests on has known its level, ticks: this one, or the one before while that is longer.
+    /// How long the zero that the drift rests on has known its level, ticks: this one, or the one before while that is
+    /// longer.
     pub(crate) fn known_ticks(&self) -> u64 {
         self.known_ticks.max(self.told_ticks)
     }

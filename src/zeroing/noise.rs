@@ -90,8 +90,8 @@ impl NoiseSeen {
         if self.percent().is_some() { self.dispersion() } else { 1.0 }
     }
 
-    /// Factor on variances that rest on the drift: what the drifts of successive zeros differ by over what the walks of the
-    /// set-up allow, or sums of innovations over what they should be. It only widens.
+    /// Factor on variances that rest on the drift: what the drifts of successive zeros differ by over what the walks of
+    /// the set-up allow, or sums of innovations over what they should be. It only widens.
     pub(super) fn rate_widening(&self) -> f32 {
         let rate = if self.rate_percent().is_some() { self.rate_dispersion } else { 1.0 };
         let off = self.slow_dispersion - 1.0;
@@ -99,16 +99,17 @@ impl NoiseSeen {
         rate.max(slow).max(self.widening())
     }
 
-    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more: the mean square is 5 of its standard
-    /// deviations, `sqrt(2 / n)`, above 1.
+    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more: the mean square is 5 of its
+    /// standard deviations, `sqrt(2 / n)`, above 1.
     pub(super) fn rate_percent(&self) -> Option<u16> {
         let off = self.rate_dispersion - 1.0;
         let clear = off > 0.0 && off * off * self.zeros > 50.0;
         clear.then(|| (100.0 * math::sqrt(self.rate_dispersion)) as u16)
     }
 
-    /// Whether there was enough of zeros for noise figures that are wrong by a factor of 3 to have shown: 64 blocks for the
-    /// readout and the walk, 6 zeros that said something of the drift for the wander. Simulated; see `tests/adaptation.rs`.
+    /// Whether there was enough of zeros for noise figures that are wrong by a factor of 3 to have shown: 64 blocks for
+    /// the readout and the walk, 6 zeros that said something of the drift for the wander. Simulated; see
+    /// `tests/adaptation.rs`.
     pub(super) fn is_tested(&self) -> bool {
         self.innovations >= SETUP_INNOVATIONS + 64.0 && self.zeros >= SETUP_ZEROS + 6.0
     }
@@ -127,8 +128,8 @@ impl NoiseSeen {
         (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
     }
 
-    /// Whether a block scatters so much more than expected that a spike must be in it: its mean is of no use. Before any block
-    /// has shown the scatter this may be hum as well: then only the first is left out.
+    /// Whether a block scatters so much more than expected that a spike must be in it: its mean is of no use. Before
+    /// any block has shown the scatter this may be hum as well: then only the first is left out.
     pub(super) fn is_torn(&mut self, mean: &BlockMean) -> bool {
         let n = f32::from(mean.samples);
         let scattered = n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * self.sample_var;
@@ -151,8 +152,8 @@ impl NoiseSeen {
         self.freedom = freedom.min(MOST_FREEDOM);
     }
 
-    /// Takes an innovation in standard deviations, the dispersion included; a large one counts as 3, so that an onset is not
-    /// taken for noise.
+    /// Takes an innovation in standard deviations, the dispersion included; a large one counts as 3, so that an onset
+    /// is not taken for noise.
     pub(super) fn take_innovation(&mut self, deviation: f32) {
         let square = (deviation * deviation).min(9.0) * self.dispersion();
         self.dispersion += (square - self.dispersion) / (self.innovations + 1.0);

@@ -17,14 +17,15 @@ const EARLY_INNOVATIONS: u16 = 16;
 const DOUBTED: f32 = 3.0;
 const NEGLIGIBLE: f32 = 0.3;
 
-/// Variance by which flicker parts the mean rates of two equal stretches of time side by side, 4 ln 2 (IEEE Std 1139-2008:
-/// twice the Allan variance); taken for what is new in each e-fold of a zero's age. Simulated zeros bear it out.
+/// Variance by which flicker parts the mean rates of two equal stretches of time side by side, 4 ln 2 (IEEE Std
+/// 1139-2008: twice the Allan variance); taken for what is new in each e-fold of a zero's age. Simulated zeros bear it
+/// out.
 const FLICKER_SHARE: f32 = 2.772_588_7;
 
 impl Zeroing {
     /// Time in a zero without a usable sample.
     pub(crate) fn skip(&mut self, ticks: u32, derived: &Derived) {
-        self.pending.add(ticks, derived.leak.is_some());
+        self.pending.add(ticks, derived.coarse_shift);
         self.block.skip(ticks);
     }
 
@@ -50,15 +51,15 @@ impl Zeroing {
                 return Taken::Onset { since, contradicts_run, change };
             }
         }
-        self.pending.add(ticks, derived.leak.is_some());
+        self.pending.add(ticks, derived.coarse_shift);
         if self.block.push(seen.level_q16, ticks, derived.block_ticks, derived.fine_bits) {
             return self.finish_block(seen.tick, seen.terms, stop, derived);
         }
         Taken::Used
     }
 
-    /// How the rate has changed from what was expected, if the level is `level_q16` (2^-16 counts, with the variance `var`) so
-    /// many ticks after it was found; only while the zero has hardly begun.
+    /// How the rate has changed from what was expected, if the level is `level_q16` (2^-16 counts, with the variance
+    /// `var`) so many ticks after it was found; only while the zero has hardly begun.
     fn turn(&self, level_q16: i64, var: f32, ticks: u64, derived: &Derived) -> Option<RateChange> {
         let (rate, rate_var, _) = self.expected_rate?;
         if self.known_innovations >= EARLY_INNOVATIONS || ticks == 0 {
@@ -141,7 +142,8 @@ impl Zeroing {
         self.known_ticks = self.known_ticks.saturating_add(elapsed);
         self.known_innovations = self.known_innovations.saturating_add(1);
         let per_deviation = math::sqrt(innovation.precision / self.noise.dispersion());
-        // What wrong figures of leak and soakage may have done is the same in block after block: no noise, and no onset.
+        // What wrong figures of leak and soakage may have done is the same in block after block: no noise, and no
+        // onset.
         let doubt = DOUBTED * math::sqrt(lag_var) * per_deviation;
         let deviation = beyond(innovation.residual * per_deviation, doubt);
         if doubt < NEGLIGIBLE {
@@ -210,8 +212,8 @@ impl Zeroing {
         self.level_known = true;
     }
 
-    /// How far flicker makes the rate wander in the next `ticks` of a zero: it has as much variance in each octave of time, so
-    /// the older the zero the less is new.
+    /// How far flicker makes the rate wander in the next `ticks` of a zero: it has as much variance in each octave of
+    /// time, so the older the zero the less is new.
     fn flicker_walk(&self, ticks: u64, derived: &Derived) -> f32 {
         if derived.flicker <= 0.0 {
             return 0.0;
@@ -220,13 +222,9 @@ impl Zeroing {
         FLICKER_SHARE * derived.flicker * (ticks as f32 / age as f32)
     }
 
-    /// The level is held by something else: the zero is over, and tells nothing.
-    pub(crate) fn abandon(&mut self) {
-        self.roll_back();
-    }
-
-    /// Forgets what was learned since the sums were last empty.
-    fn roll_back(&mut self) {
+    /// The input was not zero, or the level not free: the zero is over. Forgets what was learned since the sums were
+    /// last empty.
+    pub(crate) fn roll_back(&mut self) {
         self.disturbed = true;
         if let Some(checkpoint) = self.checkpoint.take() {
             self.trend = checkpoint.trend;

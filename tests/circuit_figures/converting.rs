@@ -93,3 +93,27 @@ fn with_a_leak_an_uncertain_zero_of_the_converter_is_drift() {
         }
     }
 }
+
+/// Each level between which a run is measured is off by what the table leaves: two ends, and two more for each reset.
+#[test]
+fn what_the_table_leaves_counts_at_every_level() {
+    let straight: Setup<Charge> = Setup::new(STILL, CONVERTER, NOISE, PLAIN);
+    let converter = Converter { linearity_u_counts: 3.0, ..CONVERTER };
+    let bent: Setup<Charge> = Setup::new(STILL, converter, NOISE, PLAIN);
+    for resets in [0, 1, 3] {
+        let variances = [&straight, &bent].map(|setup| {
+            let mut script = quiet(setup);
+            script.zero(200).integrate(50, 2_000.0);
+            for _ in 0..resets {
+                script.reset(5, 0.0).integrate(50, 2_000.0);
+            }
+            let at_stop = counts(script.reading().at_stop.integral.u).powi(2);
+            script.zero(200);
+            [at_stop, counts(script.reading().closed.expect("closed").integral.u).powi(2)]
+        });
+        let expected = 9.0 * f64::from(2 + 2 * resets);
+        for (without, with) in variances[0].iter().zip(variances[1]) {
+            assert_near(with - without, expected, 1e-3);
+        }
+    }
+}

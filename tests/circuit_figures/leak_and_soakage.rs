@@ -1,6 +1,6 @@
 //! A capacitor that leaks and soaks: what is put back, how uncertain that is, and that the clock need not be steady.
 
-use brimline::{Charge, Circuit, Mode, Setup, SoakageBranch};
+use brimline::{Charge, Circuit, Converter, Mode, Policy, Reason, Setup, SoakageBranch, Trust};
 
 use crate::script::{CONVERTER, NOISE, STEP, Script};
 use crate::{PLAIN, READOUT, STILL, assert_near, counts, quiet};
@@ -40,8 +40,10 @@ fn a_level_that_stands_has_had_its_height_over_the_time_constant_of_input() {
         let setup = leaky(time_constant_s, 0.0);
         for samples in [100, 3_000] {
             let expected = HEIGHT + leaked(samples, time_constant_s);
-            let total = counts(held_up(&setup, samples).reading().at_stop.integral.value);
+            let reading = held_up(&setup, samples).reading();
+            let (total, restored) = (counts(reading.at_stop.integral.value), counts(reading.restored));
             assert!((total - expected).abs() < 1e-3 + 1e-7 * expected, "{time_constant_s}: {total} {expected}");
+            assert!((total - restored - HEIGHT).abs() < 1e-3, "{time_constant_s}: {restored} of {total}");
         }
     }
 }
@@ -224,4 +226,54 @@ fn leak_slope() -> f64 {
     let mean = times.iter().sum::<f64>() / 300.0;
     let product: f64 = times.iter().map(|&t| (t - mean) * leaked(t)).sum();
     product / times.iter().map(|t| (t - mean).powi(2)).sum::<f64>()
+}
+
+/// The noise that leaks is squared in coarse ticks: the counter's rate makes no difference, however long the run.
+#[test]
+fn the_rate_of_the_counter_changes_no_uncertainty() {
+    let stated = [1e6, 84e6, 480e6].map(|tick_hz: f64| {
+        let circuit = Circuit { leak_time_constant_s: Some(1.0), ..STILL };
+        let policy = Policy { gap_limit_s: 2.0, ..PLAIN };
+        let setup: Setup<Charge> = Setup::new(circuit, Converter { tick_hz, ..CONVERTER }, NOISE, policy);
+        let mut script = quiet(&setup);
+        let ticks = (0.1 * tick_hz) as u32;
+        for (mode, samples) in [(Mode::Zero, 100), (Mode::Integrate, 100_000)] {
+            (0..samples).for_each(|_| drop(script.sample(mode, ticks)));
+        }
+        counts(script.reading().at_stop.budget.leak_and_soakage).abs()
+    });
+    let expected = (READOUT * 100_000.0).sqrt() * 0.1;
+    stated.iter().for_each(|&u| assert_near(u, expected, 1e-3));
+}
+
+/// What leaked in the runs before, 10^14 counts and more, uses up nothing; a run in which so much leaks says so.
+#[test]
+fn a_leak_of_years_leaves_the_next_run_as_exact() {
+    let circuit = Circuit { leak_time_constant_s: Some(0.1), ..STILL };
+    let policy = Policy { gap_limit_s: 1500.0, ..PLAIN };
+    let setup: Setup<Charge> = Setup::new(circuit, CONVERTER, NOISE, policy);
+    let mut script = quiet(&setup);
+    let short_run = |script: &mut Script<'_>| {
+        script.level = 0.0;
+        script.sample(Mode::Reset, STEP);
+        script.zero(50);
+        script.level = HEIGHT;
+        script.integrate(200, 0.0);
+        let reading = script.reading();
+        assert_eq!(reading.trust, Trust::Good);
+        counts(reading.at_stop.integral.value)
+    };
+    let first = short_run(&mut script);
+    // 1000 s a sample: 5e8 counts each, 1.4e14 in all, in runs of 2e13.
+    for _ in 0..7 {
+        script.zero(20);
+        (0..40_000).for_each(|_| drop(script.sample(Mode::Integrate, 1_000_000_000)));
+        assert!(!script.reading().reasons.contains(Reason::OutOfRange));
+    }
+    script.zero(20);
+    let last = short_run(&mut script);
+    assert!((first - last).abs() < 1e-2, "{first} {last}");
+    script.zero(20);
+    (0..200_000).for_each(|_| drop(script.sample(Mode::Integrate, 1_000_000_000)));
+    assert!(script.reading().reasons.contains(Reason::OutOfRange));
 }

@@ -76,8 +76,8 @@ fn many_resets_weigh_a_shared_pedestal_less_and_less() {
     }
 }
 
-/// The same gain in the value: where the samples lie off the known level, the total follows by the gain's share; but a level
-/// more than five deviations off, 4.1 counts here, is not believed.
+/// The same gain in the value: where the samples lie off the known level, the total follows by the gain's share; but a
+/// level more than five deviations off, 4.1 counts here, is not believed.
 #[test]
 fn a_known_level_pulls_the_line_by_its_gain() {
     for (off, resets, believed) in [(4.0, 1, true), (-3.0, 1, true), (4.0, 5, true), (-7.0, 1, false)] {

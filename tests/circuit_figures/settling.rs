@@ -52,10 +52,12 @@ fn slewing_comes_on_top() {
 #[test]
 fn a_level_that_is_there_already_needs_no_time() {
     let circuit = Circuit { slew_v_per_s: Some(1.0), ..STILL };
-    for (swing_v, residual_v) in
-        [(1e-6, 1e-6), (0.0, 1e-6), (-1.0, 1e-6), (f64::NAN, 1e-6), (1.0, 0.0), (1.0, -1.0), (1.0, f64::NAN)]
-    {
+    for (swing_v, residual_v) in [(1e-6, 1e-6), (0.0, 1e-6), (-1e-6, 1e-6)] {
         assert_eq!(circuit.settling_time_s(swing_v, residual_v), 0.0, "{swing_v} {residual_v}");
+    }
+    assert_eq!(circuit.settling_time_s(-1.0, 1e-6), circuit.settling_time_s(1.0, 1e-6), "a swing has a sign");
+    for residual_v in [0.0, -1.0, f64::NAN] {
+        assert_eq!(circuit.settling_time_s(1.0, residual_v), f64::INFINITY, "{residual_v}");
     }
     assert_eq!(Circuit { switch_resistance_ohm: 0.0, slew_v_per_s: None, ..STILL }.settling_time_s(1.0, 1e-6), 0.0);
     // The whole range of f64 and more.

@@ -1,5 +1,5 @@
-//! What the statistical tests share: boards, a simulated channel with known truth, two independent estimators to compare
-//! with, and a score sheet.
+//! What the statistical tests share: boards, a simulated channel with known truth, two independent estimators to
+//! compare with, and a score sheet.
 #![allow(dead_code, reason = "each test program uses a part of this")]
 #![allow(clippy::disallowed_methods, reason = "a reference on the host computes in f64; only src must give equal bits")]
 

@@ -76,8 +76,8 @@ impl Tally {
         );
     }
 
-    /// Both coverages within what the claim means, and errors centred and as large as claimed, within 4 standard errors:
-    /// the mean of `n` errors of rms 1 scatters by `1/sqrt(n)`, their rms by `1/sqrt(2 n)`.
+    /// Both coverages within what the claim means, and errors centred and as large as claimed, within 4 standard
+    /// errors: the mean of `n` errors of rms 1 scatters by `1/sqrt(n)`, their rms by `1/sqrt(2 n)`.
     pub(crate) fn assert_honest(&self, what: &str) {
         let (low, high) = (self.coverage_68(), self.coverage_95());
         assert!((93.0..=97.0).contains(&high), "{what}: 1.96 u covers {high:.1} %, 95 expected");

@@ -181,8 +181,8 @@ fn a_pedestal_moves_the_level_that_is_expected_after_a_reset() {
     }
 }
 
-/// The largest step that is no jump: 100 nA and the data sheet's drift (101 counts/s) over the time since the sample before,
-/// and 8 standard deviations of a readout of at most 1.29 counts.
+/// The largest step that is no jump: 100 nA and the data sheet's drift (101 counts/s) over the time since the sample
+/// before, and 8 standard deviations of a readout of at most 1.29 counts.
 #[test]
 fn the_largest_step_holds_the_drift_and_the_noise() {
     // Half a minute between samples, so that the drift counts.
@@ -202,8 +202,8 @@ fn the_largest_step_holds_the_drift_and_the_noise() {
     }
 }
 
-/// A level that the switch kicks by a few counts when it opens the input: no jump, and no noise either. The value at stop
-/// and the closed one cannot both be true, and that is told.
+/// A level that the switch kicks by a few counts when it opens the input: no jump, and no noise either. The value at
+/// stop and the closed one cannot both be true, and that is told.
 #[test]
 fn a_closed_value_that_contradicts_the_one_at_stop_is_told() {
     for (kick, told) in [(4.0, false), (12.0, true)] {

@@ -186,8 +186,9 @@ fn a_guess_is_as_uncertain_as_the_input_it_does_not_count() {
     assert_eq!(reading.trust, Trust::LowerBound);
 }
 
-/// An input of known slew: of the bend that the samples show, the share is taken off that the slew makes likely, and what
-/// may be left in is charged. Here the prior of the bend is as wide as what the readout noise says of it: half and half.
+/// An input of known slew: of the bend that the samples show, the share is taken off that the slew makes likely, and
+/// what may be left in is charged. Here the prior of the bend is as wide as what the readout noise says of it: half and
+/// half.
 #[test]
 fn a_known_slew_shares_out_the_bend() {
     // In steps of 10 ms. Sum of (u^2 - mean)^2 over 16 samples, and half the slew, squared, over 2 (GUM 4.3.5).
@@ -200,8 +201,8 @@ fn a_known_slew_shares_out_the_bend() {
     let mut script = quiet(&setup);
     script.zero(300).integrate(100, 20_000.0).reset(8, 0.0).integrate(100, 20_000.0);
     let (share, left) = (0.5, of_noise * 0.25);
-    // The parabola's weights are orthogonal to the line's. It is followed to the switching instant, and its slope there for
-    // half the dead time, 4 steps.
+    // The parabola's weights are orthogonal to the line's. It is followed to the switching instant, and its slope there
+    // for half the dead time, 4 steps.
     let edge = |centre: f64| {
         let bend = centre * centre - 21.25 + 4.0 * 2.0 * centre;
         let line = 1.0 / 16.0 + (centre + 4.0).powi(2) / 340.0;

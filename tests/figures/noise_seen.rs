@@ -93,8 +93,8 @@ fn a_block_holds_no_more_samples_than_it_can_count() {
     assert_near(counts(script.reading().at_stop.budget.readout).powi(2), 1.0 / 3.0 + 1.0 / 12.0, 0.05);
 }
 
-/// Zeros whose drifts lie apart by a known step: the surprise of each is the step squared over what the zero took from the
-/// drift's variance, which starts at 1 with the worth of 4 zeros.
+/// Zeros whose drifts lie apart by a known step: the surprise of each is the step squared over what the zero took from
+/// the drift's variance, which starts at 1 with the worth of 4 zeros.
 #[test]
 fn the_wander_that_zeros_show_is_their_steps_over_what_they_learned() {
     let setup = Setup::new(CIRCUIT, CONVERTER, Noise { offset_wander: 0.01e-12, ..NOISE }, POLICY);
@@ -164,8 +164,8 @@ fn noise_is_tested_once_there_were_blocks_and_zeros_enough() {
     }
 }
 
-/// A level that wanders by less than half a block's noise, but for seconds on end: single innovations do not show it, sums
-/// of them do, and the drift is less certain for it.
+/// A level that wanders by less than half a block's noise, but for seconds on end: single innovations do not show it,
+/// sums of them do, and the drift is less certain for it.
 #[test]
 fn what_only_sums_of_innovations_show_widens_the_drift() {
     let of = |wander: f64| {

@@ -58,8 +58,9 @@ fn a_spike_is_more_than_six_standard_deviations() {
     assert_eq!(told(&script, Event::Spike), 1);
 }
 
-/// After a silence as long as the zero before it, the level is expected where the line through ten samples goes, and is as
-/// uncertain as that is there (Draper & Smith, from memory): `1 + 1/10 + (15 - 0.5)^2 / 82.5` variances for a sample.
+/// After a silence as long as the zero before it, the level is expected where the line through ten samples goes, and is
+/// as uncertain as that is there (Draper & Smith, from memory): `1 + 1/10 + (15 - 0.5)^2 / 82.5` variances for a
+/// sample.
 #[test]
 fn after_a_silence_a_sample_may_be_as_far_off_as_the_drift_is_uncertain() {
     let policy = Policy { zero_block_s: 0.0, ..POLICY };
@@ -90,8 +91,8 @@ fn the_very_first_block_is_left_out_if_a_spike_is_in_it() {
     assert!(value.value.as_coulombs().abs() < 3.0 * value.u.as_coulombs(), "{value:?}");
 }
 
-/// An input that grows slowly is found by the sums: what the zero said before stands, to the last bit, and the run after it
-/// holds all that came in.
+/// An input that grows slowly is found by the sums: what the zero said before stands, to the last bit, and the run
+/// after it holds all that came in.
 #[test]
 fn an_onset_takes_back_what_the_zero_learned_since() {
     let mut script = Script::new(&SETUP);
@@ -118,7 +119,8 @@ fn an_onset_takes_back_what_the_zero_learned_since() {
 
 /// Zeros with nothing but noise: how long it takes to a false alarm on the average.
 ///
-/// The policy promises a mean time (Siegmund's approximation); a dispersion that is at least 1 makes them a little rarer.
+/// The policy promises a mean time (Siegmund's approximation); a dispersion that is at least 1 makes them a little
+/// rarer.
 #[test]
 fn false_alarms_come_about_as_often_as_the_policy_says() {
     const ALARMS: u64 = 400;

@@ -13,8 +13,8 @@ fn rounded_rate(zero_s: f64) -> f64 {
     2.0 * ROUNDING / (zero_s * zero_s)
 }
 
-/// The slope of a line through `n` blocks in `zero_s` seconds, whose rounding is taken for noise of twice its size because
-/// it keeps its sign over many blocks: `12 s^2 / (n T^2)` (Draper & Smith, from memory).
+/// The slope of a line through `n` blocks in `zero_s` seconds, whose rounding is taken for noise of twice its size
+/// because it keeps its sign over many blocks: `12 s^2 / (n T^2)` (Draper & Smith, from memory).
 fn fitted_rate(readout: f64, zero_s: f64) -> f64 {
     let blocks = zero_s / 0.1;
     12.0 * 4.0 * (readout * readout + ROUNDING) / (blocks * zero_s * zero_s)
@@ -33,7 +33,8 @@ fn the_uncertainties_are_those_of_rounding() {
     // Both ends are rounded.
     assert_near(counts(budget.readout), (2.0 * ROUNDING).sqrt(), 0.02);
     let rate = rounded_rate(zero_s) + fitted_rate(0.1, zero_s);
-    // The level at the start is correlated with the drift: its share is the extrapolation's from the middle of the zero.
+    // The level at the start is correlated with the drift: its share is the extrapolation's from the middle of the
+    // zero.
     assert!(counts(budget.drift) > 0.98 * rate.sqrt() * run_s, "{budget:?}");
     assert!(counts(budget.drift) < 1.1 * rate.sqrt() * run_s, "{budget:?}");
     script.zero(3000);

@@ -160,8 +160,8 @@ fn the_running_reading_is_the_one_at_stop() {
     assert_eq!(warm.reading().at_stop, running);
 }
 
-/// Input begins in a zero that had just begun to tell what warming does: what the sums had gathered until it was found is not
-/// taken for warmth. The run after it lasts 4 s, 10 K warmer.
+/// Input begins in a zero that had just begun to tell what warming does: what the sums had gathered until it was found
+/// is not taken for warmth. The run after it lasts 4 s, 10 K warmer.
 #[test]
 fn an_onset_takes_back_what_was_learned_of_the_warmth() {
     let setup = setup(POLICY);

@@ -68,8 +68,8 @@ fn outcome(figure: Figure, factor: f64, zero_s: f64, trials: u64) -> Outcome {
     outcome
 }
 
-/// A factor on a figure, zeros of so many seconds, and how often, in per cent, the 95 % intervals at stop and closed must
-/// hold the truth at least. Where a wrong figure is to be borne, that is 85.
+/// A factor on a figure, zeros of so many seconds, and how often, in per cent, the 95 % intervals at stop and closed
+/// must hold the truth at least. Where a wrong figure is to be borne, that is 85.
 struct Case {
     figure: Figure,
     factor: f64,

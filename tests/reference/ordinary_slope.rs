@@ -11,9 +11,9 @@ pub(crate) fn ordinary_slope(levels: &[i64]) -> (f64, f64) {
     (slope, (squares / (n - 2.0) / xx).sqrt())
 }
 
-/// Standard uncertainty of an ordinary slope over `n` samples a second apart from readout noise and a random walk of the
-/// level: `12 r / (n (n^2 - 1)) + (6/5) q_w (n^2 + 1) / (n (n^2 - 1))` under the root (derived by hand, checked here by
-/// simulation). Flicker and wander of the rate come on top.
+/// Standard uncertainty of an ordinary slope over `n` samples a second apart from readout noise and a random walk of
+/// the level: `12 r / (n (n^2 - 1)) + (6/5) q_w (n^2 + 1) / (n (n^2 - 1))` under the root (derived by hand, checked
+/// here by simulation). Flicker and wander of the rate come on top.
 pub(crate) fn implied_slope_u(readout_var: f64, level_walk: f64, n: f64) -> f64 {
     ((12.0 * readout_var + 1.2 * level_walk * (n * n + 1.0)) / (n * (n * n - 1.0))).sqrt()
 }

@@ -46,8 +46,8 @@ impl Simulator {
 
     /// The integral of a rate with the spectral density `1 / f` at whole numbers, up to a straight line: exact in
     /// distribution. Its second differences are stationary with the covariances that the fourth difference of
-    /// `h^2 ln|h| / 2` gives; a circulant matrix with these is diagonal in Fourier space (Davies & Harte 1987, Tests for
-    /// Hurst effect, Biometrika 74, from memory).
+    /// `h^2 ln|h| / 2` gives; a circulant matrix with these is diagonal in Fourier space (Davies & Harte 1987, Tests
+    /// for Hurst effect, Biometrika 74, from memory).
     fn flicker_level(&mut self, samples: usize) -> Vec<f64> {
         let size = (2 * samples).next_power_of_two();
         let g = |h: f64| if h == 0.0 { 0.0 } else { 0.5 * h * h * h.abs().ln() };

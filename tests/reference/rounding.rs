@@ -1,8 +1,8 @@
 //! What rounding to `f32` may do to a straight-line fit.
 //!
-//! Storing a point moves it by up to 2^-24 of its size, and the roundings within the sums are no larger. `Rounding` turns
-//! this into what a fit of these very points may be off by, when as much as one such rounding is left after the points'
-//! errors have been averaged.
+//! Storing a point moves it by up to 2^-24 of its size, and the roundings within the sums are no larger. `Rounding`
+//! turns this into what a fit of these very points may be off by, when as much as one such rounding is left after the
+//! points' errors have been averaged.
 
 use brimline::estimate::{Line, Point};
 use libm::sqrt;

@@ -58,7 +58,8 @@ fn a_switch_that_closes_half_way_is_told_outside_the_tolerance() {
 #[test]
 fn a_reset_too_short_to_be_judged_closed_is_judged_when_it_has_opened() {
     // 1 Mohm: a time constant of 0.1 s, 1.35 s until half a code is left.
-    let setup: Setup<Charge> = Setup::new(Circuit { switch_resistance_ohm: 1e6, ..CIRCUIT }, CONVERTER, NOISE, POLICY);
+    let policy = Policy { gap_limit_s: 2.0, ..POLICY };
+    let setup: Setup<Charge> = Setup::new(Circuit { switch_resistance_ohm: 1e6, ..CIRCUIT }, CONVERTER, NOISE, policy);
     assert!(setup.min_on_time_s() > 1.3);
     let mut bench = opened(&setup, Fault::None, 1);
     bench.integrate(100, 30_000.0).reset(10);
