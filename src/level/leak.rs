@@ -33,7 +33,11 @@ impl LeakLaw {
         let bits = 64 - page.leading_zeros();
         let (up, down) = if bits < 31 { (31 - bits, 0) } else { (0, bits - 31) };
         let normal = (page << up) >> down;
-        let reciprocal = ((1_u64 << 61) / normal.cast_unsigned()) as u32;
+        // `normal` has 31 bits; the compiler cannot know.
+        let reciprocal = match (1_u64 << 61).checked_div(normal.cast_unsigned()) {
+            Some(reciprocal) => reciprocal as u32,
+            None => 0,
+        };
         Ok(Self { page, up: up as u8, down: down as u8, reciprocal, per_tick: (1.0 / ticks) as f32 })
     }
 }

@@ -1,4 +1,4 @@
-//! Packs the recorded traces of `tests/traces` into tables of 4 bytes a row.
+//! Packs the recorded traces of `tests/traces` into tables of little more than 2 bytes a row.
 
 use std::error::Error;
 use std::fmt::Write;
@@ -34,6 +34,7 @@ fn main() -> Result<(), Box<dyn Error>> {
 fn pack(name: &str, csv: &str) -> Result<String, Box<dyn Error>> {
     let mut steps = String::new();
     let mut spans: Vec<(&str, u32)> = Vec::new();
+    let mut ticks: Vec<(u16, u16)> = Vec::new();
     let mut first = None;
     let mut before: Option<(u32, i32)> = None;
     for row in csv.lines().skip(1) {
@@ -45,8 +46,12 @@ fn pack(name: &str, csv: &str) -> Result<String, Box<dyn Error>> {
             return Err("the temperature changes".into());
         }
         let (last_tick, last_counts) = before.replace((tick, counts)).unwrap_or((start_tick, start_counts));
-        let (ticks, moved) = (u16::try_from(tick.wrapping_sub(last_tick))?, i16::try_from(counts - last_counts)?);
-        write!(steps, "({ticks},{moved}),")?;
+        write!(steps, "{},", i16::try_from(counts - last_counts)?)?;
+        let passed = u16::try_from(tick.wrapping_sub(last_tick))?;
+        match ticks.last_mut() {
+            Some((last, rows)) if *last == passed => *rows += 1,
+            _ => ticks.push((passed, 1)),
+        }
         match spans.last_mut() {
             Some((last, rows)) if *last == mode => *rows += 1,
             _ => spans.push((mode, 1)),
@@ -62,7 +67,7 @@ fn pack(name: &str, csv: &str) -> Result<String, Box<dyn Error>> {
     }
     Ok(format!(
         "const {}: Table = Table {{ name: \"{name}\", first: ({tick}, {counts}), millidegrees: {millidegrees}, \
-         spans: &[{packed}], steps: &[{steps}] }};\n",
+         spans: &[{packed}], ticks: &{ticks:?}, steps: &[{steps}] }};\n",
         name.to_uppercase()
     ))
 }

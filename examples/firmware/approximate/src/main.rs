@@ -4,9 +4,6 @@
 
 #[cfg(target_os = "none")]
 mod cost;
-#[cfg(target_os = "none")]
-#[path = "../../cost/src/counter.rs"]
-mod counter;
 mod hash;
 
 #[cfg(not(target_os = "none"))]
@@ -17,10 +14,10 @@ fn main() {
 }
 
 #[cfg(target_os = "none")]
-#[cortex_m_rt::entry]
+#[emulated::entry]
 fn main() -> ! {
     for (name, hash) in hash::all() {
-        semihosting::println!("{name} {hash:016x}");
+        emulated::println!("{name} {hash:016x}");
     }
-    semihosting::process::exit(i32::from(!cost::print()))
+    emulated::process::exit(i32::from(!cost::print()))
 }

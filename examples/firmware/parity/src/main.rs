@@ -6,10 +6,8 @@
 mod target {
     use core::fmt;
 
-    use cortex_m as _;
-    use cortex_m_rt::entry;
-    use semihosting::io::{Stdout, Write, stdout};
-    use semihosting::process;
+    use emulated::io::{Stdout, Write, stdout};
+    use emulated::{entry, process};
 
     struct Console(Stdout);
 

@@ -7,18 +7,26 @@ const CIRCUIT: Circuit =
 
 const CONVERTER: Converter = Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, ..Converter::DEFAULT };
 
-pub(crate) static HATCHERY: Setup<Charge> = Setup::new(
-    Circuit {
-        capacitance_f: 470e-9,
-        source_resistance_ohm: 5e9,
-        pedestal_v: -0.8e-3,
-        pedestal_u_v: Some(40e-6),
-        ..CIRCUIT
-    },
-    CONVERTER,
-    Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0, ..Noise::NONE },
-    Policy { worst_input: Some(0.2e-6), ..Policy::DEFAULT },
-);
+pub(crate) static HATCHERY: Setup<Charge> = hatchery(Policy::DEFAULT.zero_block_s);
+
+/// The same board with other blocks: at 100 samples a second of 16 samples, and none.
+pub(crate) static HATCHERY_BLOCKS_OF_16: Setup<Charge> = hatchery(0.16);
+pub(crate) static HATCHERY_UNBLOCKED: Setup<Charge> = hatchery(0.0);
+
+const fn hatchery(zero_block_s: f64) -> Setup<Charge> {
+    Setup::new(
+        Circuit {
+            capacitance_f: 470e-9,
+            source_resistance_ohm: 5e9,
+            pedestal_v: -0.8e-3,
+            pedestal_u_v: Some(40e-6),
+            ..CIRCUIT
+        },
+        CONVERTER,
+        Noise { readout_counts: 0.9, input_density: 1.5e-12, offset_wander: 0.0, ..Noise::NONE },
+        Policy { zero_block_s, worst_input: Some(0.2e-6), ..Policy::DEFAULT },
+    )
+}
 
 pub(crate) static DIM_LAMP: Setup<Charge> = Setup::new(
     Circuit { capacitance_f: 22e-9, source_resistance_ohm: 20e9, ..CIRCUIT },

@@ -7,4 +7,4 @@ mod log;
 mod table;
 
 pub use log::write_logs;
-pub use table::{CHARGE, FLUX, Trace};
+pub use table::{BLOCKS_OF_16, CHARGE, FLUX, Trace, UNBLOCKED};

@@ -13,8 +13,10 @@ struct Table {
     millidegrees: i32,
     /// Modes with their number of rows.
     spans: &'static [(Mode, u32)],
-    /// For each row the change of tick and counts against the row before it.
-    steps: &'static [(u16, i16)],
+    /// Changes of the tick against the row before, with their number of rows.
+    ticks: &'static [(u16, u16)],
+    /// For each row the change of counts against the row before it.
+    steps: &'static [i16],
 }
 
 include!(concat!(env!("OUT_DIR"), "/tables.rs"));
@@ -43,6 +45,13 @@ pub static FLUX: [Trace<Flux>; 4] = [
     Trace { table: HELD, setup: &boards::HELD, si: Flux::as_volt_seconds },
 ];
 
+/// The hatchery's trace again, with zeros in blocks of 16 samples and sample by sample.
+pub static BLOCKS_OF_16: Trace<Charge> =
+    Trace { table: HATCHERY, setup: &boards::HATCHERY_BLOCKS_OF_16, si: Charge::as_coulombs };
+/// See [`BLOCKS_OF_16`].
+pub static UNBLOCKED: Trace<Charge> =
+    Trace { table: HATCHERY, setup: &boards::HATCHERY_UNBLOCKED, si: Charge::as_coulombs };
+
 impl<Q> Trace<Q> {
     /// The name of its file.
     pub fn name(&self) -> &'static str {
@@ -58,7 +67,9 @@ impl<Q> Trace<Q> {
     pub fn samples(&self) -> impl Iterator<Item = Sample> {
         let modes = self.table.spans.iter().flat_map(|&(mode, rows)| (0..rows).map(move |_| mode));
         let temperature = Some(Temperature::from_millidegrees_celsius(self.table.millidegrees));
-        let rows = self.table.steps.iter().scan(self.table.first, |(tick, counts), &(ticks, moved)| {
+        let ticks = self.table.ticks.iter().flat_map(|&(ticks, rows)| (0..rows).map(move |_| ticks));
+        let steps = ticks.zip(self.table.steps);
+        let rows = steps.scan(self.table.first, |(tick, counts), (ticks, &moved)| {
             *tick = tick.wrapping_add(u32::from(ticks));
             *counts += i32::from(moved);
             Some((*tick, *counts))

@@ -2,11 +2,7 @@
 #![cfg_attr(target_os = "none", no_std, no_main)]
 
 #[cfg(target_os = "none")]
-#[path = "../bare.rs"]
-mod bare;
-
-#[cfg(target_os = "none")]
-#[cortex_m_rt::entry]
+#[no_panic::entry]
 fn main() -> ! {
     loop {
         core::hint::black_box(());
