@@ -50,7 +50,6 @@ fn a_recovery_that_is_known_to_a_twentieth_is_as_uncertain() {
 
 /// The closing zero knows the shares no better.
 #[test]
-#[ignore = "the closing zero forgets what uncertain figures did to the run"]
 fn a_closed_reading_is_as_uncertain_as_the_shares() {
     for dielectric in Dielectric::all() {
         let outcome = known_to_a_twentieth(&dielectric);
@@ -62,7 +61,6 @@ fn a_closed_reading_is_as_uncertain_as_the_shares() {
 
 /// What an uncertain share makes of a zero is no input.
 #[test]
-#[ignore = "creep that uncertain figures explain is taken for input in the closing zero"]
 fn creep_that_uncertain_shares_explain_is_no_input() {
     for dielectric in Dielectric::all() {
         assert_eq!(known_to_a_twentieth(&dielectric).trust, Trust::Good, "{}", dielectric.name);
@@ -71,7 +69,6 @@ fn creep_that_uncertain_shares_explain_is_no_input() {
 
 /// Fast sampling does not change a slow branch: what goes into it in a minute, at 5000 samples per second.
 #[test]
-#[ignore = "the part of the way that a branch goes in one step is rounded down to a multiple of 2^-32"]
 fn a_slow_branch_is_the_same_to_a_fast_converter() {
     const PER_SECOND: f64 = 5000.0;
     let [standard, _] = Standard::both();
