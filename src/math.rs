@@ -42,6 +42,16 @@ pub(crate) fn nearest(x: f32) -> i64 {
     libm::roundf(x) as i64
 }
 
+/// A difference of levels in 2^-16 counts, as counts.
+pub(crate) fn counts(q16: i64) -> f32 {
+    q16 as f32 * (1.0 / 65536.0)
+}
+
+/// A level in 2^-16 counts as whole counts and the rest, which is not negative.
+pub(crate) fn whole_and_rest(q16: i64) -> (i64, f32) {
+    (q16 >> 16, counts(q16 & 0xFFFF))
+}
+
 /// Seconds in `ticks` of a counter whose period is `tick_s`.
 pub(crate) fn seconds(ticks: u64, tick_s: f32) -> f32 {
     ticks as f32 * tick_s

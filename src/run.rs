@@ -108,7 +108,7 @@ impl Total {
     /// `self` and `plain_var` are as if nothing had been widened; what was gained is, as the zeros have shown since.
     /// `considered` is the variance by which uncertain figures of leak and soakage part the two.
     pub(crate) fn agrees_with(&self, at_stop: &Self, plain_var: f32, considered: f32, shown: &Shown) -> bool {
-        let difference = self.movement_q16.saturating_sub(at_stop.movement_q16) as f32 * (1.0 / 65536.0);
+        let difference = math::counts(self.movement_q16.saturating_sub(at_stop.movement_q16));
         let gained = (plain_var - self.variance()).max(0.0);
         difference * difference <= 16.0 * (gained * shown.rate_widening + 2.0 * shown.sample_var + considered)
     }
@@ -150,6 +150,11 @@ impl Run {
         self.start_var = baseline.level_variance();
     }
 
+    /// Books what leak and soakage, `terms_q16` now, took since the segment opened.
+    pub(crate) fn restore(&mut self, terms_q16: i64) {
+        self.restored_q16 = self.restored_q16.saturating_add(terms_q16.saturating_sub(self.opened_terms_q16));
+    }
+
     /// Whether the run has not stopped.
     pub(crate) fn is_running(&self) -> bool {
         !matches!(self.stage, Stage::Stopped { .. })
@@ -163,9 +168,9 @@ impl Run {
         let half_s = 0.5 * math::seconds(crossing.dead, derived.tick_s);
         self.opening = Some(Opening::new(&after, half_s, self.opened_tick, self.end_tick));
         let Some(before) = crossing.before else {
-            let rest = (after.anchor_q16 & 0xFFFF) as f32 * (1.0 / 65536.0);
+            let (counts, rest) = math::whole_and_rest(after.anchor_q16);
             let level = rest + after.level(baseline.rate());
-            baseline.restart(after.anchor_q16 >> 16, level, after.readout_variance(0.0));
+            baseline.restart(counts, level, after.readout_variance(0.0));
             self.ledger.walk_var += after.walk_variance(0.0);
             self.ledger.pedestal_lever += after.hinted(0.0);
             self.begin_on(baseline);

@@ -115,7 +115,7 @@ impl Verification {
     /// Two samples that differ by more than noise tell how fast the level settles: what was left at the first is at
     /// least what it has moved by since.
     fn speed(&self, first_q16: i64, ticks: u64, level_q16: i64, derived: &Derived) -> Closed {
-        let counts = |q16: i64| math::abs(q16 as f32 * (1.0 / 65536.0));
+        let counts = |q16: i64| math::abs(math::counts(q16));
         let (left, all) = (counts(first_q16 - level_q16), counts(self.from_q16 - level_q16));
         let noise = math::sqrt(2.0 * derived.readout_var);
         if left <= 2.0 * NEAR * noise || all <= left {
@@ -132,7 +132,7 @@ impl Verification {
         let samples = i64::from(self.samples);
         let above_q16 = self.sum_q16.checked_div(samples).filter(|_| !self.failed)?;
         // What still moves by more than noise has not settled, and what it moves by is not known better.
-        let moved = math::abs((self.latest_q16 - self.settled_q16) as f32 * (1.0 / 65536.0));
+        let moved = math::abs(math::counts(self.latest_q16 - self.settled_q16));
         let unrest = (moved - 4.0 * math::sqrt(derived.readout_var)).max(0.0);
         let var = derived.readout_var / f32::from(self.samples) + unrest * unrest;
         let settled = Settled { level_q16: self.settled_q16.saturating_add(above_q16), var };
@@ -163,9 +163,8 @@ impl Verification {
         leaving.ticks = leaving.ticks.saturating_add(u64::from(seen.ticks));
         leaving.samples = leaving.samples.saturating_add(1);
         let Leaving { settled, soaked_q16, ticks, samples } = *leaving;
-        let counts = |q16: i64| q16 as f32 * (1.0 / 65536.0);
         let band = NEAR * math::sqrt(mover.sample_var + settled.var);
-        if math::abs(counts(seen.linear_q16().saturating_sub(settled.level_q16))) > band {
+        if math::abs(math::counts(seen.linear_q16().saturating_sub(settled.level_q16))) > band {
             self.leaving = None;
             return false;
         }
@@ -180,7 +179,7 @@ impl Verification {
             let doubt = 4.0 * math::sqrt(pedestal_var);
             return walked || (samples >= STEADY_SAMPLES && math::abs(pedestal) - doubt > 8.0 * band);
         }
-        let soaked = counts(seen.terms.soaked_q16.saturating_sub(soaked_q16));
+        let soaked = math::counts(seen.terms.soaked_q16.saturating_sub(soaked_q16));
         let doubt = 4.0 * math::sqrt(pedestal_var + mover.rate_var * drifting * drifting);
         let moved = math::abs(pedestal + mover.rate * drifting - soaked) - doubt;
         walked || moved > 2.0 * band

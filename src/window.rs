@@ -3,6 +3,7 @@
 use heapless::Deque;
 
 use crate::estimate::{Edge, EdgeNoise, Hint, Side, Weights, fine_step};
+use crate::math;
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
 /// Integer work only, until a line is asked for.
@@ -46,7 +47,7 @@ impl Window {
         let samples = self.above(nearest, derived).map(|(tick, above)| (tick.wrapping_sub(instant), above));
         let anchor_q16 = self.level_q16(nearest, derived);
         let hint = opened.map(|opened| Hint {
-            level: opened.level_q16.saturating_sub(anchor_q16) as f32 * (1.0 / 65536.0),
+            level: math::counts(opened.level_q16.saturating_sub(anchor_q16)),
             own_var: opened.own_var,
             shared_var: opened.pedestal_var,
             lever: opened.lever,
@@ -85,9 +86,10 @@ impl Window {
 
     /// A kept level as a whole, 2^-16 counts.
     fn level_q16(&self, level: i32, derived: &Derived) -> i64 {
-        let latest = (self.latest_q16 >> (16 - derived.fine_bits)) as i32;
-        let above = i64::from(level.wrapping_sub(latest)) << (16 - derived.fine_bits);
-        ((self.latest_q16 >> (16 - derived.fine_bits)) << (16 - derived.fine_bits)).saturating_add(above)
+        let shift = 16 - derived.fine_bits;
+        let latest = self.latest_q16 >> shift;
+        let above = i64::from(level.wrapping_sub(latest as i32));
+        (latest << shift).saturating_add(above << shift)
     }
 
     /// Oldest first.

@@ -135,8 +135,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             let mut considered = self.zeroing.considered;
             self.settle(&mut run, &mut baseline);
             if matches!(run.stage, Stage::Integrating) {
-                let terms_q16 = self.level.terms().sum_q16();
-                run.restored_q16 = run.restored_q16.saturating_add(terms_q16.saturating_sub(run.opened_terms_q16));
+                run.restore(self.level.terms().sum_q16());
                 considered.advance(self.zeroing.pending.ticks, derived);
                 considered.follow(self.level.terms(), derived);
             }
@@ -144,12 +143,12 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             self.zeroing.warm(&mut baseline, run.driven.ticks, derived);
             baseline.advance(0.0, run.flicker(derived));
             run.drift_q16 = run.drifted_q16(&baseline);
-            let at_stop = run.total(&baseline, squares(considered.run(true)), &shown, derived);
+            let at_stop = run.total(&baseline, considered.lag_variance(), &shown, derived);
             return Some(Reading::new(self.setup, &run, &at_stop, None, noise_tested));
         };
         let mut zeroing = self.zeroing;
         zeroing.finish(self.clock.tick(), self.level.terms(), stop(&self.run), derived);
-        let closing = zeroing.considered.run(false);
+        let closing = zeroing.considered.run();
         let closed_as = |shown| {
             let total = |bracket| run.closed_total(bracket, &zeroing.trend, squares(closing), shown, derived);
             zeroing.bracket.as_ref().map(total)

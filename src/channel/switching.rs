@@ -59,7 +59,7 @@ impl<Q: Integral> Channel<'_, Q> {
         self.zeroing.catch_up(self.level.terms(), derived);
         let terms_q16 = self.level.terms().sum_q16();
         if let Some(run) = self.run.as_mut() {
-            run.restored_q16 = run.restored_q16.saturating_add(terms_q16.saturating_sub(run.opened_terms_q16));
+            run.restore(terms_q16);
         }
         if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
             let sample_var = self.zeroing.shown(derived).sample_var;
@@ -84,7 +84,7 @@ impl<Q: Integral> Channel<'_, Q> {
                 self.zeroing.trend.advance(0.0, flicker);
                 run.drift_q16 = run.drifted_q16(&self.zeroing.trend);
                 self.zeroing.considered.close_run();
-                let considered = self.zeroing.considered.run(false);
+                let considered = self.zeroing.considered.run();
                 let total = |shown| run.total(&self.zeroing.trend, squares(considered), shown, derived);
                 let at_stop = total(&shown);
                 let plain_var = total(&shown.not_widened()).variance();

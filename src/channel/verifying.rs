@@ -2,6 +2,7 @@
 
 use super::Channel;
 use crate::level::Seen;
+use crate::math;
 use crate::notice::{Event, Notices, Reason};
 use crate::quantity::Integral;
 use crate::sample::Mode;
@@ -53,7 +54,7 @@ impl<Q: Integral> Channel<'_, Q> {
     /// States a change of the drift that a level which decays would show; `over`: whether the zero has ended.
     pub(super) fn tell_decay(&mut self, change: Option<RateChange>, over: bool, tick: u32, notices: &mut Notices) {
         let level = self.level.linear_q16();
-        let risen = self.zero_level_q16.map_or(0.0, |before| (level - before) as f32 * (1.0 / 65536.0));
+        let risen = self.zero_level_q16.map_or(0.0, |before| math::counts(level - before));
         if over {
             self.zero_level_q16 = Some(level);
         }

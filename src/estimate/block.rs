@@ -1,5 +1,7 @@
 //! Zero samples averaged in blocks of whole mains periods, before the filter sees them.
 
+use crate::math;
+
 /// One fine step, counts.
 pub(crate) fn fine_step(fine_bits: u8) -> f32 {
     1.0 / (1_u32 << fine_bits.min(31)) as f32
@@ -80,7 +82,7 @@ impl Block {
         let share = 1.0 / f32::from(block.count);
         let fine = fine_step(fine_bits);
         let mean = block.levels as f32 * share;
-        let (counts, part) = (block.first_q16 >> 16, (block.first_q16 & 0xFFFF) as f32 * (1.0 / 65536.0));
+        let (counts, part) = math::whole_and_rest(block.first_q16);
         let instant = block.instants as f32 * share;
         let age = block.span.saturating_sub((block.ticks as f32 * share) as u64);
         let spread = block.instant_squares as f32 - block.instants as f32 * instant;

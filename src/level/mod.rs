@@ -9,6 +9,7 @@ pub(crate) use leak::LeakLaw;
 use soakage::Soakage;
 pub(crate) use soakage::{BranchLaw, SoakageLaw};
 
+use crate::math;
 use crate::sample::{Mode, Sample};
 use crate::setup::Derived;
 
@@ -28,7 +29,7 @@ impl Terms {
     /// What one standard uncertainty of leak and of soakage has made of the level since `start`, counts.
     pub(crate) fn doubts_since(self, start: Self, derived: &Derived) -> [f32; 2] {
         let [leak_u_rel, soakage_u_rel] = derived.terms_u_rel;
-        let counts = |now: i64, then: i64| now.saturating_sub(then) as f32 * (1.0 / 65536.0);
+        let counts = |now: i64, then: i64| math::counts(now.saturating_sub(then));
         [
             counts(self.leaked_q16, start.leaked_q16) * leak_u_rel,
             counts(self.soaked_q16, start.soaked_q16) * soakage_u_rel,

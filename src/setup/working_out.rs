@@ -126,6 +126,7 @@ impl Derived {
         // Without blocks the sample period is not known: a millisecond is on the side of fewer false alarms.
         let innovation_s = if policy.zero_block_s > 0.0 { policy.zero_block_s } else { 1e-3 };
         let sigma = noise.readout_counts + QUANTISATION_RMS;
+        let readout_var = noise.readout_counts * noise.readout_counts + 1.0 / 12.0;
         let min_on_time_s = policy.settling_s + circuit.settling_time_s(span * converter.lsb_v, 0.5 * converter.lsb_v);
         let slewing_s = match circuit.slew_v_per_s {
             Some(slew) => span * converter.lsb_v / slew,
@@ -149,7 +150,7 @@ impl Derived {
         Ok(Self {
             tick_s: (1.0 / converter.tick_hz) as f32,
             integral_per_count: 1.0 / counts_per_integral,
-            readout_var: (noise.readout_counts * noise.readout_counts + 1.0 / 12.0) as f32,
+            readout_var: readout_var as f32,
             level_walk: (density * density / 2.0) as f32,
             rate_walk: (wander * wander) as f32,
             flicker: (flicker * flicker) as f32,
@@ -185,7 +186,7 @@ impl Derived {
             leak_per_s: (leak_per_tick * converter.tick_hz) as f32,
             coarse_shift: if leak.is_some() { Some(coarse_shift) } else { None },
             linearity_var: (converter.linearity_u_counts * converter.linearity_u_counts) as f32,
-            leak_walk: ((noise.readout_counts * noise.readout_counts + 1.0 / 12.0) * coarse_tick * coarse_tick) as f32,
+            leak_walk: (readout_var * coarse_tick * coarse_tick) as f32,
             terms_u_rel: [circuit.leak_u_rel as f32, circuit.soakage_u_rel as f32],
             gain_var_rel: (circuit.gain_u_rel * circuit.gain_u_rel + converter.lsb_u_rel * converter.lsb_u_rel) as f32,
             droop_limit: droop_limit as f32,

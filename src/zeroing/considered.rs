@@ -83,9 +83,9 @@ impl Considered {
         }
     }
 
-    /// Of the run that goes on or, since [`close_run`](Self::close_run), has stopped, counts.
-    pub(crate) fn run(&self, going_on: bool) -> [f32; FIGURES] {
-        if going_on { self.level } else { self.run }
+    /// Of the run that has stopped, counts.
+    pub(crate) fn run(&self) -> [f32; FIGURES] {
+        self.run
     }
 
     /// Of the drift, counts/s.
@@ -93,7 +93,7 @@ impl Considered {
         self.rate
     }
 
-    /// How much farther off than noise a sample may lie, as a variance, counts^2.
+    /// How much farther off than noise a sample may lie, as a variance, counts^2; in a run, that of its movement.
     pub(crate) fn lag_variance(&self) -> f32 {
         squares(self.level)
     }

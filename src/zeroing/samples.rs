@@ -66,7 +66,7 @@ impl Zeroing {
             return None;
         }
         let per_s = 1.0 / math::seconds(ticks, derived.tick_s);
-        let moved = level_q16.saturating_sub(self.found_q16) as f32 * (1.0 / 65536.0);
+        let moved = math::counts(level_q16.saturating_sub(self.found_q16));
         let off_var = (var + self.found_var) * per_s * per_s + rate_var;
         Some(RateChange { off: moved * per_s - rate, off_var, share: 1.0 })
     }
