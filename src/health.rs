@@ -7,9 +7,20 @@ use crate::setup::Derived;
 pub(crate) struct Health {
     last: Option<i32>,
     repeats: u16,
-    /// How far the worst-case input moves the level in so many ticks: samples mostly come at one pace.
-    pace: u32,
-    movement: i64,
+    calm: Calm,
+}
+
+/// What needs no further look: most samples, and a few comparisons tell.
+#[derive(Clone, Copy, Debug, Default)]
+struct Calm {
+    /// Shortest and longest step, ticks: samples mostly come at one pace.
+    ticks: (u32, u32),
+    /// Lowest and highest code from which the worst-case input reaches no rail in such a step.
+    codes: (i32, i32),
+    /// Largest change of the code that such a step explains.
+    reach: u32,
+    /// So many equal readings in a row are not frozen yet.
+    repeats: u16,
 }
 
 impl Health {
@@ -24,24 +35,56 @@ impl Health {
         self.last = Some(counts);
     }
 
+    /// The latest reading.
+    pub(crate) fn last(&self) -> Option<i32> {
+        self.last
+    }
+
     /// Whether the readings are frozen. Never so on a channel too quiet to tell.
     pub(crate) fn frozen(&self, derived: &Derived) -> bool {
         derived.frozen_samples > 0 && self.repeats >= derived.frozen_samples
     }
 
-    /// Largest movement of the level in `ticks` at the worst-case input, counts.
-    pub(crate) fn worst_movement(&mut self, ticks: u32, derived: &Derived) -> i64 {
-        if ticks != self.pace {
-            self.pace = ticks;
-            self.movement = derived.worst_movement(ticks);
+    /// Whether nothing could be said of a sample: a step of the usual length, by no more than there may be in it, to a
+    /// code far enough from the rails.
+    pub(crate) fn is_calm(&self, counts: i32, ticks: u32) -> bool {
+        let Calm { ticks: (shortest, longest), codes: (low, high), reach, repeats } = self.calm;
+        (shortest..=longest).contains(&ticks)
+            && (low..=high).contains(&counts)
+            && self.last.is_some_and(|last| counts.abs_diff(last) <= reach)
+            && self.repeats < repeats
+    }
+
+    /// Takes steps of about `ticks` for the usual ones.
+    pub(crate) fn expect(&mut self, ticks: u32, derived: &Derived) {
+        let (shortest, longest) = self.calm.ticks;
+        if (shortest..=longest).contains(&ticks) {
+            return;
         }
-        self.movement
+        let play = ticks >> 4;
+        let (shortest, longest) = (ticks - play, ticks.saturating_add(play).min(derived.gap_limit_ticks));
+        let guard = match derived.worst_rate_q16 {
+            0 => 0,
+            _ => derived.worst_movement(longest).saturating_add(i64::from(derived.guard_counts)).saturating_add(1),
+        };
+        let guard = guard.clamp(0, i64::from(i32::MAX)) as i32;
+        let (low, high) = derived.usable;
+        self.calm = Calm {
+            ticks: (shortest, longest),
+            codes: (low.saturating_add(guard), high.saturating_sub(guard)),
+            reach: Self::reach(shortest, derived).min(i64::from(u32::MAX)) as u32,
+            repeats: derived.frozen_samples.wrapping_sub(1),
+        };
+    }
+
+    /// Largest change of the code in `ticks` by the worst-case input and the noise, not negative.
+    fn reach(ticks: u32, derived: &Derived) -> i64 {
+        derived.worst_movement(ticks).saturating_add(i64::from(derived.step_counts)).max(0)
     }
 
     /// Whether the level moved to `counts` by more in `ticks` than the worst-case input and the noise can move it.
-    pub(crate) fn jumped(&mut self, counts: i32, ticks: u32, derived: &Derived) -> bool {
-        let reach = self.worst_movement(ticks, derived).saturating_add(i64::from(derived.step_counts));
-        self.last.is_some_and(|last| i64::from(counts).abs_diff(i64::from(last)) > reach.unsigned_abs())
+    pub(crate) fn jumped(&self, counts: i32, ticks: u32, derived: &Derived) -> bool {
+        self.last.is_some_and(|last| i64::from(counts.abs_diff(last)) > Self::reach(ticks, derived))
     }
 
     /// Whether a level lies outside a window of codes.

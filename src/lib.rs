@@ -17,6 +17,7 @@ mod ledger;
 mod level;
 mod math;
 mod notice;
+mod notices;
 mod quantity;
 mod reading;
 mod run;
@@ -31,7 +32,8 @@ mod zeroing;
 
 pub use channel::Channel;
 pub use error::SetupError;
-pub use notice::{Event, Notice, Notices, Reason, Reasons, Trust};
+pub use notice::{Event, Notice, Reason, Reasons, Trust};
+pub use notices::Notices;
 pub use quantity::{Charge, Current, Flux, Integral, Measured, RadiantExposure, Temperature, Voltage, VoltageRate};
 pub use reading::{Budget, Estimate, Reading};
 pub use sample::{Mode, Sample, Step};

@@ -209,32 +209,3 @@ pub enum Trust {
     /// The value means nothing. By any other reason.
     Invalid,
 }
-
-/// The notices of one step, oldest first; never more than 16.
-#[derive(Clone, Debug, Default)]
-pub struct Notices(heapless::Vec<Notice, 16>);
-
-impl Notices {
-    /// The notices, oldest first.
-    pub fn iter(&self) -> impl Iterator<Item = &Notice> {
-        self.0.iter()
-    }
-
-    /// Whether there are none.
-    pub fn is_empty(&self) -> bool {
-        self.0.is_empty()
-    }
-
-    pub(crate) fn push(&mut self, tick: u32, event: Event) {
-        // Leaving a zero for a run, or a run for a zero, and all that a sample can show besides: the seventeenth cannot
-        // come.
-        let _ = self.0.push(Notice { tick, event });
-    }
-}
-
-#[cfg(feature = "defmt")]
-impl defmt::Format for Notices {
-    fn format(&self, f: defmt::Formatter<'_>) {
-        defmt::write!(f, "{}", self.0.as_slice());
-    }
-}

@@ -150,8 +150,19 @@ impl Run {
         self.start_var = baseline.level_variance();
     }
 
-    /// Books what leak and soakage, `terms_q16` now, took since the segment opened.
-    pub(crate) fn restore(&mut self, terms_q16: i64) {
+    /// The latest sample, if there is one: its tick and level.
+    pub(crate) fn see(&mut self, latest: Option<(u32, i64)>) {
+        if let Some((tick, level_q16)) = latest {
+            self.end_tick = tick;
+            self.last_q16 = level_q16;
+        }
+    }
+
+    /// Books a segment up to its latest sample: the time that `passed`, and what leak and soakage, `terms_q16` now,
+    /// took since it opened.
+    pub(crate) fn book(&mut self, latest: Option<(u32, i64)>, passed: Span, terms_q16: i64) {
+        self.see(latest);
+        self.driven.join(passed);
         self.restored_q16 = self.restored_q16.saturating_add(terms_q16.saturating_sub(self.opened_terms_q16));
     }
 

@@ -1,6 +1,6 @@
 //! What goes into a channel and what comes out of each step.
 
-use crate::notice::Notices;
+use crate::notices::Notices;
 use crate::quantity::Temperature;
 
 /// What the switches connect.

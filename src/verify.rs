@@ -195,6 +195,11 @@ impl Verification {
         self.latched
     }
 
+    /// Whether there is nothing to watch and nothing to ask for.
+    pub(crate) fn is_idle(&self) -> bool {
+        !self.is_watching() && !self.wants_retry()
+    }
+
     /// Whether another reset should be tried.
     pub(crate) fn wants_retry(&self) -> bool {
         self.failed && !self.latched

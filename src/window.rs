@@ -35,6 +35,16 @@ impl Window {
         self.seen == derived.edge_samples
     }
 
+    /// Tick and level, 2^-16 counts, of the latest sample of the segment.
+    pub(crate) fn latest(&self) -> Option<(u32, i64)> {
+        self.samples.back().map(|&(tick, _)| (tick, self.latest_q16))
+    }
+
+    /// Whether the segment has filled a window.
+    pub(crate) fn is_full(&self, derived: &Derived) -> bool {
+        self.seen >= derived.edge_samples
+    }
+
     /// The line just after the switch opened at `instant`, when the level was as `opened` says, if it is known.
     pub(crate) fn after(
         &self,

@@ -3,7 +3,8 @@
 use super::Channel;
 use crate::decide;
 use crate::health::Health;
-use crate::notice::{Event, Notices, Reason};
+use crate::notice::{Event, Reason};
+use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::run::{Run, Stage};
 use crate::sample::{Mode, Sample};
@@ -11,7 +12,7 @@ use crate::sample::{Mode, Sample};
 impl<Q: Integral> Channel<'_, Q> {
     /// Whether the level moved since the sample before by more than the input can move it. Within a zero the spread of
     /// the samples tells more; through a reset or hold nothing is expected.
-    pub(super) fn has_jumped(&mut self, sample: Sample, ticks: u32) -> bool {
+    pub(super) fn has_jumped(&self, sample: &Sample, ticks: u32) -> bool {
         let watched = matches!(
             (self.mode, sample.mode),
             (Some(Mode::Zero | Mode::Integrate), Mode::Integrate) | (Some(Mode::Integrate), Mode::Zero)
@@ -20,6 +21,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// A long silence: a run may have missed anything; a zero finds its level again, and is none the worse.
+    #[inline(never)]
     pub(super) fn gap(&mut self, was_running: bool, tick: u32, notices: &mut Notices) {
         if was_running || self.is_running() {
             self.mark_run(Reason::Gap, tick, notices);
@@ -29,7 +31,11 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// The counter began anew: nobody knows how much time passed.
+    #[inline(never)]
     pub(super) fn lose_time(&mut self, tick: u32, notices: &mut Notices) {
+        if let Some(run) = self.run.as_mut() {
+            run.see(self.window.latest());
+        }
         self.window.clear();
         self.gap(false, tick, notices);
     }
@@ -50,6 +56,7 @@ impl<Q: Integral> Channel<'_, Q> {
 
     /// Books a fault with the run that it concerns and states it if it is new. What happens in a zero concerns the run
     /// after it, and the run before it unless that was closed already without the samples in question.
+    #[inline(never)]
     pub(super) fn fault(&mut self, reason: Reason, tick: u32, notices: &mut Notices) {
         let running = self.is_running();
         let left_out = reason == Reason::AtRail && self.zeroing.bracket.is_some();
@@ -67,19 +74,20 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// Readings that stand still. At an end code they rightly do, and that is a fault of its own.
-    pub(super) fn watch(&mut self, sample: Sample, notices: &mut Notices) {
+    pub(super) fn watch(&mut self, sample: &Sample, notices: &mut Notices) {
         let derived = self.setup.derived();
         if self.health.frozen(derived) && !Health::at_rail(sample.counts, derived) {
             self.fault(Reason::Frozen, sample.tick, notices);
         }
     }
 
-    pub(super) fn advise(&mut self, sample: Sample, ticks: u32, notices: &mut Notices) -> Option<Mode> {
+    #[inline(never)]
+    pub(super) fn advise(&mut self, sample: &Sample, ticks: u32, notices: &mut Notices) -> Option<Mode> {
         if sample.mode == Mode::Reset || self.verification.is_latched() {
             return None;
         }
         let derived = self.setup.derived();
-        let due = decide::reset::due(sample.counts, self.health.worst_movement(ticks, derived), derived);
+        let due = decide::reset::due(sample.counts, derived.worst_movement(ticks), derived);
         if !due && !self.verification.wants_retry() {
             return None;
         }

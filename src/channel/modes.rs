@@ -1,63 +1,60 @@
 //! What a sample does in each mode.
 
+use super::steady::is_out_of_range;
 use super::{Channel, stop};
 use crate::health::Health;
 use crate::level::Seen;
-use crate::notice::{Event, Notices, Reason};
+use crate::notice::{Event, Reason};
+use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::run::Crossing;
 use crate::sample::Sample;
 use crate::zeroing::Taken;
 
-/// Past this the books of a run may saturate: 2^46 counts.
-const LEVEL_END_Q16: u64 = 1 << 62;
-
 impl<Q: Integral> Channel<'_, Q> {
-    pub(super) fn zero(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
+    #[inline(never)]
+    pub(super) fn zero(&mut self, sample: &Sample, seen: &Seen, notices: &mut Notices) {
         let derived = self.setup.derived();
-        self.zero_temperature = sample.temperature.or(self.zero_temperature);
         if Health::at_rail(sample.counts, derived) {
             self.zeroing.skip(seen.ticks, derived);
             self.fault(Reason::AtRail, sample.tick, notices);
             return;
         }
-        match self.zeroing.take(seen, stop(&self.run), derived) {
+        let taken = self.zeroing.take(seen, stop(&self.run), derived);
+        self.tell_zero(taken, seen, notices);
+    }
+
+    /// States what came of a zero sample.
+    #[inline(never)]
+    pub(super) fn tell_zero(&mut self, taken: Taken, seen: &Seen, notices: &mut Notices) {
+        match taken {
             Taken::Used => {}
             Taken::Spike => {
                 if let Some(run) = self.run.as_mut() {
                     run.spikes = run.spikes.saturating_add(1);
                 }
-                notices.push(sample.tick, Event::Spike);
+                notices.push(seen.tick, Event::Spike);
             }
             Taken::Onset { since, contradicts_run, change } => {
-                self.tell_decay(change, false, sample.tick, notices);
+                self.tell_decay(change, seen.linear_q16(), seen.tick, notices);
                 notices.push(since, Event::InputInZero);
                 if contradicts_run && let Some(run) = self.run.as_mut() {
                     run.reasons.insert(Reason::InputInZero);
                 }
                 if self.zero_reasons.insert(Reason::InputInZero) {
-                    notices.push(sample.tick, Event::Fault(Reason::InputInZero));
+                    notices.push(seen.tick, Event::Fault(Reason::InputInZero));
                 }
             }
         }
     }
 
-    pub(super) fn integrate(&mut self, sample: Sample, seen: &Seen, notices: &mut Notices) {
-        let derived = self.setup.derived();
-        self.zeroing.pending.add(seen.ticks, derived.coarse_shift);
-        self.zeroing.drive(seen.ticks);
-        let filled = self.window.push(seen.tick, seen.level_q16, derived);
-        let Some(run) = self.run.as_mut() else { return };
-        run.driven.add(seen.ticks, derived.coarse_shift);
-        run.end_tick = seen.tick;
-        run.last_q16 = seen.level_q16;
-        if let (Some(now), Some(then)) = (sample.temperature, self.zero_temperature) {
-            run.warming = Some(now.since(then));
-        }
-        if Health::at_rail(sample.counts, derived) {
+    #[inline(never)]
+    pub(super) fn integrate(&mut self, sample: &Sample, seen: &Seen, notices: &mut Notices) {
+        let filled = self.extend(seen);
+        if Health::at_rail(sample.counts, self.setup.derived()) {
             self.fault(Reason::AtRail, sample.tick, notices);
         }
-        if seen.level_q16.unsigned_abs() > LEVEL_END_Q16 {
+        if is_out_of_range(seen) {
             self.fault(Reason::OutOfRange, sample.tick, notices);
         }
         if filled {
@@ -65,7 +62,8 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
-    pub(super) fn hold(&mut self, sample: Sample, seen: &Seen) {
+    #[inline(never)]
+    pub(super) fn hold(&mut self, sample: &Sample, seen: &Seen) {
         let derived = self.setup.derived();
         if Health::at_rail(sample.counts, derived) {
             self.droop.forget_level();
@@ -79,6 +77,7 @@ impl<Q: Integral> Channel<'_, Q> {
         });
     }
 
+    #[inline(never)]
     pub(super) fn reset(&mut self, seen: &Seen, notices: &mut Notices) {
         if !self.run.and_then(|run| run.crossing).is_some_and(|crossing| crossing.input_open) {
             self.zeroing.drive(seen.ticks);

@@ -4,7 +4,8 @@ use super::{Channel, stop};
 use crate::clock::Span;
 use crate::ledger::Bridged;
 use crate::math;
-use crate::notice::{Event, Notices, Reason, Reasons};
+use crate::notice::{Event, Reason, Reasons};
+use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::run::{Crossing, Run, Stage};
 use crate::sample::Mode;
@@ -34,10 +35,13 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// The zero has told what it could.
+    #[inline(never)]
     fn leave_zero(&mut self, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         let change = self.zeroing.leave(tick, self.level.terms(), stop(&self.run), derived);
-        self.tell_decay(change, true, tick, notices);
+        let level_q16 = self.linear_q16();
+        self.tell_decay(change, level_q16, tick, notices);
+        self.zero_level_q16 = Some(level_q16);
         if let Some((stated_centicounts, observed_centicounts)) = self.zeroing.readout_centicounts(derived) {
             notices.push(tick, Event::ReadoutNoise { stated_centicounts, observed_centicounts });
         }
@@ -53,14 +57,14 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// Brings the baseline up to `tick`; if the run may go on, draws the line before the interruption.
+    #[inline(never)]
     fn leave_integrate(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.settle_for_good(tick, notices);
-        self.zeroing.catch_up(self.level.terms(), derived);
-        let terms_q16 = self.level.terms().sum_q16();
         if let Some(run) = self.run.as_mut() {
-            run.restore(terms_q16);
+            run.book(self.window.latest(), self.zeroing.pending, self.level.terms().sum_q16());
         }
+        self.zeroing.catch_up(self.level.terms(), derived);
         if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
             let sample_var = self.zeroing.shown(derived).sample_var;
             let before = self.window.before(tick, run.opening.as_ref(), sample_var, derived);
@@ -70,6 +74,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// Stops a running run. The level is to be found anew whenever another mode came between.
+    #[inline(never)]
     fn enter_zero(&mut self, notices: &mut Notices) {
         let derived = self.setup.derived();
         let shown = self.zeroing.shown(derived);
@@ -106,6 +111,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// Goes on with an interrupted run, or starts one.
+    #[inline(never)]
     fn enter_integrate(&mut self, tick: u32, settled: Option<Settled>, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.window.clear();
@@ -153,8 +159,9 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
+    #[inline(never)]
     fn enter_reset(&mut self, tick: u32, notices: &mut Notices) {
-        self.verification.close(self.level.linear_q16());
+        self.verification.close(self.linear_q16());
         self.reset_advised = false;
         if let Some(run) = self.run.as_mut().filter(|run| run.is_running()) {
             if let Some(crossing) = run.crossing.as_mut() {
@@ -164,11 +171,17 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
+    /// The latest level as a straight converter would have seen it, 2^-16 counts; 0 before the first sample.
+    fn linear_q16(&self) -> i64 {
+        self.health.last().map_or(0, |counts| self.setup.derived().linear_q16(counts))
+    }
+
     /// Closes an open crossing of `run` with the samples at hand; `None` if there is none, or no sample yet. The second
     /// value tells whether the reset had arrived.
     pub(super) fn settle(&self, run: &mut Run, baseline: &mut crate::estimate::Trend) -> Option<(Bridged, bool)> {
         let derived = self.setup.derived();
         let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
+        run.see(self.window.latest());
         let sample_var = self.zeroing.shown(derived).sample_var;
         let after = self.window.after(run.opened_tick, run.opened(derived), sample_var, derived)?;
         let opened_q16 = after.anchor_q16.saturating_sub(run.opened_terms_q16);
@@ -183,6 +196,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// The same, for good: with notices of what is wrong with it.
+    #[inline(never)]
     pub(super) fn settle_for_good(&mut self, tick: u32, notices: &mut Notices) {
         let Some(mut run) = self.run else { return };
         let mut baseline = self.zeroing.trend;

@@ -3,7 +3,8 @@
 use super::Channel;
 use crate::level::Seen;
 use crate::math;
-use crate::notice::{Event, Notices, Reason};
+use crate::notice::{Event, Reason};
+use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::sample::Mode;
 use crate::verify::{Closed, Mover};
@@ -51,13 +52,9 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
-    /// States a change of the drift that a level which decays would show; `over`: whether the zero has ended.
-    pub(super) fn tell_decay(&mut self, change: Option<RateChange>, over: bool, tick: u32, notices: &mut Notices) {
-        let level = self.level.linear_q16();
-        let risen = self.zero_level_q16.map_or(0.0, |before| math::counts(level - before));
-        if over {
-            self.zero_level_q16 = Some(level);
-        }
+    /// States a change of the drift that a level which decays would show, now at `level_q16` (2^-16 counts).
+    pub(super) fn tell_decay(&self, change: Option<RateChange>, level_q16: i64, tick: u32, notices: &mut Notices) {
+        let risen = self.zero_level_q16.map_or(0.0, |before| math::counts(level_q16 - before));
         if let Some(time_constant_s) = change.and_then(|change| change.decay_s(risen)) {
             notices.push(tick, Event::Decay { time_constant_s });
         }

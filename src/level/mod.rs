@@ -63,7 +63,6 @@ pub(crate) struct Level {
     leak: Leak,
     soakage: Soakage,
     terms: Terms,
-    linear_q16: i64,
 }
 
 impl Level {
@@ -71,19 +70,19 @@ impl Level {
     /// sees the reset level.
     ///
     /// The first sample finds the dielectric at rest.
-    pub(crate) fn take(&mut self, sample: Sample, ticks: u32, derived: &Derived) -> Seen {
-        let closed = sample.mode == Mode::Reset;
+    pub(crate) fn take(&mut self, sample: &Sample, ticks: u32, derived: &Derived) -> Seen {
         let linear_q16 = derived.linear_q16(sample.counts);
-        if derived.leak.is_some() || derived.soakage.is_some() {
-            let above = if closed { 0 } else { derived.above_reset(linear_q16) };
-            self.pass(above, ticks, closed, derived);
+        let mut seen = Seen { tick: sample.tick, ticks, level_q16: linear_q16, terms: self.terms };
+        if !derived.keeps_level {
+            self.pass(sample.mode == Mode::Reset, &mut seen, derived);
         }
-        self.linear_q16 = linear_q16;
-        let level_q16 = linear_q16.saturating_add(self.terms.sum_q16());
-        Seen { tick: sample.tick, ticks, level_q16, terms: self.terms }
+        seen
     }
 
-    fn pass(&mut self, above: i32, ticks: u32, closed: bool, derived: &Derived) {
+    /// A level that leaks or soaks has seen another sample.
+    #[inline(never)]
+    fn pass(&mut self, closed: bool, seen: &mut Seen, derived: &Derived) {
+        let above = if closed { 0 } else { derived.above_reset(seen.level_q16) };
         // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.
         let from = match self.above.replace(above) {
             None => {
@@ -94,13 +93,15 @@ impl Level {
             Some(from) => from,
         };
         if let Some(law) = derived.leak.as_ref().filter(|_| !closed) {
-            self.leak.take(from, above, ticks, law);
+            self.leak.take(from, above, seen.ticks, law);
             self.terms.leaked_q16 = self.leak.q16(law);
         }
         if let Some(law) = derived.soakage.as_ref() {
-            self.soakage.take(from, above, ticks, law);
+            self.soakage.take(from, above, seen.ticks, law);
             self.terms.soaked_q16 = self.soakage.q16(law);
         }
+        seen.terms = self.terms;
+        seen.level_q16 = seen.level_q16.saturating_add(self.terms.sum_q16());
     }
 
     /// Puts the zero of what has leaked near the present, and gives by how much, counts: only differences of the
@@ -109,11 +110,6 @@ impl Level {
         let moved = self.leak.rebase();
         self.terms.leaked_q16 = self.terms.leaked_q16.saturating_sub(moved.saturating_mul(1 << 16));
         moved
-    }
-
-    /// The latest level as a straight converter would have seen it, 2^-16 counts; 0 before the first sample.
-    pub(crate) fn linear_q16(&self) -> i64 {
-        self.linear_q16
     }
 
     /// Leak and soakage as of the latest sample.

@@ -23,10 +23,25 @@ pub(crate) enum WarmthLaw {
     },
 }
 
-/// The set-up in counts, seconds and ticks.
+/// The set-up in counts, seconds and ticks; what every sample needs first.
+#[repr(C)]
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub(crate) struct Derived {
+    /// Whether nothing leaks or soaks.
+    pub(crate) keeps_level: bool,
+    /// Coarse ticks, in which steps are squared: 2^18 to 2^19 a second or the counter's own; `None` without a leak.
+    pub(crate) coarse_shift: Option<u8>,
+    /// Bits of a fraction of a count with which samples are kept: as many as 32 bits have to spare for the converter's
+    /// span, at most 8.
+    pub(crate) fine_bits: u8,
+    /// Samples in the fits beside a reset.
+    pub(crate) edge_samples: u8,
+    pub(super) linearity: Option<&'static Linearity>,
+    /// Lowest and highest code that is neither an end code nor past a rail.
+    pub(crate) usable: (i32, i32),
+    /// Length of a block of zero samples, ticks; 0: each sample by itself.
+    pub(crate) block_ticks: u32,
     /// Seconds per tick.
     pub(crate) tick_s: f32,
     /// Integral of the input per count of output movement, C or V s, with its sign.
@@ -45,8 +60,6 @@ pub(crate) struct Derived {
     pub(crate) rate_prior_var: f32,
     /// How the drift follows the temperature.
     pub(crate) warmth: WarmthLaw,
-    /// Lowest and highest code that is neither an end code nor past a rail.
-    pub(crate) usable: (i32, i32),
     /// Where the level must be while the reset switch is closed.
     pub(crate) reset_window: (i32, i32),
     /// Where the level must be when the switch has opened: moved by the pedestal.
@@ -77,28 +90,18 @@ pub(crate) struct Derived {
     pub(crate) step_counts: i32,
     /// Whether the noise is enough to make rounding errors of different samples independent.
     pub(crate) dithered: bool,
-    /// Length of a block of zero samples, ticks; 0: each sample by itself.
-    pub(crate) block_ticks: u32,
     /// Where the cumulative sums of a zero's innovations alarm, standard deviations.
     pub(crate) onset_threshold: f32,
     /// Equal readings in a row that are a fault; 0: not watched.
     pub(crate) frozen_samples: u16,
     /// Variance of half the level's second derivative, (counts/s^2)^2; `None`: unknown.
     pub(crate) bend_var: Option<f32>,
-    /// Samples in the fits beside a reset.
-    pub(crate) edge_samples: u8,
-    /// Bits of a fraction of a count with which samples are kept: as many as 32 bits have to spare for the converter's
-    /// span, at most 8.
-    pub(crate) fine_bits: u8,
-    pub(super) linearity: Option<&'static Linearity>,
     /// Reset level, 2^-16 counts.
     pub(super) reset_q16: i64,
     pub(crate) leak: Option<LeakLaw>,
     pub(crate) soakage: Option<SoakageLaw>,
     /// One over the leak's time constant, 1/s; 0: no leak.
     pub(crate) leak_per_s: f32,
-    /// Coarse ticks, in which steps are squared: 2^18 to 2^19 a second or the counter's own; `None` without a leak.
-    pub(crate) coarse_shift: Option<u8>,
     /// Variance that the readout noise of one sample adds to the effective level through the leak, counts^2 per squared
     /// coarse tick.
     pub(crate) leak_walk: f32,

@@ -39,14 +39,15 @@ use crate::quantity::Integral;
 /// );
 /// assert_eq!(LAMP_MONITOR.circuit().capacitance_f, 470e-9);
 /// ```
+#[repr(C)]
 #[derive(Clone, Copy, Debug, PartialEq)]
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Setup<Q> {
+    derived: Derived,
     circuit: Circuit,
     converter: Converter,
     noise: Noise,
     policy: Policy,
-    derived: Derived,
     measures: PhantomData<Q>,
 }
 

@@ -148,6 +148,7 @@ impl Derived {
             None => None,
         };
         Ok(Self {
+            keeps_level: leak.is_none() && soakage.is_none(),
             tick_s: (1.0 / converter.tick_hz) as f32,
             integral_per_count: 1.0 / counts_per_integral,
             readout_var: readout_var as f32,

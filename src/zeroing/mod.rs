@@ -18,7 +18,7 @@ use crate::estimate::{Block, Bracket, Cusum, Trend, Walk};
 use crate::level::Terms;
 use crate::math;
 use crate::quantity::Temperature;
-use crate::setup::{Derived, QUANTISATION_VAR};
+use crate::setup::{Derived, QUANTISATION_VAR, WarmthLaw};
 
 /// How the run before stopped, for its bracket.
 #[derive(Clone, Copy, Debug)]
@@ -259,9 +259,11 @@ impl Zeroing {
         self.considered.follow(terms, derived);
     }
 
-    /// Takes the board's temperature, if it is measured.
-    pub(crate) fn take_temperature(&mut self, temperature: Option<Temperature>, derived: &Derived) {
-        self.warmth.take(temperature, derived);
+    /// Takes the board's temperature.
+    pub(crate) fn take_temperature(&mut self, temperature: Temperature, derived: &Derived) {
+        if derived.warmth != WarmthLaw::Unknown {
+            self.warmth.take(temperature, derived);
+        }
     }
 
     /// Time of a run in which the baseline drifts, whatever the temperature.

@@ -33,11 +33,8 @@ impl Warmth {
     }
 
     /// Takes the temperature of a sample.
-    pub(super) fn take(&mut self, temperature: Option<Temperature>, derived: &Derived) {
-        let Some(temperature) = temperature else { return };
-        if derived.warmth == WarmthLaw::Unknown {
-            return;
-        }
+    #[inline(never)]
+    pub(super) fn take(&mut self, temperature: Temperature, derived: &Derived) {
         if self.temperature != Some(temperature) {
             self.temperature = Some(temperature);
             self.latest = heat(temperature, &derived.warmth);

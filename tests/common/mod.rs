@@ -71,7 +71,7 @@ pub(crate) fn answer_with_notices<Q: Plain>(setup: &Setup<Q>, record: &Record) -
     let mut at_stop = None;
     let mut drift_opening = None;
     for (index, &sample) in record.samples.iter().enumerate() {
-        notices.extend(channel.feed(sample).notices.iter().map(|&notice| (index, notice)));
+        notices.extend(channel.feed(sample).notices.iter().map(|notice| (index, notice)));
         if index == record.opening_end {
             drift_opening = Some(channel.drift());
         }
