@@ -62,6 +62,9 @@ pub(crate) struct Clock {
     onward: u8,
 }
 
+/// Longer steps are taken for a counter that ran backwards.
+pub(crate) const LONGEST_STEP: u32 = 0x7FFF_FFFF;
+
 /// Ticks in a row that go forward from one that was out of order: the counter has been restarted.
 const RESTART_TICKS: u8 = 3;
 
@@ -85,10 +88,20 @@ impl Clock {
 
     /// Takes a tick that is out of order; `true` if it and those before it make a counter that runs.
     fn stray(&mut self, tick: u32) -> bool {
-        let forward = matches!(tick.wrapping_sub(self.astray), 1..=0x7FFF_FFFF);
+        let forward = matches!(tick.wrapping_sub(self.astray), 1..=LONGEST_STEP);
         self.onward = if forward || self.onward == 0 { self.onward.saturating_add(1) } else { 1 };
         self.astray = tick;
         self.onward > RESTART_TICKS
+    }
+
+    /// Ticks from the latest tick to this one, if the counter has run forward.
+    pub(crate) fn ticks_to(&self, tick: u32) -> u32 {
+        tick.wrapping_sub(self.tick())
+    }
+
+    /// Takes a tick that is known to lie within reach, after one that was in order.
+    pub(crate) fn pass(&mut self, tick: u32) {
+        self.last = Some(tick);
     }
 
     /// The latest tick; 0 before the first.

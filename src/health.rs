@@ -1,11 +1,13 @@
 //! Faults that a single sample or a pair of samples shows.
 
+use crate::clock::LONGEST_STEP;
 use crate::setup::Derived;
 
 /// Watches for readings that stand still; everything else it decides from the sample before it.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Health {
-    last: Option<i32>,
+    /// The latest reading, and how often in a row it came; 0: never.
+    last: i32,
     repeats: u16,
     calm: Calm,
 }
@@ -13,11 +15,14 @@ pub(crate) struct Health {
 /// What needs no further look: most samples, and a few comparisons tell.
 #[derive(Clone, Copy, Debug, Default)]
 struct Calm {
-    /// Shortest and longest step, ticks: samples mostly come at one pace.
-    ticks: (u32, u32),
-    /// Lowest and highest code from which the worst-case input reaches no rail in such a step.
-    codes: (i32, i32),
-    /// Largest change of the code that such a step explains.
+    /// The shortest step, and by how much the longest is longer, ticks: samples mostly come at one pace.
+    shortest: u32,
+    play: u32,
+    /// The lowest code from which the worst-case input reaches no rail in such a step, and by how much the highest is
+    /// higher.
+    low: i32,
+    width: u32,
+    /// Largest change of the code that such a step explains; below 2^31.
     reach: u32,
     /// So many equal readings in a row are not frozen yet.
     repeats: u16,
@@ -31,13 +36,13 @@ impl Health {
 
     /// Takes a sample.
     pub(crate) fn take(&mut self, counts: i32) {
-        self.repeats = if self.last == Some(counts) { self.repeats.saturating_add(1) } else { 1 };
-        self.last = Some(counts);
+        self.repeats = if self.last == counts { self.repeats.saturating_add(1) } else { 1 };
+        self.last = counts;
     }
 
-    /// The latest reading.
+    /// The latest reading; `None` before the first.
     pub(crate) fn last(&self) -> Option<i32> {
-        self.last
+        (self.repeats > 0).then_some(self.last)
     }
 
     /// Whether the readings are frozen. Never so on a channel too quiet to tell.
@@ -48,31 +53,36 @@ impl Health {
     /// Whether nothing could be said of a sample: a step of the usual length, by no more than there may be in it, to a
     /// code far enough from the rails.
     pub(crate) fn is_calm(&self, counts: i32, ticks: u32) -> bool {
-        let Calm { ticks: (shortest, longest), codes: (low, high), reach, repeats } = self.calm;
-        (shortest..=longest).contains(&ticks)
-            && (low..=high).contains(&counts)
-            && self.last.is_some_and(|last| counts.abs_diff(last) <= reach)
+        let Calm { shortest, play, low, width, reach, repeats } = self.calm;
+        // Each comparison is of a range: what is below its beginning wraps to far above its end.
+        let change = counts.wrapping_sub(self.last).cast_unsigned();
+        ticks.wrapping_sub(shortest) <= play
+            && counts.wrapping_sub(low).cast_unsigned() <= width
+            && change.wrapping_add(reach) <= 2 * reach
             && self.repeats < repeats
     }
 
     /// Takes steps of about `ticks` for the usual ones.
     pub(crate) fn expect(&mut self, ticks: u32, derived: &Derived) {
-        let (shortest, longest) = self.calm.ticks;
-        if (shortest..=longest).contains(&ticks) {
+        if ticks == 0 || ticks.wrapping_sub(self.calm.shortest) <= self.calm.play {
             return;
         }
-        let play = ticks >> 4;
-        let (shortest, longest) = (ticks - play, ticks.saturating_add(play).min(derived.gap_limit_ticks));
+        let shortest = ticks - (ticks >> 4);
+        let longest = ticks.saturating_add(ticks >> 4).min(derived.gap_limit_ticks).min(LONGEST_STEP);
         let guard = match derived.worst_rate_q16 {
             0 => 0,
             _ => derived.worst_movement(longest).saturating_add(i64::from(derived.guard_counts)).saturating_add(1),
         };
-        let guard = guard.clamp(0, i64::from(i32::MAX)) as i32;
-        let (low, high) = derived.usable;
+        let guard = guard.clamp(0, 1 << 30) as i32;
+        let (low, high) = (derived.usable.0 + guard, derived.usable.1 - guard);
+        // In a gap, or where every code is within reach of a rail, nothing is calm: of no length, no step is.
+        let calm = shortest <= longest && low <= high;
         self.calm = Calm {
-            ticks: (shortest, longest),
-            codes: (low.saturating_add(guard), high.saturating_sub(guard)),
-            reach: Self::reach(shortest, derived).min(i64::from(u32::MAX)) as u32,
+            shortest: if calm { shortest } else { u32::MAX },
+            play: if calm { longest - shortest } else { 0 },
+            low,
+            width: high.wrapping_sub(low).cast_unsigned(),
+            reach: Self::reach(shortest, derived).min(1 << 30) as u32,
             repeats: derived.frozen_samples.wrapping_sub(1),
         };
     }
@@ -84,7 +94,7 @@ impl Health {
 
     /// Whether the level moved to `counts` by more in `ticks` than the worst-case input and the noise can move it.
     pub(crate) fn jumped(&self, counts: i32, ticks: u32, derived: &Derived) -> bool {
-        self.last.is_some_and(|last| i64::from(counts.abs_diff(last)) > Self::reach(ticks, derived))
+        self.last().is_some_and(|last| i64::from(counts.abs_diff(last)) > Self::reach(ticks, derived))
     }
 
     /// Whether a level lies outside a window of codes.

@@ -1,7 +1,7 @@
 //! Whether each reset did what it should.
 
 use crate::health::Health;
-use crate::level::{Seen, Terms};
+use crate::level::Terms;
 use crate::math;
 use crate::setup::Derived;
 
@@ -54,6 +54,8 @@ pub(crate) struct Mover {
     pub(crate) rate_var: f32,
     /// Variance of one sample.
     pub(crate) sample_var: f32,
+    /// What the dielectric holds, 2^-16 counts.
+    pub(crate) soaked_q16: i64,
     /// Whether there may be an input that just cancels the drift: then drift tells nothing, and a pedestal only if no
     /// steady input could have hidden it.
     pub(crate) input: bool,
@@ -156,15 +158,15 @@ impl Verification {
         self.leaving.is_some()
     }
 
-    /// A sample with the switch open: `true` if the level stays where the closed switch held it although drift, walk or
+    /// A linear level with the switch open, 2^-16 counts, `step` ticks after the one before: `true` if the level stays where the closed switch held it although drift, walk or
     /// pedestal should have moved it. Only a level that has left is free.
-    pub(crate) fn is_held(&mut self, seen: &Seen, mover: &Mover, derived: &Derived) -> bool {
+    pub(crate) fn is_held(&mut self, linear_q16: i64, step: u32, mover: &Mover, derived: &Derived) -> bool {
         let Some(leaving) = self.leaving.as_mut() else { return false };
-        leaving.ticks = leaving.ticks.saturating_add(u64::from(seen.ticks));
+        leaving.ticks = leaving.ticks.saturating_add(u64::from(step));
         leaving.samples = leaving.samples.saturating_add(1);
         let Leaving { settled, soaked_q16, ticks, samples } = *leaving;
         let band = NEAR * math::sqrt(mover.sample_var + settled.var);
-        if math::abs(math::counts(seen.linear_q16().saturating_sub(settled.level_q16))) > band {
+        if math::abs(math::counts(linear_q16.saturating_sub(settled.level_q16))) > band {
             self.leaving = None;
             return false;
         }
@@ -179,7 +181,7 @@ impl Verification {
             let doubt = 4.0 * math::sqrt(pedestal_var);
             return walked || (samples >= STEADY_SAMPLES && math::abs(pedestal) - doubt > 8.0 * band);
         }
-        let soaked = math::counts(seen.terms.soaked_q16.saturating_sub(soaked_q16));
+        let soaked = math::counts(mover.soaked_q16.saturating_sub(soaked_q16));
         let doubt = 4.0 * math::sqrt(pedestal_var + mover.rate_var * drifting * drifting);
         let moved = math::abs(pedestal + mover.rate * drifting - soaked) - doubt;
         walked || moved > 2.0 * band

@@ -24,15 +24,14 @@ impl Window {
         self.seen = 0;
     }
 
-    /// Takes a sample; `true` when the segment has just filled one window.
-    pub(crate) fn push(&mut self, tick: u32, level_q16: i64, derived: &Derived) -> bool {
+    /// Takes a sample.
+    pub(crate) fn push(&mut self, tick: u32, level_q16: i64, derived: &Derived) {
         if self.samples.len() >= usize::from(derived.edge_samples) {
             self.samples.pop_front();
         }
         self.latest_q16 = level_q16;
         let _ = self.samples.push_back((tick, (level_q16 >> (16 - derived.fine_bits)) as i32));
         self.seen = self.seen.saturating_add(1);
-        self.seen == derived.edge_samples
     }
 
     /// Tick and level, 2^-16 counts, of the latest sample of the segment.

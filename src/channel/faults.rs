@@ -2,7 +2,6 @@
 
 use super::Channel;
 use crate::decide;
-use crate::health::Health;
 use crate::notice::{Event, Reason};
 use crate::notices::Notices;
 use crate::quantity::Integral;
@@ -70,14 +69,6 @@ impl<Q: Integral> Channel<'_, Q> {
         }
         if new {
             notices.push(tick, Event::Fault(reason));
-        }
-    }
-
-    /// Readings that stand still. At an end code they rightly do, and that is a fault of its own.
-    pub(super) fn watch(&mut self, sample: &Sample, notices: &mut Notices) {
-        let derived = self.setup.derived();
-        if self.health.frozen(derived) && !Health::at_rail(sample.counts, derived) {
-            self.fault(Reason::Frozen, sample.tick, notices);
         }
     }
 

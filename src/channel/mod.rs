@@ -7,12 +7,11 @@ mod steady;
 mod switching;
 mod verifying;
 
-use crate::clock::{Clock, Elapsed};
+use crate::clock::Clock;
 use crate::droop::Droop;
 use crate::health::Health;
 use crate::level::Level;
 use crate::notice::{Reason, Reasons};
-use crate::notices::Notices;
 use crate::quantity::{Integral, Temperature};
 use crate::reading::Reading;
 use crate::run::{Run, Stage};
@@ -42,7 +41,8 @@ pub struct Channel<'s, Q> {
     clock: Clock,
     health: Health,
     window: Window,
-    /// Board temperature at the latest zero sample.
+    /// Board temperature as last measured, and at the latest zero sample.
+    temperature: Option<Temperature>,
     zero_temperature: Option<Temperature>,
     zeroing: Zeroing,
     level: Level,
@@ -69,6 +69,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
             run: None,
             health: Health::default(),
             zero_reasons: Reasons::default(),
+            temperature: None,
             zero_temperature: None,
             verification: Verification::default(),
             reset_advised: false,
@@ -82,64 +83,17 @@ impl<'s, Q: Integral> Channel<'s, Q> {
     /// A sample whose tick does not move forward is not used and makes the reading invalid; after a few of them that
     /// agree with each other the counter is taken for restarted.
     pub fn feed(&mut self, sample: Sample) -> Step {
-        let before = self.clock.tick();
-        let elapsed = self.clock.advance(sample.tick);
-        match elapsed {
-            Elapsed::Ticks(ticks) if self.goes_on(&sample, ticks) => self.go_on(&sample, ticks),
-            Elapsed::Ticks(_) => self.take(&sample, elapsed, before),
-            _ => self.take(&sample, elapsed, sample.tick),
+        let ticks = self.clock.ticks_to(sample.tick);
+        if !self.goes_on(&sample, ticks) {
+            return self.look_at(&sample);
         }
-    }
-
-    /// Takes a sample that may be anything; the switches moved at `switched_tick`, if they did.
-    #[inline(never)]
-    fn take(&mut self, sample: &Sample, elapsed: Elapsed, switched_tick: u32) -> Step {
-        let mut notices = Notices::between(switched_tick, sample.tick);
-        self.steady = None;
-        let ticks = match elapsed {
-            Elapsed::Start => Some(0),
-            Elapsed::Ticks(ticks) => Some(ticks),
-            Elapsed::Stalled => {
-                self.fault(Reason::ClockStalled, sample.tick, &mut notices);
-                None
-            }
-            Elapsed::Restarted => {
-                self.lose_time(sample.tick, &mut notices);
-                Some(0)
-            }
-        };
-        if let Some(ticks) = ticks {
-            self.look_at(sample, ticks, switched_tick, &mut notices);
-        }
-        let request = self.advise(sample, ticks.unwrap_or(0), &mut notices);
-        Step { request, notices }
-    }
-
-    fn look_at(&mut self, sample: &Sample, ticks: u32, switched_tick: u32, notices: &mut Notices) {
-        let was_running = self.is_running();
-        let jumped = self.has_jumped(sample, ticks);
-        if self.mode != Some(sample.mode) {
-            self.switch(sample.mode, switched_tick, notices);
-        }
-        if jumped {
-            self.fault(Reason::Jump, sample.tick, notices);
-        }
-        if ticks > self.setup.derived().gap_limit_ticks {
-            self.gap(was_running, sample.tick, notices);
-        }
-        self.health.expect(ticks, self.setup.derived());
-        let seen = self.see(sample, ticks);
+        self.clock.pass(sample.tick);
+        self.keep(&sample);
         match sample.mode {
-            Mode::Zero => self.zero(sample, &seen, notices),
-            Mode::Integrate => self.integrate(sample, &seen, notices),
-            Mode::Hold => self.hold(sample, &seen),
-            Mode::Reset => self.reset(&seen, notices),
+            Mode::Integrate => self.extend(&sample, ticks),
+            _ => return self.go_on_in_zero(&sample, ticks),
         }
-        self.watch_opened(sample.mode, &seen, notices);
-        if sample.mode != Mode::Reset {
-            self.watch(sample, notices);
-        }
-        self.steady = self.steady_mode();
+        Step::default()
     }
 
     /// The reading of the latest run; `None` before the first.

@@ -1,14 +1,21 @@
-//! Most samples: the mode goes on, and a few comparisons tell that nothing can be said of them.
+//! What every sample goes through. For most this is all: the mode goes on, and a few comparisons tell that nothing can
+//! be said of them.
 
 use super::{Channel, stop};
+use crate::health::Health;
 use crate::level::Seen;
 use crate::notices::Notices;
-use crate::quantity::{Integral, Temperature};
+use crate::quantity::Integral;
 use crate::sample::{Mode, Sample, Step};
 use crate::zeroing::Taken;
 
 /// Past this the books of a run may saturate: 2^46 counts.
 const LEVEL_END_Q16: u64 = 1 << 62;
+
+/// Whether a run with such a level in it has come to more than its books can take.
+pub(super) fn is_out_of_range(level_q16: i64) -> bool {
+    level_q16.unsigned_abs() > LEVEL_END_Q16
+}
 
 impl<Q: Integral> Channel<'_, Q> {
     /// The mode, if nothing is left to wait for in it.
@@ -26,40 +33,22 @@ impl<Q: Integral> Channel<'_, Q> {
         self.steady == Some(sample.mode) && self.health.is_calm(sample.counts, ticks)
     }
 
-    /// Takes such a sample.
-    pub(super) fn go_on(&mut self, sample: &Sample, ticks: u32) -> Step {
-        let seen = self.see(sample, ticks);
-        if sample.mode == Mode::Integrate {
-            self.extend(&seen);
-            if is_out_of_range(&seen) {
-                // The next sample gets a closer look.
-                self.steady = None;
-            }
-            return Step::default();
-        }
-        match self.zeroing.take(&seen, stop(&self.run), self.setup.derived()) {
-            Taken::Used => Step::default(),
-            taken => {
-                let mut notices = Notices::between(sample.tick, sample.tick);
-                self.tell_zero(taken, &seen, &mut notices);
-                Step { request: None, notices }
-            }
-        }
-    }
-
-    /// The sample's level, and what else is to be kept of it in any mode.
-    pub(super) fn see(&mut self, sample: &Sample, ticks: u32) -> Seen {
-        let derived = self.setup.derived();
+    /// What is to be kept of a sample in any mode.
+    #[inline(always)]
+    pub(super) fn keep(&mut self, sample: &Sample) {
         self.health.take(sample.counts);
-        if let Some(temperature) = sample.temperature {
-            self.take_temperature(temperature, sample.mode);
+        if sample.temperature.is_some() && (sample.temperature != self.temperature || self.steady.is_none()) {
+            self.take_temperature(sample);
         }
-        self.level.take(sample, ticks, derived)
     }
 
-    fn take_temperature(&mut self, temperature: Temperature, mode: Mode) {
+    /// A temperature that has changed, or is the first in a mode.
+    #[inline(never)]
+    fn take_temperature(&mut self, sample: &Sample) {
+        self.temperature = sample.temperature;
+        let Some(temperature) = sample.temperature else { return };
         self.zeroing.take_temperature(temperature, self.setup.derived());
-        match (mode, self.zero_temperature, self.run.as_mut()) {
+        match (sample.mode, self.zero_temperature, self.run.as_mut()) {
             (Mode::Zero, ..) => self.zero_temperature = Some(temperature),
             (Mode::Integrate, Some(before), Some(run)) => run.warming = Some(temperature.since(before)),
             _ => {}
@@ -67,16 +56,42 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// Extends a segment of a run. What can be told from the window and the pending time is booked later.
-    /// `true` when it has just filled one window.
-    pub(super) fn extend(&mut self, seen: &Seen) -> bool {
+    #[inline(always)]
+    pub(super) fn extend(&mut self, sample: &Sample, ticks: u32) {
         let derived = self.setup.derived();
-        self.zeroing.pending.add(seen.ticks, derived.coarse_shift);
-        self.zeroing.drive(seen.ticks);
-        self.window.push(seen.tick, seen.level_q16, derived)
+        let level_q16 = self.level.take(sample, ticks, derived);
+        self.zeroing.pending.add(ticks, derived.coarse_shift);
+        self.zeroing.drive(ticks);
+        self.window.push(sample.tick, level_q16, derived);
+        if !derived.keeps_level && is_out_of_range(level_q16) {
+            // The next sample is looked at closely.
+            self.steady = None;
+        }
     }
-}
 
-/// Whether a run that holds a sample has come to more than its books can take.
-pub(super) fn is_out_of_range(seen: &Seen) -> bool {
-    seen.level_q16.unsigned_abs() > LEVEL_END_Q16
+    /// Takes a sample of a zero.
+    #[inline(never)]
+    pub(super) fn zero(&mut self, sample: &Sample, ticks: u32) -> Taken {
+        let derived = self.setup.derived();
+        let level_q16 = self.level.take(sample, ticks, derived);
+        if Health::at_rail(sample.counts, derived) {
+            self.zeroing.skip(ticks, derived);
+            return Taken::Used;
+        }
+        let seen = Seen { tick: sample.tick, ticks, level_q16, terms: self.level.terms() };
+        self.zeroing.take(&seen, stop(&self.run), derived)
+    }
+
+    /// The same where nothing else can be said of the sample.
+    #[inline(never)]
+    pub(super) fn go_on_in_zero(&mut self, sample: &Sample, ticks: u32) -> Step {
+        match self.zero(sample, ticks) {
+            Taken::Used => Step::default(),
+            taken => {
+                let mut notices = Notices::between(sample.tick, sample.tick);
+                self.tell_zero(taken, sample, &mut notices);
+                Step { request: None, notices }
+            }
+        }
+    }
 }

@@ -172,7 +172,7 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// The latest level as a straight converter would have seen it, 2^-16 counts; 0 before the first sample.
-    fn linear_q16(&self) -> i64 {
+    pub(super) fn linear_q16(&self) -> i64 {
         self.health.last().map_or(0, |counts| self.setup.derived().linear_q16(counts))
     }
 

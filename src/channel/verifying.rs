@@ -1,12 +1,11 @@
 //! What the verification of a reset leads to.
 
 use super::Channel;
-use crate::level::Seen;
 use crate::math;
 use crate::notice::{Event, Reason};
 use crate::notices::Notices;
 use crate::quantity::Integral;
-use crate::sample::Mode;
+use crate::sample::{Mode, Sample};
 use crate::verify::{Closed, Mover};
 use crate::zeroing::RateChange;
 
@@ -23,17 +22,17 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     /// A sample with the switch closed.
-    pub(super) fn verify_closed(&mut self, seen: &Seen, notices: &mut Notices) {
-        match self.verification.take_closed(seen.linear_q16(), seen.ticks, self.setup.derived()) {
+    pub(super) fn verify_closed(&mut self, tick: u32, ticks: u32, notices: &mut Notices) {
+        match self.verification.take_closed(self.linear_q16(), ticks, self.setup.derived()) {
             Closed::Nothing => {}
-            Closed::Slow(percent) => notices.push(seen.tick, Event::SettlingSlow { percent }),
-            Closed::NotArrived => self.reset_failed(Reason::ResetNotArrived, seen.tick, notices),
+            Closed::Slow(percent) => notices.push(tick, Event::SettlingSlow { percent }),
+            Closed::NotArrived => self.reset_failed(Reason::ResetNotArrived, tick, notices),
         }
     }
 
     /// A sample with the switch open: has the level left the reset level?
-    pub(super) fn watch_opened(&mut self, mode: Mode, seen: &Seen, notices: &mut Notices) {
-        if !self.verification.is_watching() || !matches!(mode, Mode::Zero | Mode::Integrate) {
+    pub(super) fn watch_opened(&mut self, sample: &Sample, ticks: u32, notices: &mut Notices) {
+        if !self.verification.is_watching() || !matches!(sample.mode, Mode::Zero | Mode::Integrate) {
             return;
         }
         let derived = self.setup.derived();
@@ -42,13 +41,14 @@ impl<Q: Integral> Channel<'_, Q> {
             rate: trend.rate(),
             rate_var: trend.rate_variance(),
             sample_var: self.zeroing.shown(derived).sample_var,
-            input: mode == Mode::Integrate,
+            soaked_q16: self.level.terms().soaked_q16,
+            input: sample.mode == Mode::Integrate,
         };
-        if self.verification.is_held(seen, &mover, derived) {
-            if mode == Mode::Zero {
+        if self.verification.is_held(self.linear_q16(), ticks, &mover, derived) {
+            if sample.mode == Mode::Zero {
                 self.zeroing.roll_back();
             }
-            self.reset_failed(Reason::SwitchStuckClosed, seen.tick, notices);
+            self.reset_failed(Reason::SwitchStuckClosed, sample.tick, notices);
         }
     }
 

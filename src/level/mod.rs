@@ -48,13 +48,6 @@ pub(crate) struct Seen {
     pub(crate) terms: Terms,
 }
 
-impl Seen {
-    /// The level as a straight converter would have seen it, 2^-16 counts.
-    pub(crate) fn linear_q16(&self) -> i64 {
-        self.level_q16.saturating_sub(self.terms.sum_q16())
-    }
-}
-
 /// The effective level `level + leaked + soaked`. With the switch open only input, drift and noise move it.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Level {
@@ -66,23 +59,20 @@ pub(crate) struct Level {
 }
 
 impl Level {
-    /// Takes a sample, `ticks` after the one before. While the reset switch is closed nothing leaks, and the dielectric
-    /// sees the reset level.
+    /// Takes a sample, `ticks` after the one before, and gives the effective level, 2^-16 counts. While the reset switch
+    /// is closed nothing leaks, and the dielectric sees the reset level.
     ///
     /// The first sample finds the dielectric at rest.
-    pub(crate) fn take(&mut self, sample: &Sample, ticks: u32, derived: &Derived) -> Seen {
+    #[inline(always)]
+    pub(crate) fn take(&mut self, sample: &Sample, ticks: u32, derived: &Derived) -> i64 {
         let linear_q16 = derived.linear_q16(sample.counts);
-        let mut seen = Seen { tick: sample.tick, ticks, level_q16: linear_q16, terms: self.terms };
-        if !derived.keeps_level {
-            self.pass(sample.mode == Mode::Reset, &mut seen, derived);
-        }
-        seen
+        if derived.keeps_level { linear_q16 } else { self.pass(linear_q16, ticks, sample.mode == Mode::Reset, derived) }
     }
 
-    /// A level that leaks or soaks has seen another sample.
+    /// A level that leaks or soaks goes on to a sample.
     #[inline(never)]
-    fn pass(&mut self, closed: bool, seen: &mut Seen, derived: &Derived) {
-        let above = if closed { 0 } else { derived.above_reset(seen.level_q16) };
+    fn pass(&mut self, linear_q16: i64, ticks: u32, closed: bool, derived: &Derived) -> i64 {
+        let above = if closed { 0 } else { derived.above_reset(linear_q16) };
         // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.
         let from = match self.above.replace(above) {
             None => {
@@ -93,15 +83,14 @@ impl Level {
             Some(from) => from,
         };
         if let Some(law) = derived.leak.as_ref().filter(|_| !closed) {
-            self.leak.take(from, above, seen.ticks, law);
+            self.leak.take(from, above, ticks, law);
             self.terms.leaked_q16 = self.leak.q16(law);
         }
         if let Some(law) = derived.soakage.as_ref() {
-            self.soakage.take(from, above, seen.ticks, law);
+            self.soakage.take(from, above, ticks, law);
             self.terms.soaked_q16 = self.soakage.q16(law);
         }
-        seen.terms = self.terms;
-        seen.level_q16 = seen.level_q16.saturating_add(self.terms.sum_q16());
+        linear_q16.saturating_add(self.terms.sum_q16())
     }
 
     /// Puts the zero of what has leaked near the present, and gives by how much, counts: only differences of the
