@@ -27,6 +27,11 @@ pub(crate) fn exp2(x: f32) -> f32 {
     libm::exp2f(x)
 }
 
+/// Two to a whole power between -126 and 127, without arithmetic.
+pub(crate) fn power_of_two(exponent: i32) -> f32 {
+    f32::from_bits((127 + exponent).cast_unsigned() << 23)
+}
+
 /// `e^x - 1`, without loss near 0.
 pub(crate) fn exp_minus_1(x: f32) -> f32 {
     libm::expm1f(x)

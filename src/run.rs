@@ -1,13 +1,13 @@
 //! One run: from leaving zero to the end of the next zero, through resets and holds.
 
 use crate::clock::Span;
-use crate::estimate::{Bracket, Edge, Trend, Walk, movement_q16};
+use crate::estimate::{Bracket, Edge, Hint, Trend, Walk, movement_q16};
 use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
 use crate::setup::{Derived, QUANTISATION_VAR};
 use crate::verify::Settled;
-use crate::window::{Opened, Opening};
+use crate::window::Opening;
 use crate::zeroing::{Shown, Stop};
 
 /// An interruption of a run that waits for the line after it.
@@ -202,7 +202,7 @@ impl Run {
     pub(crate) fn total(&self, baseline: &Trend, considered: f32, shown: &Shown, derived: &Derived) -> Total {
         let driven_s = math::seconds(self.driven.ticks, derived.tick_s);
         let walk = derived.level_walk * driven_s;
-        let weight = self.last_sample_weight(derived);
+        let weight = self.last_sample_weight();
         let own = 1.0 - weight;
         let counted_twice = shown.sample_var * weight * weight;
         let start_var = (self.start_var * shown.widening).max(shown.rounding.0);
@@ -224,14 +224,14 @@ impl Run {
     }
 
     /// The weight that the last sample has in the opening line as well, shortly after a reset.
-    fn last_sample_weight(&self, derived: &Derived) -> f32 {
-        self.opening.map_or(0.0, |opening| opening.weight(self.end_tick, derived))
+    fn last_sample_weight(&self) -> f32 {
+        self.opening.map_or(0.0, |opening| opening.weight(self.end_tick))
     }
 
     /// What the closing zero has to know of the stop; `unbroken`: whether the level goes on into it.
-    pub(crate) fn stop(&self, unbroken: bool, derived: &Derived) -> Stop {
+    pub(crate) fn stop(&self, unbroken: bool) -> Stop {
         // Shortly after a reset the last sample is part of the opening line as well: r (1 - 2 w) instead of r.
-        let last_weight = 1.0 - 2.0 * self.last_sample_weight(derived);
+        let last_weight = 1.0 - 2.0 * self.last_sample_weight();
         Stop { last_q16: self.last_q16, last_weight, unbroken }
     }
 
@@ -281,12 +281,12 @@ impl Run {
     }
 
     /// What is known of the level at which the present segment began: the reset level and a known pedestal.
-    pub(crate) fn opened(&self, derived: &Derived) -> Option<Opened> {
+    pub(crate) fn opened(&self, derived: &Derived) -> Option<Hint> {
         let (settled, (pedestal, pedestal_var)) = (self.settled?, derived.pedestal?);
-        Some(Opened {
+        Some(Hint {
             level_q16: settled.level_q16.saturating_add(to_q16(pedestal)).saturating_add(self.opened_terms_q16),
             own_var: settled.var + derived.ktc_var,
-            pedestal_var,
+            shared_var: pedestal_var,
             lever: self.ledger.pedestal_lever,
         })
     }

@@ -1,9 +1,8 @@
 //! The latest integrating samples, kept for the straight lines beside an interruption.
 
-use heapless::Deque;
+use heapless::{Deque, Vec};
 
-use crate::estimate::{Edge, EdgeNoise, Hint, Side, Weights, fine_step};
-use crate::math;
+use crate::estimate::{Dot, Edge, Hint, Nearest, Side, Taken, Weights};
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
 /// Integer work only, until a line is asked for.
@@ -44,24 +43,15 @@ impl Window {
         self.seen >= derived.edge_samples
     }
 
-    /// The line just after the switch opened at `instant`, when the level was as `opened` says, if it is known.
-    pub(crate) fn after(
-        &self,
-        instant: u32,
-        opened: Option<Opened>,
-        sample_var: f32,
-        derived: &Derived,
-    ) -> Option<Edge> {
-        let &(_, nearest) = self.iter().next()?;
-        let samples = self.above(nearest, derived).map(|(tick, above)| (tick.wrapping_sub(instant), above));
-        let anchor_q16 = self.level_q16(nearest, derived);
-        let hint = opened.map(|opened| Hint {
-            level: math::counts(opened.level_q16.saturating_sub(anchor_q16)),
-            own_var: opened.own_var,
-            shared_var: opened.pedestal_var,
-            lever: opened.lever,
-        });
-        Edge::fit(Side::After, anchor_q16, samples, derived.tick_s, noise(sample_var, derived), hint, |_| 0.0)
+    /// The line just after the switch opened at `instant`, when the level was as `hint` says, if it is known.
+    pub(crate) fn after(&self, instant: u32, hint: Option<Hint>, sample_var: f32, derived: &Derived) -> Option<Edge> {
+        let &(tick, level) = self.iter().next()?;
+        let mut dots: Vec<Dot, EDGE_SAMPLES_MAX> = Vec::new();
+        for &(t, l) in self.iter() {
+            let _ = dots.push(dot(t.wrapping_sub(tick), l.wrapping_sub(level)));
+        }
+        let nearest = Nearest { ticks: tick.wrapping_sub(instant), level_q16: self.level_q16(level, derived) };
+        Some(Edge::fit(Side::After, nearest, &mut dots, sample_var, derived, None, hint))
     }
 
     /// The line just before the switch closed at `instant`. `opening`: the line at the other end of the segment, which
@@ -73,24 +63,14 @@ impl Window {
         sample_var: f32,
         derived: &Derived,
     ) -> Option<Edge> {
-        let &(_, nearest) = self.iter().next_back()?;
-        let samples = self.above(nearest, derived).rev().map(|(tick, above)| (instant.wrapping_sub(tick), above));
-        let taken = |ticks| opening.map_or(0.0, |opening| opening.weight(instant.wrapping_sub(ticks), derived));
-        Edge::fit(
-            Side::Before,
-            self.level_q16(nearest, derived),
-            samples,
-            derived.tick_s,
-            noise(sample_var, derived),
-            None,
-            taken,
-        )
-    }
-
-    /// Ticks and levels, in counts above the level `origin`; oldest first.
-    fn above(&self, origin: i32, derived: &Derived) -> impl DoubleEndedIterator<Item = (u32, f32)> + Clone {
-        let step = fine_step(derived.fine_bits);
-        self.iter().map(move |&(tick, level)| (tick, level.wrapping_sub(origin) as f32 * step))
+        let &(tick, level) = self.iter().next_back()?;
+        let mut dots: Vec<Dot, EDGE_SAMPLES_MAX> = Vec::new();
+        for &(t, l) in self.iter().rev() {
+            let _ = dots.push(dot(tick.wrapping_sub(t), l.wrapping_sub(level)));
+        }
+        let nearest = Nearest { ticks: instant.wrapping_sub(tick), level_q16: self.level_q16(level, derived) };
+        let taken = opening.map(|opening| opening.taken(instant));
+        Some(Edge::fit(Side::Before, nearest, &mut dots, sample_var, derived, taken, None))
     }
 
     /// A kept level as a whole, 2^-16 counts.
@@ -108,44 +88,34 @@ impl Window {
     }
 }
 
-/// The level at which the reset switch opened: what it was with the switch closed, and the pedestal.
-#[derive(Clone, Copy, Debug)]
-pub(crate) struct Opened {
-    /// Effective level, 2^-16 counts.
-    pub(crate) level_q16: i64,
-    /// Variance of the reset level and of the pedestal, counts^2.
-    pub(crate) own_var: f32,
-    pub(crate) pedestal_var: f32,
-    /// How much of the pedestal's error the run's total holds already.
-    pub(crate) lever: f32,
-}
-
 /// The line with which a segment opened: which samples it used, and with what weights they are in the run's total.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Opening {
     weights: Weights,
-    /// How far the line was extrapolated into the dead time, s.
-    extrapolated_s: f32,
     instant: u32,
     /// Ticks from the instant to the last sample that the line used.
     window: u32,
 }
 
 impl Opening {
+    /// `line` was extrapolated by `extrapolated_s` seconds into the dead time.
     pub(crate) fn new(line: &Edge, extrapolated_s: f32, instant: u32, last: u32) -> Self {
-        Self { weights: line.weights(), extrapolated_s, instant, window: last.wrapping_sub(instant) }
+        Self { weights: line.weights(extrapolated_s), instant, window: last.wrapping_sub(instant) }
     }
 
     /// The weight of the sample at `tick`; 0 if the line did not use it.
-    pub(crate) fn weight(&self, tick: u32, derived: &Derived) -> f32 {
+    pub(crate) fn weight(&self, tick: u32) -> f32 {
         let ticks = tick.wrapping_sub(self.instant);
-        if ticks > self.window {
-            return 0.0;
-        }
-        self.weights.of(ticks as f32 * derived.tick_s, self.extrapolated_s)
+        if ticks > self.window { 0.0 } else { self.weights.at(ticks) }
+    }
+
+    /// What it has taken of the samples before another instant.
+    fn taken(&self, instant: u32) -> Taken<'_> {
+        Taken { weights: &self.weights, apart: instant.wrapping_sub(self.instant), window: self.window }
     }
 }
 
-fn noise(sample_var: f32, derived: &Derived) -> EdgeNoise {
-    EdgeNoise { readout_var: sample_var, level_walk: derived.level_walk, bend_var: derived.bend_var }
+/// A sample so far beyond the nearest, in ticks and in fine steps.
+fn dot(ticks: u32, above: i32) -> Dot {
+    Dot { x: i32::try_from(ticks).unwrap_or(i32::MAX), y: above }
 }

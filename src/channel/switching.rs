@@ -93,7 +93,7 @@ impl<Q: Integral> Channel<'_, Q> {
                 let total = |shown| run.total(&self.zeroing.trend, squares(considered), shown, derived);
                 let at_stop = total(&shown);
                 let plain_var = total(&shown.not_widened()).variance();
-                let stop = run.stop(matches!(run.stage, Stage::Integrating), derived);
+                let stop = run.stop(matches!(run.stage, Stage::Integrating));
                 run.stage = Stage::Stopped { at_stop, plain_var, considered, stop };
                 if let Some(crossing) = run.crossing.take() {
                     self.zeroing.resting =

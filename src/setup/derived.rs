@@ -44,6 +44,8 @@ pub(crate) struct Derived {
     pub(crate) block_ticks: u32,
     /// Seconds per tick.
     pub(crate) tick_s: f32,
+    /// Ticks in a second.
+    pub(crate) ticks_per_s: f32,
     /// Integral of the input per count of output movement, C or V s, with its sign.
     pub(crate) integral_per_count: f64,
     /// Variance of one sample, counts^2.

@@ -150,6 +150,7 @@ impl Derived {
         Ok(Self {
             keeps_level: leak.is_none() && soakage.is_none(),
             tick_s: (1.0 / converter.tick_hz) as f32,
+            ticks_per_s: converter.tick_hz as f32,
             integral_per_count: 1.0 / counts_per_integral,
             readout_var: readout_var as f32,
             level_walk: (density * density / 2.0) as f32,

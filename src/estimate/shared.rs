@@ -1,0 +1,84 @@
+//! Samples of a short segment that are in the lines at both of its ends.
+
+use super::form::{Form, Polynomial, dot};
+use super::grid::Dot;
+
+/// How the level at an instant was made of samples: their weights, a polynomial in `units_per_tick * ticks - middle`,
+/// where `ticks` is the distance of the sample.
+#[derive(Clone, Copy, Debug, Default, PartialEq)]
+pub(crate) struct Weights {
+    pub(super) units_per_tick: f32,
+    pub(super) middle: f32,
+    pub(super) of_x: Polynomial,
+}
+
+impl Weights {
+    /// Of the sample at a distance.
+    pub(crate) fn at(&self, ticks: u32) -> f32 {
+        let x = ticks as f32 * self.units_per_tick - self.middle;
+        let [a, b, c] = self.of_x;
+        a + x * (b + x * c)
+    }
+
+    /// The same polynomial, in units and from the middle of samples `apart` ticks away that are counted the other way.
+    fn turned(&self, apart: u32, units_per_tick: f32, middle: f32) -> Polynomial {
+        let ratio = self.units_per_tick / units_per_tick;
+        let x = apart as f32 * self.units_per_tick - self.middle - ratio * middle;
+        let [a, b, c] = self.of_x;
+        [a + x * (b + x * c), -ratio * (b + 2.0 * x * c), ratio * ratio * c]
+    }
+}
+
+/// What the line at the other end of a segment has taken of its samples.
+#[derive(Clone, Copy, Debug)]
+pub(crate) struct Taken<'w> {
+    pub(crate) weights: &'w Weights,
+    /// Ticks between the two instants.
+    pub(crate) apart: u32,
+    /// Ticks from the other instant to the last sample that its line used.
+    pub(crate) window: u32,
+}
+
+impl Taken<'_> {
+    /// The weight of the sample so far from this line's instant; `None` if the other line did not use it.
+    pub(super) fn weight(&self, ticks: u32) -> Option<f32> {
+        let from_there = self.apart.wrapping_sub(ticks);
+        (from_there <= self.window).then(|| self.weights.at(from_there))
+    }
+
+    /// How many of the samples, in the order of growing distance, are only in this line.
+    pub(super) fn first(&self, dots: &[Dot], nearest: u32) -> usize {
+        let is_own = |dot: &&Dot| self.apart.wrapping_sub(nearest.wrapping_add(dot.x.cast_unsigned())) > self.window;
+        dots.iter().take_while(is_own).count()
+    }
+
+    /// What noise that both lines see adds to the quadratic forms of readout and walk, in a sample's variance and in
+    /// the walk of a unit. `dots` are those in both lines.
+    ///
+    /// The increments of the walk up to the farthest sample are seen by the other line with the sum of its own weights
+    /// on this side of them, and by the run with 1 less those of this line.
+    pub(super) fn common(
+        &self,
+        dots: &[Dot],
+        (units_per_tick, middle): (f32, f32),
+        weights: &[Polynomial; 2],
+        walks: bool,
+    ) -> [[f32; 2]; 2] {
+        let others = self.weights.turned(self.apart, units_per_tick, middle);
+        let [level, change] = weights;
+        let curved = others[2] != 0.0 || level[2] != 0.0 || change[2] != 0.0;
+        let (sums, samples) = Form::of_samples(dots, curved);
+        let seen = samples.with(&others);
+        let readout = [-2.0 * dot(&seen, level, curved), -dot(&seen, change, curved)];
+        if !walks {
+            return [readout, [0.0; 2]];
+        }
+        let (passed, steps) = Form::of_steps(dots, curved);
+        let (seen, passed) = (steps.with(&others), dot(&passed, &others, curved));
+        let walk = [
+            2.0 * (dot(&sums, level, curved) * passed - dot(&seen, level, curved)),
+            dot(&sums, change, curved) * passed - dot(&seen, change, curved),
+        ];
+        [readout, walk]
+    }
+}
