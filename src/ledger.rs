@@ -1,6 +1,6 @@
 //! Totals across resets and holds: what was measured, what was interpolated, and the variance they added.
 
-use crate::estimate::{Edge, LEVEL_VARIANCE_MAX};
+use crate::estimate::{After, Before, LEVEL_VARIANCE_MAX};
 
 /// 2^-16 counts, rounded toward zero, saturating.
 pub(crate) fn to_q16(counts: f32) -> i64 {
@@ -39,7 +39,7 @@ pub(crate) enum Bridged {
 }
 
 impl Ledger {
-    /// Bridges an interruption with `dead_s` seconds of dead time.
+    /// Bridges an interruption with `dead_s` seconds of dead time, to whose middle `after` is extrapolated.
     ///
     /// The lines before and after meet in the middle of the dead time: drop `= before - after` at the switching
     /// instants, and interpolated input `= dead (slope before + slope after) / 2`. Where the slopes differ by more than
@@ -48,9 +48,16 @@ impl Ledger {
     ///
     /// Where a slope is not known, nothing is taken for input: the level is carried over, the dead time adds its drift
     /// at `rate`, and what the known slope would have added is the uncertainty.
-    pub(crate) fn bridge(&mut self, before: &Edge, after: &Edge, dead_s: f32, rate: f32, level_walk: f32) -> Bridged {
+    pub(crate) fn bridge(
+        &mut self,
+        before: &Before,
+        after: &After,
+        dead_s: f32,
+        rate: f32,
+        level_walk: f32,
+    ) -> Bridged {
         let half = 0.5 * dead_s;
-        let (slopes, bridged) = match (before.slope, after.slope) {
+        let (slopes, bridged) = match (before.edge.slope, after.edge.slope) {
             (Some(b), Some(a)) => ((b, a), Bridged::Interpolated),
             (Some(s), None) | (None, Some(s)) => ((s, s), Bridged::Guessed),
             (None, None) => ((0.0, 0.0), Bridged::Guessed),
@@ -61,22 +68,22 @@ impl Ledger {
             Bridged::Guessed => drifted,
         };
         let difference = slopes.0 - slopes.1;
-        let noise = before.slope_variance() + after.slope_variance();
+        let noise = before.slope_variance() + after.slope_var;
         let changed = match bridged {
             Bridged::Interpolated => difference * difference - noise,
             Bridged::Guessed => slopes.0 * slopes.0 * 12.0,
         };
-        let whole = before.anchor_q16.saturating_sub(after.anchor_q16);
-        let rest = to_q16(before.level(slopes.0)).saturating_sub(to_q16(after.level(slopes.1)));
+        let whole = before.edge.anchor_q16.saturating_sub(after.edge.anchor_q16);
+        let rest = to_q16(before.edge.level_at_instant(slopes.0) - after.edge.level_at_instant(slopes.1));
         self.carried_q16 = self.carried_q16.saturating_add(whole.saturating_add(rest));
         self.interpolated_q16 = self.interpolated_q16.saturating_add(interpolated);
         self.dead_drift_q16 = self.dead_drift_q16.saturating_add(drifted);
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
-        let fits = before.readout_variance(half) + after.readout_variance(half);
-        self.dead_time_var = bounded(self.dead_time_var + fits + input).max(0.0);
-        self.pedestal_lever += after.hinted(half);
+        let (before_var, before_walk) = before.variances(half);
+        self.dead_time_var = bounded(self.dead_time_var + before_var + after.readout_var + input).max(0.0);
+        self.pedestal_lever += after.hinted;
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
-        let walk = before.walk_variance(half) + after.walk_variance(half) - level_walk * dead_s;
+        let walk = before_walk + after.walk_var - level_walk * dead_s;
         self.walk_var = bounded(self.walk_var + walk);
         bridged
     }

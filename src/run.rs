@@ -1,7 +1,7 @@
 //! One run: from leaving zero to the end of the next zero, through resets and holds.
 
 use crate::clock::Span;
-use crate::estimate::{Bracket, Edge, Hint, Trend, Walk, movement_q16};
+use crate::estimate::{After, Before, Bracket, Hint, Trend, Walk, movement_q16};
 use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
@@ -14,7 +14,7 @@ use crate::zeroing::{Shown, Stop};
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Crossing {
     /// The line before it; `None` where the run begins after a reset or hold that no zero preceded.
-    pub(crate) before: Option<Edge>,
+    pub(crate) before: Option<Before>,
     /// Time with the reset switch closed, ticks.
     pub(crate) dead: u64,
     /// Time with the input open, ticks.
@@ -171,28 +171,29 @@ impl Run {
         !matches!(self.stage, Stage::Stopped { .. })
     }
 
-    /// Closes the open crossing with the line after it. A run without a line before gets its baseline here.
-    pub(crate) fn settle(&mut self, after: Edge, baseline: &mut Trend, derived: &Derived) -> Bridged {
+    /// Closes the open crossing with the line after it, extrapolated to the middle of the dead time. A run without a
+    /// line before gets its baseline here.
+    pub(crate) fn settle(&mut self, after: &After, baseline: &mut Trend, derived: &Derived) -> Bridged {
         let Some(crossing) = self.crossing.take() else {
             return Bridged::Interpolated;
         };
-        let half_s = 0.5 * math::seconds(crossing.dead, derived.tick_s);
-        self.opening = Some(Opening::new(&after, half_s, self.opened_tick, self.end_tick));
+        self.opening = Some(Opening::new(after, self.opened_tick, self.end_tick));
         let Some(before) = crossing.before else {
-            let (counts, rest) = math::whole_and_rest(after.anchor_q16);
-            let level = rest + after.level(baseline.rate());
-            baseline.restart(counts, level, after.readout_variance(0.0));
-            self.ledger.walk_var += after.walk_variance(0.0);
-            self.ledger.pedestal_lever += after.hinted(0.0);
+            let (counts, rest) = math::whole_and_rest(after.edge.anchor_q16);
+            let level = rest + after.edge.level_at_instant(baseline.rate());
+            baseline.restart(counts, level, after.readout_var);
+            self.ledger.walk_var += after.walk_var;
+            self.ledger.pedestal_lever += after.hinted;
             self.begin_on(baseline);
-            if after.slope.is_some() {
+            if after.edge.slope.is_some() {
                 return Bridged::Interpolated;
             }
             // A single sample is baseline and end in one.
             self.ledger.dead_time_var += derived.readout_var;
             return Bridged::Guessed;
         };
-        self.ledger.bridge(&before, &after, 2.0 * half_s, baseline.rate(), derived.level_walk)
+        let dead_s = math::seconds(crossing.dead, derived.tick_s);
+        self.ledger.bridge(&before, after, dead_s, baseline.rate(), derived.level_walk)
     }
 
     /// The total up to the last integrating sample, with the baseline at that time.

@@ -2,7 +2,7 @@
 
 use heapless::{Deque, Vec};
 
-use crate::estimate::{Dot, Edge, Hint, Nearest, Side, Taken, Weights};
+use crate::estimate::{After, Before, Dot, Hint, Nearest, Taken, Weights};
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
 /// Integer work only, until a line is asked for.
@@ -43,15 +43,20 @@ impl Window {
         self.seen >= derived.edge_samples
     }
 
-    /// The line just after the switch opened at `instant`, when the level was as `hint` says, if it is known.
-    pub(crate) fn after(&self, instant: u32, hint: Option<Hint>, sample_var: f32, derived: &Derived) -> Option<Edge> {
+    /// The line just after the switch opened at `instant`, when the level was as `hint` says, if it is known;
+    /// extrapolated by `d_s` seconds.
+    pub(crate) fn after(
+        &self,
+        instant: u32,
+        hint: Option<&Hint>,
+        d_s: f32,
+        sample_var: f32,
+        derived: &Derived,
+    ) -> Option<After> {
         let &(tick, level) = self.iter().next()?;
-        let mut dots: Vec<Dot, EDGE_SAMPLES_MAX> = Vec::new();
-        for &(t, l) in self.iter() {
-            let _ = dots.push(dot(t.wrapping_sub(tick), l.wrapping_sub(level)));
-        }
         let nearest = Nearest { ticks: tick.wrapping_sub(instant), level_q16: self.level_q16(level, derived) };
-        Some(Edge::fit(Side::After, nearest, &mut dots, sample_var, derived, None, hint))
+        let mut dots = gather(self.iter().map(|&(t, l)| (t.wrapping_sub(tick), l.wrapping_sub(level))));
+        Some(After::fit(&mut dots, &nearest, sample_var, hint, d_s, derived))
     }
 
     /// The line just before the switch closed at `instant`. `opening`: the line at the other end of the segment, which
@@ -62,15 +67,12 @@ impl Window {
         opening: Option<&Opening>,
         sample_var: f32,
         derived: &Derived,
-    ) -> Option<Edge> {
+    ) -> Option<Before> {
         let &(tick, level) = self.iter().next_back()?;
-        let mut dots: Vec<Dot, EDGE_SAMPLES_MAX> = Vec::new();
-        for &(t, l) in self.iter().rev() {
-            let _ = dots.push(dot(tick.wrapping_sub(t), l.wrapping_sub(level)));
-        }
         let nearest = Nearest { ticks: instant.wrapping_sub(tick), level_q16: self.level_q16(level, derived) };
+        let mut dots = gather(self.iter().rev().map(|&(t, l)| (tick.wrapping_sub(t), l.wrapping_sub(level))));
         let taken = opening.map(|opening| opening.taken(instant));
-        Some(Edge::fit(Side::Before, nearest, &mut dots, sample_var, derived, taken, None))
+        Some(Before::fit(&mut dots, &nearest, sample_var, taken.as_ref(), derived))
     }
 
     /// A kept level as a whole, 2^-16 counts.
@@ -98,9 +100,8 @@ pub(crate) struct Opening {
 }
 
 impl Opening {
-    /// `line` was extrapolated by `extrapolated_s` seconds into the dead time.
-    pub(crate) fn new(line: &Edge, extrapolated_s: f32, instant: u32, last: u32) -> Self {
-        Self { weights: line.weights(extrapolated_s), instant, window: last.wrapping_sub(instant) }
+    pub(crate) fn new(line: &After, instant: u32, last: u32) -> Self {
+        Self { weights: line.weights, instant, window: last.wrapping_sub(instant) }
     }
 
     /// The weight of the sample at `tick`; 0 if the line did not use it.
@@ -115,7 +116,11 @@ impl Opening {
     }
 }
 
-/// A sample so far beyond the nearest, in ticks and in fine steps.
-fn dot(ticks: u32, above: i32) -> Dot {
-    Dot { x: i32::try_from(ticks).unwrap_or(i32::MAX), y: above }
+/// Samples by ticks beyond the nearest and fine steps above it.
+fn gather(samples: impl Iterator<Item = (u32, i32)>) -> Vec<Dot, EDGE_SAMPLES_MAX> {
+    let mut dots = Vec::new();
+    for (ticks, y) in samples {
+        let _ = dots.push(Dot { x: i32::try_from(ticks).unwrap_or(i32::MAX), y });
+    }
+    dots
 }

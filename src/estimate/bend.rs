@@ -1,6 +1,6 @@
 //! How a curved input bends the level beside a switching instant, and what neither line nor bend explains.
 
-use super::form::{Form, Polynomial};
+use super::form::Polynomial;
 use super::moments::Moments;
 
 /// A bend that noise could hardly have made is taken off: a parabola instead of a line.
@@ -9,8 +9,8 @@ const CORRECTED_BEND: f32 = 4.0;
 /// those lines on which noise had played its tricks, and state them too small.
 const CHARGED_BEND: f32 = 3.0;
 
-/// Noise in the units of a grid: readout variance of a sample, walk in a unit of distance, and the variance of the
-/// bend where it is known.
+/// Noise in the units of a grid: readout variance of a sample, walk from sample to sample on average, and the variance
+/// of the bend where it is known.
 #[derive(Clone, Copy, Debug)]
 pub(super) struct GridNoise {
     pub(super) readout: f32,
@@ -34,24 +34,24 @@ pub(super) struct Bend {
 }
 
 impl Bend {
-    /// `None` with fewer than four samples, or where the noise may well have made what there is of it. `steps` gives
-    /// the sums of the walk.
+    /// `None` with fewer than four samples, or where noise may well have made what there is of it. `walked`: what the
+    /// walk from sample to sample makes of the product with a polynomial.
     ///
     /// With a prior variance `b` of the bend and a variance `v` of what the samples show, `b/(b + v)` is taken off and
     /// `b v^2/(b + v)^2` left in. Without a prior, see [`CORRECTED_BEND`] and [`CHARGED_BEND`].
-    pub(super) fn of(m: &Moments, per_spread: f32, noise: &GridNoise, steps: impl FnOnce() -> Form) -> Option<Self> {
+    pub(super) fn of(m: &Moments, noise: &GridNoise, walked: impl FnOnce(&Polynomial) -> f32) -> Option<Self> {
         if m.count < 4 {
             return None;
         }
         let (spread, power, product) = (m.spread as f32, m.power as f32, m.product as f32);
         let shown = product * product;
-        // Times what `variance` is in the end.
-        let of_readout = noise.readout * spread * power;
-        if noise.bend.is_none() && shown <= CHARGED_BEND * CHARGED_BEND * of_readout {
+        let mut variance = noise.readout * spread * power;
+        if noise.bend.is_none() && shown <= CHARGED_BEND * CHARGED_BEND * variance {
             return None;
         }
-        let skew = (m.count * m.cubes) as f32 * per_spread * 1.0;
-        let mean_square = (m.squares as f32) * (m.squares as f32) * per_spread;
+        let per_spread = 1.0 / spread;
+        let squares = m.squares as f32;
+        let (skew, mean_square) = ((m.count * m.cubes) as f32 * per_spread, squares * squares * per_spread);
         let mut bend = Self {
             amount: 0.0,
             power: power * per_spread,
@@ -62,13 +62,13 @@ impl Bend {
             standing_out: 0.0,
         };
         if m.power <= 0 {
-            return Some(bend);
+            return noise.bend.map(|_| bend);
         }
-        let polynomial = [-mean_square, -skew, 1.0];
-        let walked = if noise.walk > 0.0 { noise.walk * steps().of(&polynomial, &polynomial) } else { 0.0 };
-        let variance = of_readout + walked * spread * spread;
-        bend.amount = product / power;
+        if noise.walk > 0.0 {
+            variance += noise.walk * walked(&[-mean_square, -skew, 1.0]) * spread * spread;
+        }
         let stands_out = |deviations: f32| shown > deviations * deviations * variance;
+        bend.amount = product / power;
         if stands_out(CHARGED_BEND) {
             bend.standing_out = shown / power;
         }
@@ -89,10 +89,15 @@ impl Bend {
         [x * (x - self.skew) - self.mean_square, self.skew - 2.0 * x]
     }
 
-    /// What taking the bend off adds to the weights of a level in which the parabola would have been `at`.
-    pub(super) fn weights(&self, at: f32) -> Polynomial {
-        let share = self.taken_off * at / self.power;
-        [-share * self.mean_square, -share * self.skew, share]
+    /// Takes the bend off in the weights of the level and of its change, in which the parabola would have been `at`.
+    pub(super) fn add_to(&self, weights: &mut [Polynomial; 2], at: [f32; 2]) {
+        let share = self.taken_off / self.power;
+        for ([one, x, square], at) in weights.iter_mut().zip(at) {
+            let share = share * at;
+            *one -= share * self.mean_square;
+            *x -= share * self.skew;
+            *square += share;
+        }
     }
 }
 
@@ -100,15 +105,12 @@ impl Bend {
 /// input that does more than curve. It is `chi^2` over its expectation, once it lies 3 standard deviations above (Birge
 /// ratio). The random walk adds `walk (n + 2)(n - 2) / (15 (n - 1))` to the expectation `n - 2`, where `walk` is what
 /// it gains over the window in readout variances.
-pub(super) fn unexplained(m: &Moments, units: i32, bend: Option<&Bend>, noise: &GridNoise) -> f32 {
-    let degrees = (m.count - 2) as f32;
-    let mut expected = degrees * noise.readout;
-    if noise.walk > 0.0 {
-        let steps = (units * (m.count * m.count - 4)) as f32 / (15 * (m.count - 1)) as f32;
-        expected += noise.walk * steps;
-    }
-    expected *= m.spread as f32;
+pub(super) fn unexplained(m: &Moments, bend: Option<&Bend>, noise: &GridNoise) -> f32 {
+    let n = m.count;
+    let degrees = (n - 2) as f32;
+    let expected = (degrees * noise.readout + (n * n - 4) as f32 * (1.0 / 15.0) * noise.walk) * m.spread as f32;
     let scatter = m.scatter as f32 - bend.map_or(0.0, |bend| bend.standing_out);
     let excess = scatter - expected;
-    if excess > 0.0 && excess * excess * degrees > 18.0 * expected * expected { scatter / expected } else { 1.0 }
+    // With up to 16 samples, 3 standard deviations are more than the expectation.
+    if excess > expected && excess * excess * degrees > 18.0 * expected * expected { scatter / expected } else { 1.0 }
 }

@@ -73,11 +73,17 @@ impl Form {
             one += 1;
             x += dot.x;
         }
-        let scale = (1 << SQUARE_BITS) as f32;
-        let [one, x, square] = passed.map(|sum| sum as f32);
-        let [a, b, c, d, e, f] = sums.map(|sum| sum as f32);
-        let sums = [a, b, c, d * scale, e * scale, f * scale * scale];
-        ([one, x, square * scale], Self { sums, curved })
+        let ([one, x, square], [a, b, c, d, e, f]) = (passed, sums);
+        let mut passed = [one as f32, x as f32, 0.0];
+        let mut sums = [a as f32, b as f32, c as f32, 0.0, 0.0, 0.0];
+        if curved {
+            let scale = (1 << SQUARE_BITS) as f32;
+            passed[2] = square as f32 * scale;
+            sums[3] = d as f32 * scale;
+            sums[4] = e as f32 * scale;
+            sums[5] = f as f32 * scale * scale;
+        }
+        (passed, Self { sums, curved })
     }
 }
 

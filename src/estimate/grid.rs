@@ -16,9 +16,10 @@ pub(crate) struct Dot {
 pub(super) struct Grid {
     /// Slope of the chord away from the instant, 2^-32 fine steps a tick.
     pub(super) chord_q32: i64,
-    /// From the nearest to the farthest sample: ticks, and units, 128 to 240 of them.
+    /// Ticks from the nearest to the farthest sample.
     pub(super) span: i32,
-    pub(super) units: i32,
+    /// Of the units that make up the span, `2^unit_bits` go to one step of evenly spaced samples: 128 to 240 in all.
+    pub(super) unit_bits: u32,
     /// Sum of the ticks beyond the nearest sample, in `2^tick_bits`.
     pub(super) sum: i32,
     pub(super) tick_bits: u32,
@@ -26,6 +27,8 @@ pub(super) struct Grid {
     pub(super) level_bits: u32,
 }
 
+/// Bits of the whole units in the span.
+const UNIT_BITS: u32 = 7;
 /// Bits of what the chord leaves.
 const LEVEL_BITS: u32 = 18;
 /// Bits of the coarse ticks between the grid's lines and the counter's.
@@ -39,10 +42,9 @@ impl Grid {
     /// On the grid the distances add up to 0: each rounding hands on what it leaves to the next.
     pub(super) fn lay(dots: &mut [Dot]) -> Option<Self> {
         let &Dot { x: span, y: rise } = dots.last()?;
-        // Between 1 and 15 steps, so that the grid has 128 to 240 units.
         let count = dots.len() as i32;
         let steps = count - 1;
-        let units = steps * (128 >> steps.checked_ilog2()?);
+        let unit_bits = UNIT_BITS.saturating_sub(steps.checked_ilog2()?);
         let chord_q32 = (i64::from(rise) << 32).checked_div(i64::from(span.max(0)))?;
         let tick_bits = TICK_BITS.saturating_sub(span.leading_zeros());
         let (mut sum, mut magnitudes) = (0, 0);
@@ -56,7 +58,7 @@ impl Grid {
         }
         let level_bits = (i32::BITS - LEVEL_BITS).saturating_sub(magnitudes.leading_zeros());
         let whole = count * (span >> tick_bits);
-        let scale = ((units << FRACTION_BITS) + (whole >> 1)).checked_div(whole)?;
+        let scale = ((steps << (unit_bits + FRACTION_BITS)) + (whole >> 1)).checked_div(whole)?;
         let mut rest = 0;
         for dot in dots {
             let x = (count * dot.x - sum) * scale + rest;
@@ -64,6 +66,6 @@ impl Grid {
             rest = x - (dot.x << FRACTION_BITS);
             dot.y = dot.y.saturating_add(1 << level_bits >> 1) >> level_bits;
         }
-        Some(Self { chord_q32, span, units, sum, tick_bits, level_bits })
+        Some(Self { chord_q32, span, unit_bits, sum, tick_bits, level_bits })
     }
 }

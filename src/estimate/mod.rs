@@ -3,6 +3,8 @@
 //!
 //! Integers carry what is large (levels in counts), `f32` what is small (residuals, variances).
 
+mod after;
+mod before;
 mod bend;
 mod block;
 mod bracket;
@@ -18,10 +20,12 @@ mod onset;
 mod shared;
 mod trend;
 
+pub(crate) use after::{After, Hint};
+pub(crate) use before::Before;
 pub(crate) use block::{Block, BlockMean};
 pub(crate) use bracket::{Bracket, movement_q16};
 pub(crate) use constant::Constant;
-pub(crate) use edge::{Edge, Hint, Nearest, Side};
+pub(crate) use edge::Nearest;
 pub(crate) use grid::Dot;
 pub use line::{Line, Point};
 pub use noise_fit::{Figure, NoiseFigures};

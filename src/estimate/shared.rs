@@ -1,5 +1,6 @@
 //! Samples of a short segment that are in the lines at both of its ends.
 
+use super::edge::Drawn;
 use super::form::{Form, Polynomial, dot};
 use super::grid::Dot;
 
@@ -52,21 +53,15 @@ impl Taken<'_> {
         dots.iter().take_while(is_own).count()
     }
 
-    /// What noise that both lines see adds to the quadratic forms of readout and walk, in a sample's variance and in
-    /// the walk of a unit. `dots` are those in both lines.
+    /// What noise that both lines see adds to the quadratic forms of readout and walk of this one, in a sample's
+    /// variance and in the walk of a unit. `dots` are the samples in both lines.
     ///
-    /// The increments of the walk up to the farthest sample are seen by the other line with the sum of its own weights
-    /// on this side of them, and by the run with 1 less those of this line.
-    pub(super) fn common(
-        &self,
-        dots: &[Dot],
-        (units_per_tick, middle): (f32, f32),
-        weights: &[Polynomial; 2],
-        walks: bool,
-    ) -> [[f32; 2]; 2] {
-        let others = self.weights.turned(self.apart, units_per_tick, middle);
-        let [level, change] = weights;
-        let curved = others[2] != 0.0 || level[2] != 0.0 || change[2] != 0.0;
+    /// Of a step of the walk, the other line sees the sum of its own weights nearer to this line's instant, and the run
+    /// 1 less that of this line.
+    pub(super) fn common(&self, dots: &[Dot], drawn: &Drawn, walks: bool) -> [[f32; 2]; 2] {
+        let others = self.weights.turned(self.apart, drawn.units_per_tick, drawn.middle);
+        let [level, change] = &drawn.weights;
+        let curved = drawn.curved || others[2] != 0.0;
         let (sums, samples) = Form::of_samples(dots, curved);
         let seen = samples.with(&others);
         let readout = [-2.0 * dot(&seen, level, curved), -dot(&seen, change, curved)];
