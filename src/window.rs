@@ -1,6 +1,6 @@
 //! The latest integrating samples, kept for the straight lines beside an interruption.
 
-use heapless::{Deque, Vec};
+use heapless::Vec;
 
 use crate::estimate::{After, Before, Dot, Hint, Nearest, Taken, Weights};
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
@@ -8,34 +8,37 @@ use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 /// Integer work only, until a line is asked for.
 #[derive(Clone, Debug, Default)]
 pub(crate) struct Window {
-    /// Tick and level, in fine steps; of the level the lower 32 bits, which is enough to tell one from the next.
-    samples: Deque<(u32, i32), EDGE_SAMPLES_MAX>,
     /// The latest level, 2^-16 counts.
     latest_q16: i64,
-    /// Samples since the segment began, saturating.
+    /// Where the next sample goes, and samples since the segment began, saturating.
+    next: u8,
     seen: u8,
+    /// Tick and level, in fine steps; of the level the lower 32 bits, which is enough to tell one from the next.
+    samples: [(u32, i32); EDGE_SAMPLES_MAX],
 }
+
+/// Places are counted in a byte and wrap.
+const _: () = assert!(EDGE_SAMPLES_MAX.is_power_of_two() && EDGE_SAMPLES_MAX <= 128);
 
 impl Window {
     /// A new segment begins.
     pub(crate) fn clear(&mut self) {
-        self.samples.clear();
         self.seen = 0;
     }
 
     /// Takes a sample.
     pub(crate) fn push(&mut self, tick: u32, level_q16: i64, derived: &Derived) {
-        if self.samples.len() >= usize::from(derived.edge_samples) {
-            self.samples.pop_front();
-        }
         self.latest_q16 = level_q16;
-        let _ = self.samples.push_back((tick, (level_q16 >> (16 - derived.fine_bits)) as i32));
+        if let Some(place) = self.samples.get_mut(usize::from(self.next) % EDGE_SAMPLES_MAX) {
+            *place = (tick, (level_q16 >> (16 - derived.fine_bits)) as i32);
+        }
+        self.next = self.next.wrapping_add(1);
         self.seen = self.seen.saturating_add(1);
     }
 
     /// Tick and level, 2^-16 counts, of the latest sample of the segment.
     pub(crate) fn latest(&self) -> Option<(u32, i64)> {
-        self.samples.back().map(|&(tick, _)| (tick, self.latest_q16))
+        (self.seen > 0).then(|| (self.sample(0).0, self.latest_q16))
     }
 
     /// Whether the segment has filled a window.
@@ -53,9 +56,9 @@ impl Window {
         sample_var: f32,
         derived: &Derived,
     ) -> Option<After> {
-        let &(tick, level) = self.iter().next()?;
+        let (tick, level) = self.iter(derived).next()?;
         let nearest = Nearest { ticks: tick.wrapping_sub(instant), level_q16: self.level_q16(level, derived) };
-        let mut dots = gather(self.iter().map(|&(t, l)| (t.wrapping_sub(tick), l.wrapping_sub(level))));
+        let mut dots = gather(self.iter(derived).map(|(t, l)| (t.wrapping_sub(tick), l.wrapping_sub(level))));
         Some(After::fit(&mut dots, &nearest, sample_var, hint, d_s, derived))
     }
 
@@ -68,9 +71,9 @@ impl Window {
         sample_var: f32,
         derived: &Derived,
     ) -> Option<Before> {
-        let &(tick, level) = self.iter().next_back()?;
+        let (tick, level) = self.iter(derived).next_back()?;
         let nearest = Nearest { ticks: instant.wrapping_sub(tick), level_q16: self.level_q16(level, derived) };
-        let mut dots = gather(self.iter().rev().map(|&(t, l)| (tick.wrapping_sub(t), l.wrapping_sub(level))));
+        let mut dots = gather(self.iter(derived).rev().map(|(t, l)| (tick.wrapping_sub(t), l.wrapping_sub(level))));
         let taken = opening.map(|opening| opening.taken(instant));
         Some(Before::fit(&mut dots, &nearest, sample_var, taken.as_ref(), derived))
     }
@@ -83,10 +86,15 @@ impl Window {
         (latest << shift).saturating_add(above << shift)
     }
 
-    /// Oldest first.
-    fn iter(&self) -> impl DoubleEndedIterator<Item = &(u32, i32)> + Clone {
-        let (older, newer) = self.samples.as_slices();
-        older.iter().chain(newer)
+    /// The samples of the segment that lines are drawn through, oldest first.
+    fn iter(&self, derived: &Derived) -> impl DoubleEndedIterator<Item = (u32, i32)> {
+        (0..self.seen.min(derived.edge_samples)).rev().map(|age| self.sample(age))
+    }
+
+    /// The sample so many before the latest.
+    fn sample(&self, age: u8) -> (u32, i32) {
+        let place = usize::from(self.next.wrapping_sub(1).wrapping_sub(age)) % EDGE_SAMPLES_MAX;
+        self.samples.get(place).copied().unwrap_or_default()
     }
 }
 
