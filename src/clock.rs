@@ -25,7 +25,7 @@ impl Span {
     /// Adds the step to another sample. Squares matter only where the level leaks, in coarse ticks of `2^shift`, so
     /// that they last for years whatever the counter's rate.
     pub(crate) fn add(&mut self, ticks: u32, coarse_shift: Option<u8>) {
-        self.ticks = self.ticks.saturating_add(u64::from(ticks));
+        self.add_blind(u64::from(ticks));
         if let Some(shift) = coarse_shift {
             let coarse = (u64::from(ticks) + (1 << shift >> 1)) >> shift;
             self.squares = self.squares.saturating_add(coarse * coarse);
@@ -45,9 +45,9 @@ impl Span {
         Self { ticks: all.ticks.saturating_sub(ticks), ..all }
     }
 
-    /// Adds time in which no sample mattered.
+    /// Adds time in which no sample mattered. The fastest counter takes 146 years to 2^64 ticks.
     pub(crate) fn add_blind(&mut self, ticks: u64) {
-        self.ticks = self.ticks.saturating_add(ticks);
+        self.ticks = self.ticks.wrapping_add(ticks);
     }
 }
 
@@ -56,7 +56,9 @@ impl Span {
 /// A step of up to 2^31 - 1 ticks is time that passed; a longer one cannot be told from a counter that ran backwards.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Clock {
-    last: Option<u32>,
+    /// The latest tick; 0 before the first.
+    last: u32,
+    started: bool,
     /// The latest tick that was out of order, and how many went forward from there.
     astray: u32,
     onward: u8,
@@ -71,17 +73,16 @@ const RESTART_TICKS: u8 = 3;
 impl Clock {
     /// Takes the next tick; a stalled counter leaves the clock where it was.
     pub(crate) fn advance(&mut self, tick: u32) -> Elapsed {
-        let elapsed = match self.last {
-            None => Elapsed::Start,
-            Some(last) => match tick.wrapping_sub(last) {
-                0 | 0x8000_0000.. => match self.stray(tick) {
-                    false => return Elapsed::Stalled,
-                    true => Elapsed::Restarted,
-                },
-                ticks => Elapsed::Ticks(ticks),
+        let elapsed = match tick.wrapping_sub(self.last) {
+            _ if !self.started => Elapsed::Start,
+            ticks @ 1..=LONGEST_STEP => Elapsed::Ticks(ticks),
+            _ => match self.stray(tick) {
+                false => return Elapsed::Stalled,
+                true => Elapsed::Restarted,
             },
         };
-        self.last = Some(tick);
+        self.last = tick;
+        self.started = true;
         self.onward = 0;
         elapsed
     }
@@ -96,17 +97,17 @@ impl Clock {
 
     /// Ticks from the latest tick to this one, if the counter has run forward.
     pub(crate) fn ticks_to(&self, tick: u32) -> u32 {
-        tick.wrapping_sub(self.tick())
+        tick.wrapping_sub(self.last)
     }
 
     /// Takes a tick that is known to lie within reach, after one that was in order.
     pub(crate) fn pass(&mut self, tick: u32) {
-        self.last = Some(tick);
+        self.last = tick;
     }
 
     /// The latest tick; 0 before the first.
     pub(crate) fn tick(&self) -> u32 {
-        self.last.unwrap_or(0)
+        self.last
     }
 }
 

@@ -30,7 +30,7 @@ impl Window {
     pub(crate) fn push(&mut self, tick: u32, level_q16: i64, derived: &Derived) {
         self.latest_q16 = level_q16;
         if let Some(place) = self.samples.get_mut(usize::from(self.next) % EDGE_SAMPLES_MAX) {
-            *place = (tick, (level_q16 >> (16 - derived.fine_bits)) as i32);
+            *place = (tick, low_bits(level_q16, 16 - derived.fine_bits));
         }
         self.next = self.next.wrapping_add(1);
         self.seen = self.seen.saturating_add(1);
@@ -96,6 +96,12 @@ impl Window {
         let place = usize::from(self.next.wrapping_sub(1).wrapping_sub(age)) % EDGE_SAMPLES_MAX;
         self.samples.get(place).copied().unwrap_or_default()
     }
+}
+
+/// `level_q16 >> shift` to 32 bits, for shifts of 1 to 31: in halves, which costs a small target less.
+fn low_bits(level_q16: i64, shift: u8) -> i32 {
+    let (low, high) = (level_q16 as u32, (level_q16 >> 32) as u32);
+    (low.wrapping_shr(u32::from(shift)) | high.wrapping_shl(32 - u32::from(shift))).cast_signed()
 }
 
 /// The line with which a segment opened: which samples it used, and with what weights they are in the run's total.

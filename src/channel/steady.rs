@@ -59,14 +59,19 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(always)]
     pub(super) fn extend(&mut self, sample: &Sample, ticks: u32) {
         let derived = self.setup.derived();
-        let level_q16 = self.level.take(sample, ticks, derived);
-        self.zeroing.pending.add(ticks, derived.coarse_shift);
+        let mut level_q16 = derived.linear_q16(sample.counts);
+        if derived.keeps_level {
+            self.zeroing.pending.add_blind(u64::from(ticks));
+        } else {
+            self.zeroing.pending.add(ticks, derived.coarse_shift);
+            level_q16 = self.level.take(sample, ticks, derived);
+            if is_out_of_range(level_q16) {
+                // The next sample is looked at closely.
+                self.steady = None;
+            }
+        }
         self.zeroing.drive(ticks);
         self.window.push(sample.tick, level_q16, derived);
-        if !derived.keeps_level && is_out_of_range(level_q16) {
-            // The next sample is looked at closely.
-            self.steady = None;
-        }
     }
 
     /// Takes a sample of a zero.

@@ -63,15 +63,13 @@ impl Level {
     /// is closed nothing leaks, and the dielectric sees the reset level.
     ///
     /// The first sample finds the dielectric at rest.
-    #[inline(always)]
+    #[inline(never)]
     pub(crate) fn take(&mut self, sample: &Sample, ticks: u32, derived: &Derived) -> i64 {
         let linear_q16 = derived.linear_q16(sample.counts);
-        if derived.keeps_level { linear_q16 } else { self.pass(linear_q16, ticks, sample.mode == Mode::Reset, derived) }
-    }
-
-    /// A level that leaks or soaks goes on to a sample.
-    #[inline(never)]
-    fn pass(&mut self, linear_q16: i64, ticks: u32, closed: bool, derived: &Derived) -> i64 {
+        if derived.keeps_level {
+            return linear_q16;
+        }
+        let closed = sample.mode == Mode::Reset;
         let above = if closed { 0 } else { derived.above_reset(linear_q16) };
         // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.
         let from = match self.above.replace(above) {

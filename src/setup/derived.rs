@@ -155,6 +155,7 @@ impl Derived {
     }
 
     /// The level that a straight converter would have given, 2^-16 counts.
+    #[inline(always)]
     pub(crate) fn linear_q16(&self, code: i32) -> i64 {
         match self.linearity {
             Some(table) => table.linear_q16(code),

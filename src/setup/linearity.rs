@@ -90,6 +90,7 @@ impl Linearity {
     }
 
     /// The ideal level at `code`, 2^-16 counts: code minus error. Any code will do.
+    #[inline(never)]
     pub(crate) fn linear_q16(&self, code: i32) -> i64 {
         let [first, ..] = &self.knots;
         let not_above = self.knots.partition_point(|knot| knot.code <= code);
