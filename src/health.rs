@@ -68,7 +68,7 @@ impl Health {
             return;
         }
         let shortest = ticks - (ticks >> 4);
-        let longest = ticks.saturating_add(ticks >> 4).min(derived.gap_limit_ticks).min(LONGEST_STEP);
+        let longest = ticks.saturating_add(ticks >> 4).min(derived.step_limit_ticks).min(LONGEST_STEP);
         let guard = match derived.worst_rate_q16 {
             0 => 0,
             _ => derived.worst_movement(longest).saturating_add(i64::from(derived.guard_counts)).saturating_add(1),

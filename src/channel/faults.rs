@@ -29,6 +29,15 @@ impl<Q: Integral> Channel<'_, Q> {
         }
     }
 
+    /// The counter does not move: how much time passes is not known, so a zero will have to find its level again.
+    #[inline(never)]
+    pub(super) fn stall(&mut self, tick: u32, notices: &mut Notices) {
+        self.fault(Reason::ClockStalled, tick, notices);
+        if !self.is_running() {
+            self.lose_level();
+        }
+    }
+
     /// The counter began anew: nobody knows how much time passed.
     #[inline(never)]
     pub(super) fn lose_time(&mut self, tick: u32, notices: &mut Notices) {

@@ -25,7 +25,7 @@ impl<Q: Integral> Channel<'_, Q> {
         };
         let mut notices = Notices::between(switched_tick, sample.tick);
         if elapsed == Elapsed::Stalled {
-            self.fault(Reason::ClockStalled, sample.tick, &mut notices);
+            self.stall(sample.tick, &mut notices);
         } else {
             if elapsed == Elapsed::Restarted {
                 self.lose_time(sample.tick, &mut notices);
@@ -50,7 +50,7 @@ impl<Q: Integral> Channel<'_, Q> {
         if jumped {
             self.fault(Reason::Jump, sample.tick, notices);
         }
-        if ticks > derived.gap_limit_ticks {
+        if ticks > derived.step_limit_ticks {
             self.gap(was_running, sample.tick, notices);
         }
         self.health.expect(ticks, derived);
@@ -137,9 +137,6 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(never)]
     fn reset(&mut self, sample: &Sample, ticks: u32, notices: &mut Notices) {
         self.level.take(sample, ticks, self.setup.derived());
-        if !self.run.as_ref().and_then(|run| run.crossing.as_ref()).is_some_and(|crossing| crossing.input_open) {
-            self.zeroing.drive(ticks);
-        }
         self.interrupted(ticks, |crossing, ticks| {
             let booked = if crossing.input_open { &mut crossing.held } else { &mut crossing.dead };
             *booked = booked.saturating_add(ticks);

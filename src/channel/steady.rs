@@ -3,7 +3,7 @@
 
 use super::{Channel, stop};
 use crate::health::Health;
-use crate::level::Seen;
+use crate::level::{Seen, Terms};
 use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::sample::{Mode, Sample, Step};
@@ -70,7 +70,7 @@ impl<Q: Integral> Channel<'_, Q> {
                 self.steady = None;
             }
         }
-        self.zeroing.drive(ticks);
+        self.zeroing.drive(u64::from(ticks));
         self.window.push(sample.tick, level_q16, derived);
     }
 
@@ -78,13 +78,37 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(never)]
     pub(super) fn zero(&mut self, sample: &Sample, ticks: u32) -> Taken {
         let derived = self.setup.derived();
-        let level_q16 = self.level.take(sample, ticks, derived);
-        if Health::at_rail(sample.counts, derived) {
-            self.zeroing.skip(ticks, derived);
-            return Taken::Used;
-        }
+        let at_rail = Health::at_rail(sample.counts, derived);
+        let taken = if derived.keeps_level {
+            let level_q16 = derived.linear_q16(sample.counts);
+            let seen = Seen { tick: sample.tick, ticks, level_q16, terms: Terms::default() };
+            self.judge_zero(at_rail, &seen)
+        } else {
+            self.zero_that_leaks(at_rail, sample, ticks)
+        };
+        if at_rail { Taken::Used } else { taken }
+    }
+
+    /// The level forgets a sample that is left out.
+    #[inline(never)]
+    fn zero_that_leaks(&mut self, at_rail: bool, sample: &Sample, ticks: u32) -> Taken {
+        let before = self.level;
+        let level_q16 = self.level.take(sample, ticks, self.setup.derived());
         let seen = Seen { tick: sample.tick, ticks, level_q16, terms: self.level.terms() };
-        self.zeroing.take(&seen, stop(&self.run), derived)
+        let taken = self.judge_zero(at_rail, &seen);
+        if matches!(taken, Taken::Spike) {
+            self.level = before.without(ticks);
+        }
+        taken
+    }
+
+    fn judge_zero(&mut self, at_rail: bool, seen: &Seen) -> Taken {
+        let derived = self.setup.derived();
+        if at_rail {
+            self.zeroing.skip(seen.ticks, derived);
+            return Taken::Spike;
+        }
+        self.zeroing.take(seen, stop(&self.run), derived)
     }
 
     /// The same where nothing else can be said of the sample.

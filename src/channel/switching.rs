@@ -143,6 +143,7 @@ impl<Q: Integral> Channel<'_, Q> {
         self.zeroing.considered.skip(self.level.terms());
         self.zeroing.trend.rest(derived.rate_walk * math::seconds(crossing.held, derived.tick_s));
         run.driven.add_blind(crossing.dead);
+        self.zeroing.drive(crossing.dead);
         run.held = run.held.saturating_add(crossing.held);
         run.bridges = run.bridges.saturating_add(1);
         run.stage = Stage::Integrating;

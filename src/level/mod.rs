@@ -56,6 +56,8 @@ pub(crate) struct Level {
     leak: Leak,
     soakage: Soakage,
     terms: Terms,
+    /// Time that samples which were left out have taken, ticks.
+    left_out: u32,
 }
 
 impl Level {
@@ -69,6 +71,7 @@ impl Level {
         if derived.keeps_level {
             return linear_q16;
         }
+        let ticks = ticks.saturating_add(core::mem::take(&mut self.left_out));
         let closed = sample.mode == Mode::Reset;
         let above = if closed { 0 } else { derived.above_reset(linear_q16) };
         // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.
@@ -89,6 +92,12 @@ impl Level {
             self.terms.soaked_q16 = self.soakage.q16(law);
         }
         linear_q16.saturating_add(self.terms.sum_q16())
+    }
+
+    /// The level as it was, for a sample `ticks` after it that will be left out: what leaks and soaks follows from the
+    /// samples on both sides of it.
+    pub(crate) fn without(self, ticks: u32) -> Self {
+        Self { left_out: self.left_out.saturating_add(ticks), ..self }
     }
 
     /// Puts the zero of what has leaked near the present, and gives by how much, counts: only differences of the

@@ -81,8 +81,9 @@ pub(crate) struct Derived {
     pub(crate) pedestal: Option<(f32, f32)>,
     /// Noise that an opening switch freezes on the capacitor, `k T / C`, counts^2.
     pub(crate) ktc_var: f32,
-    /// Longest step of time within a whole run, ticks.
+    /// Longest time with the reset switch closed within a whole run, and longest step from sample to sample, ticks.
     pub(crate) gap_limit_ticks: u32,
+    pub(crate) step_limit_ticks: u32,
     /// Largest rate of the level at the worst-case input and drift, 2^-16 counts per tick; 0: unknown.
     pub(crate) worst_rate_q16: u64,
     /// Headroom that the advice keeps besides one sample period: latency and readout noise, counts.

@@ -18,7 +18,7 @@ pub struct Policy {
     /// average better.
     pub edge_samples: u8,
     /// Longest time between samples, and longest time with the reset switch closed, that leaves a run whole, s: above
-    /// 0, and below half the counter's span.
+    /// 0, and below half the counter's span. Between samples at most 16 time constants of a leak, if that is less.
     pub gap_limit_s: f64,
     /// Equal readings in a row that mean a dead converter: 0 (never) to 65535. Only watched where `readout_counts` is
     /// at least 0.5: a quieter channel may rightly repeat itself.

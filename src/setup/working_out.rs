@@ -139,6 +139,7 @@ impl Derived {
             "longer than a reset has to last (Setup::min_on_time_s)"
         );
         check!(min_on_time_s * converter.tick_hz <= 4e9, "settling_s", "such that a reset lasts at most 4e9 ticks");
+        let gap_limit_ticks = policy.gap_limit_s * converter.tick_hz;
         let switch_tau_s = circuit.switch_resistance_ohm * circuit.capacitance_f;
         let pedestal = match circuit.pedestal_u_v {
             Some(u) => {
@@ -154,7 +155,7 @@ impl Derived {
             integral_per_count: 1.0 / counts_per_integral,
             readout_var: readout_var as f32,
             level_walk: (density * density / 2.0) as f32,
-            rate_walk: (wander * wander) as f32,
+            rate_walk: normal(wander * wander),
             flicker: (flicker * flicker) as f32,
             rate_limit: rate_limit as f32,
             rate_prior_var: (rate_limit * rate_limit / 3.0) as f32,
@@ -170,7 +171,12 @@ impl Derived {
             reset_attempts: policy.reset_attempts,
             pedestal,
             ktc_var: (BOLTZMANN * ROOM_K / circuit.capacitance_f / (converter.lsb_v * converter.lsb_v)) as f32,
-            gap_limit_ticks: (policy.gap_limit_s * converter.tick_hz) as u32,
+            step_limit_ticks: if leak_per_tick * gap_limit_ticks > LEAK_STEP {
+                (LEAK_STEP / leak_per_tick) as u32
+            } else {
+                gap_limit_ticks as u32
+            },
+            gap_limit_ticks: gap_limit_ticks as u32,
             worst_rate_q16: per_tick_q16 as u64 + (worst_rate > 0.0) as u64,
             guard_counts: ceil(worst_rate * policy.latency_s + policy.guard_sigma * sigma),
             step_counts: if worst_rate > 0.0 { ceil(8.0 * sigma) } else { ceil(0.25 * span + 8.0 * sigma) },
@@ -195,6 +201,14 @@ impl Derived {
             droop_prior_var: (droop_limit * droop_limit / 3.0) as f32,
         })
     }
+}
+
+/// Longest step over which what leaks can be told from the levels at its ends, time constants.
+const LEAK_STEP: f64 = 16.0;
+
+/// A variance as `f32`; 0 where one over it would be infinite.
+const fn normal(variance: f64) -> f32 {
+    if variance < 1e-30 { 0.0 } else { variance as f32 }
 }
 
 /// Boltzmann constant, J/K (SI Brochure, 9th edition: exact), and the temperature that kTC noise is reckoned for.

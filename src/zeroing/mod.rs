@@ -227,7 +227,12 @@ impl Zeroing {
         if self.known_ticks > 0 {
             self.told_ticks = self.known_ticks;
         }
-        self.catch_up(terms, derived);
+        if self.level_known {
+            self.catch_up(terms, derived);
+        } else {
+            // Of the level that the run before left nothing was seen: its baseline ends with the run.
+            self.resting = self.resting.saturating_add(core::mem::take(&mut self.pending).ticks);
+        }
         change
     }
 
@@ -267,7 +272,7 @@ impl Zeroing {
     }
 
     /// Time of a run in which the baseline drifts, whatever the temperature.
-    pub(crate) fn drive(&mut self, ticks: u32) {
+    pub(crate) fn drive(&mut self, ticks: u64) {
         self.warmth.drive(ticks);
     }
 

@@ -48,10 +48,10 @@ impl Warmth {
     }
 
     /// Time in which the baseline drifts.
-    pub(super) fn drive(&mut self, ticks: u32) {
+    pub(super) fn drive(&mut self, ticks: u64) {
         let risen = self.risen();
         if risen != 0 {
-            self.area = self.area.saturating_add(i64::from(risen).saturating_mul(i64::from(ticks)));
+            self.area = self.area.saturating_add(i64::from(risen).saturating_mul(ticks.cast_signed()));
         }
     }
 

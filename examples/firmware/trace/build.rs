@@ -62,8 +62,14 @@ fn pack(name: &str, csv: &str) -> Result<String, Box<dyn Error>> {
     let millidegrees: i32 = temperature.replace('.', "").parse()?;
     let mut packed = String::new();
     for (mode, rows) in spans {
-        let (initial, rest) = mode.split_at(1);
-        write!(packed, "(Mode::{}{rest},{rows}),", initial.to_uppercase())?;
+        let variant = match mode {
+            "zero" => "Zero",
+            "integrate" => "Integrate",
+            "hold" => "Hold",
+            "reset" => "Reset",
+            _ => return Err(format!("no mode is called {mode}").into()),
+        };
+        write!(packed, "(Mode::{variant},{rows}),")?;
     }
     Ok(format!(
         "const {}: Table = Table {{ name: \"{name}\", first: ({tick}, {counts}), millidegrees: {millidegrees}, \
