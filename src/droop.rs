@@ -59,12 +59,15 @@ impl Droop {
     /// A sample in a hold.
     pub(crate) fn take(&mut self, seen: &Seen, derived: &Derived) {
         self.pending.add(seen.ticks, derived.coarse_shift);
-        if !self.block.push(seen.level_q16, seen.ticks, derived.block_ticks, derived.fine_bits) {
+        if self.block.is_empty() {
+            self.block.start(seen.level_q16 >> 16);
+        }
+        if !self.block.push(self.block.above(seen.level_q16), seen.ticks, derived.block_ticks) {
             return;
         }
-        let Some(mean) = self.block.take(derived.fine_bits) else { return };
-        let span = self.pending.leave(mean.age);
-        let variance = derived.block_var(mean.samples);
+        let Some(mean) = self.block.take() else { return };
+        let span = self.pending.leave(u64::from(mean.age));
+        let variance = derived.block_var(mean.share);
         if self.level_known {
             advance(&mut self.trend, span, derived);
             self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));

@@ -1,10 +1,11 @@
 //! Totals across resets and holds: what was measured, what was interpolated, and the variance they added.
 
 use crate::estimate::{After, Before, LEVEL_VARIANCE_MAX};
+use crate::math;
 
 /// 2^-16 counts, rounded toward zero, saturating.
 pub(crate) fn to_q16(counts: f32) -> i64 {
-    (counts * 65536.0) as i64
+    math::whole(counts * 65536.0)
 }
 
 /// Whole counts in 2^-16 counts, saturating.

@@ -17,6 +17,60 @@ pub(crate) fn sqrt_f64(x: f64) -> f64 {
     libm::sqrt(x)
 }
 
+/// One over the square root, to 1e-4: the bits of the significand in integers of 32 bits, three Newton steps. Where a
+/// square root only says how far off is far off, this costs a fraction of [`sqrt`]. A number that is not normal counts as
+/// the nearest one that is.
+pub(crate) fn about_inverse_sqrt(x: f32) -> f32 {
+    let bits = x.to_bits().clamp(f32::MIN_POSITIVE.to_bits(), f32::MAX.to_bits());
+    let exponent = (bits >> 23).cast_signed();
+    // x = v 4^half with v from 1 to 4, in 2^-14; its inverse root is from 1/2 to 1, in 2^-16.
+    let half = (exponent - 127) >> 1;
+    let v = ((bits & 0x7F_FFFF) | 0x80_0000) >> (8 + (exponent & 1));
+    // A straight line within 9 % of it; the steps come from below, so that no product passes 2^32.
+    let mut root = 69_888 - ((v * 19_968) >> 15);
+    for _ in 0..3 {
+        let square = (root * root) >> 16;
+        let toward = (3 * 65_536 - ((square * v) >> 14)) >> 2;
+        root = (root * toward) >> 15;
+    }
+    root as f32 * two_to(-16 - half)
+}
+
+/// Two to a whole power that `f32` has as a normal number; the nearest one of these.
+pub(crate) fn two_to(power: i32) -> f32 {
+    f32::from_bits(((power.clamp(-126, 127) + 127) << 23).cast_unsigned())
+}
+
+/// The smaller of two numbers that are not negative: their bits are ordered as they are. A number that is not one is
+/// larger than any.
+pub(crate) fn lesser(x: f32, y: f32) -> f32 {
+    f32::from_bits(x.to_bits().min(y.to_bits()))
+}
+
+/// The larger of two numbers that are not negative.
+pub(crate) fn greater(x: f32, y: f32) -> f32 {
+    f32::from_bits(x.to_bits().max(y.to_bits()))
+}
+
+/// `x` within `-most` to `most`.
+pub(crate) fn within(x: f32, most: f32) -> f32 {
+    if x.to_bits() << 1 <= most.to_bits() << 1 { x } else { most.copysign(x) }
+}
+
+/// A whole number, correctly rounded. Most fit 32 bits, whose conversion costs a fraction of that of 64.
+pub(crate) fn float(x: i64) -> f32 {
+    match i32::try_from(x) {
+        Ok(x) => x as f32,
+        Err(_) => x as f32,
+    }
+}
+
+/// A number's whole part, saturating. Most fit 32 bits.
+pub(crate) fn whole(x: f32) -> i64 {
+    let short = x as i32;
+    if short == i32::MAX || short == i32::MIN { x as i64 } else { i64::from(short) }
+}
+
 /// Natural logarithm of a number above 0.
 pub(crate) fn ln(x: f32) -> f32 {
     libm::logf(x)
@@ -44,12 +98,12 @@ pub(crate) fn abs(x: f32) -> f32 {
 
 /// Nearest whole number of counts, halves away from zero, saturating at the ends of `i64`.
 pub(crate) fn nearest(x: f32) -> i64 {
-    libm::roundf(x) as i64
+    whole(libm::roundf(x))
 }
 
 /// A difference of levels in 2^-16 counts, as counts.
 pub(crate) fn counts(q16: i64) -> f32 {
-    q16 as f32 * (1.0 / 65536.0)
+    float(q16) * (1.0 / 65536.0)
 }
 
 /// A level in 2^-16 counts as whole counts and the rest, which is not negative.
@@ -59,5 +113,53 @@ pub(crate) fn whole_and_rest(q16: i64) -> (i64, f32) {
 
 /// Seconds in `ticks` of a counter whose period is `tick_s`.
 pub(crate) fn seconds(ticks: u64, tick_s: f32) -> f32 {
-    ticks as f32 * tick_s
+    let ticks = match u32::try_from(ticks) {
+        Ok(ticks) => ticks as f32,
+        Err(_) => ticks as f32,
+    };
+    ticks * tick_s
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_inverse_square_root_is_within_1e_4_for_every_significand() {
+        let mut worst = 0.0_f64;
+        for bits in 0x3F80_0000..0x4080_0000 {
+            let x = f32::from_bits(bits);
+            worst = worst.max((f64::from(about_inverse_sqrt(x)) * libm::sqrt(f64::from(x)) - 1.0).abs());
+        }
+        assert!(worst < 1e-4 && worst > 1e-6, "{worst}");
+    }
+
+    #[test]
+    fn the_inverse_square_root_holds_for_every_exponent() {
+        for exponent in -126..=127 {
+            let x = two_to(exponent) * 1.5;
+            let off = f64::from(about_inverse_sqrt(x)) * libm::sqrt(f64::from(x)) - 1.0;
+            assert!(off.abs() < 1e-4, "{x}: {off}");
+        }
+        for x in [0.0, -1.0, 1e-45, f32::INFINITY, f32::NAN, f32::MAX] {
+            assert!(about_inverse_sqrt(x) > 0.0 && about_inverse_sqrt(x) < 1e20, "{x}");
+        }
+    }
+
+    #[test]
+    fn short_conversions_are_the_long_ones() {
+        for x in [0_i64, 1, -1, 0x7FFF_FFFF, 0x8000_0000, -0x8000_0000, -0x8000_0001, i64::MAX, i64::MIN, 16_777_217] {
+            assert_eq!(float(x), x as f32);
+        }
+        for x in [0.0, 1.9, -1.9, 2.147e9, 2.147_483_6e9, 2.2e9, -2.147_483_6e9, -2.2e9, 1e30, -1e30, f32::NAN] {
+            assert_eq!(whole(x), x as i64);
+        }
+    }
+
+    #[test]
+    fn limits_are_kept() {
+        assert_eq!((within(3.0, 2.0), within(-3.0, 2.0), within(1.0, 2.0)), (2.0, -2.0, 1.0));
+        assert_eq!((lesser(3.0, 2.0), lesser(2.0, 3.0), lesser(f32::NAN, 2.0)), (2.0, 2.0, 2.0));
+        assert_eq!((two_to(-200), two_to(-3), two_to(0), two_to(200)), (f32::MIN_POSITIVE, 0.125, 1.0, 1.7014118e38));
+    }
 }

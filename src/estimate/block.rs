@@ -2,29 +2,37 @@
 
 use crate::math;
 
-/// One fine step, counts.
+/// Bits of a *fine step*, a fraction of a count.
+const FINE_BITS: u32 = 8;
+
+/// One fine step of a level kept with so many bits of a count, counts.
 pub(crate) fn fine_step(fine_bits: u8) -> f32 {
     1.0 / (1_u32 << fine_bits.min(31)) as f32
 }
 
 /// A block being filled.
 ///
-/// A mean over whole periods holds nothing of a hum. Integers only, until the block is full.
+/// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
+/// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So deviations are kept
+/// within 16 bits and instants within 15: what grows past that is *coarsened*, the sums so far and all that comes after,
+/// which costs no more than 2^-15 of the farthest deviation and 2^-14 of the time.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
-    /// The first sample, 2^-16 counts.
-    first_q16: i64,
-    count: u16,
-    /// Ticks since the block began.
-    span: u64,
-    /// Sums over the samples: levels above the first in fine steps, instants since the block began in ticks and in
-    /// coarse steps, squares and product of levels and coarse instants.
-    levels: i64,
-    ticks: u64,
-    instants: u64,
-    level_squares: u64,
+    /// Where deviations are counted from, whole counts in 2^-16 counts.
+    base_q16: i64,
+    /// Sums over the samples: squares of deviations and of instants, and products of the two.
+    squares: u64,
     instant_squares: u64,
     products: i64,
+    /// Sums of deviations and of instants.
+    deviations: i32,
+    instants: u32,
+    /// Ticks since the block began.
+    span: u32,
+    count: u16,
+    /// Deviations are in `2^coarse` fine steps, instants in `2^coarse_time` ticks.
+    coarse: u8,
+    coarse_time: u8,
 }
 
 /// What a block came to.
@@ -34,66 +42,116 @@ pub(crate) struct BlockMean {
     pub(crate) counts: i64,
     pub(crate) rest: f32,
     /// Ticks from the mean instant of the samples to the latest of them.
-    pub(crate) age: u64,
+    pub(crate) age: u32,
     pub(crate) samples: u16,
+    /// One over `samples`.
+    pub(crate) share: f32,
     /// Sum of the squared deviations from a straight line, counts^2.
     pub(crate) scatter: f32,
     /// Ticks that the block spans.
-    pub(crate) span: u64,
+    pub(crate) span: u32,
 }
 
 impl Block {
-    /// Time passes without a usable sample.
-    pub(crate) fn skip(&mut self, ticks: u32) {
-        self.span = self.span.saturating_add(u64::from(ticks));
+    /// Whether no sample is in it.
+    pub(crate) fn is_empty(&self) -> bool {
+        self.count == 0
     }
 
-    /// Takes a level in 2^-16 counts, `ticks` after the one before. `true` when the block is as close to `length` ticks
-    /// as this spacing allows.
-    ///
-    /// Instants are summed in coarse steps of at most `length / 2^14`, levels in fine steps of `2^-fine_bits` counts,
-    /// so that products fit 64 bits and squares of instants 32.
-    pub(crate) fn push(&mut self, level_q16: i64, ticks: u32, length: u32, fine_bits: u8) -> bool {
-        if self.count == 0 {
-            self.first_q16 = level_q16;
+    /// Counts deviations from `base`, whole counts near the levels to come; for an empty block.
+    pub(crate) fn start(&mut self, base: i64) {
+        self.base_q16 = base.saturating_mul(1 << 16);
+    }
+
+    /// A level in 2^-16 counts as fine steps above the base, at most 2^30 of them.
+    pub(crate) fn above(&self, level_q16: i64) -> i32 {
+        // Levels are far from the ends of 64 bits, the more so differences of levels in one zero.
+        let above = level_q16.wrapping_sub(self.base_q16).wrapping_add(1 << (15 - FINE_BITS)) >> (16 - FINE_BITS);
+        let end = 1 << 30;
+        match i32::try_from(above) {
+            Ok(above) if (-end..=end).contains(&above) => above,
+            _ if above < 0 => -end,
+            _ => end,
         }
+    }
+
+    /// Time passes without a usable sample.
+    pub(crate) fn skip(&mut self, ticks: u32) {
+        self.span = self.span.saturating_add(ticks);
+    }
+
+    /// Takes a level, fine steps [`above`](Self::above) the base, `ticks` after the one before. `true` when the block
+    /// is as close to `length` ticks as this spacing allows.
+    pub(crate) fn push(&mut self, above: i32, ticks: u32, length: u32) -> bool {
         self.skip(ticks);
-        let above = level_q16.saturating_sub(self.first_q16) >> (16 - fine_bits);
-        let above = above.clamp(i64::from(i32::MIN), i64::from(i32::MAX)) as i32;
-        let coarse = (self.span >> coarse_shift(length)).min(0xFFFF) as u32;
+        let (deviation, instant) = self.within_bits(above);
+        self.deviations += deviation;
+        self.instants += instant;
+        self.squares += u64::from((deviation * deviation).cast_unsigned());
+        self.instant_squares += u64::from(instant * instant);
+        self.products += i64::from(deviation * instant.cast_signed());
+        // A block ends at 2^16 samples: sums of products of 30 bits stay within 46, of deviations within 32.
         self.count = self.count.saturating_add(1);
-        // A block ends at 2^16 samples, so that only squares of levels far from noise can reach the end of their sum.
-        self.levels += i64::from(above);
-        self.ticks = self.ticks.saturating_add(self.span);
-        self.instants += u64::from(coarse);
-        let magnitude = u64::from(above.unsigned_abs());
-        self.level_squares = self.level_squares.saturating_add(magnitude * magnitude);
-        self.instant_squares += u64::from(coarse * coarse);
-        self.products += i64::from(above) * i64::from(coarse);
-        2 * self.span.min(u64::from(u32::MAX)) + u64::from(ticks) >= 2 * u64::from(length) || self.count == u16::MAX
+        self.span.saturating_add(ticks >> 1) >= length || self.count == u16::MAX
+    }
+
+    /// A deviation of at most 2^15 and the present instant, of at most 2^15.
+    fn within_bits(&mut self, above: i32) -> (i32, u32) {
+        loop {
+            let deviation = (above + (1 << self.coarse >> 1)) >> self.coarse;
+            let instant = self.span >> self.coarse_time;
+            match (i16::try_from(deviation), instant) {
+                (Ok(deviation), ..=0x7FFF) => return (i32::from(deviation), instant),
+                (Ok(_), _) => self.coarsen_time(),
+                _ => self.coarsen(),
+            }
+        }
+    }
+
+    #[cold]
+    fn coarsen(&mut self) {
+        self.coarse += 1;
+        self.deviations >>= 1;
+        self.products >>= 1;
+        self.squares >>= 2;
+    }
+
+    #[cold]
+    fn coarsen_time(&mut self) {
+        self.coarse_time += 1;
+        self.instants >>= 1;
+        self.products >>= 1;
+        self.instant_squares >>= 2;
     }
 
     /// Empties the block; `None` if no sample is in it.
-    pub(crate) fn take(&mut self, fine_bits: u8) -> Option<BlockMean> {
+    pub(crate) fn take(&mut self) -> Option<BlockMean> {
         let block = core::mem::take(self);
-        if block.count == 0 {
-            return None;
+        // The next one has as long to go.
+        self.coarse_time = block.coarse_time;
+        let step = math::two_to(i32::from(block.coarse) - FINE_BITS.cast_signed());
+        let deviations = block.deviations as f32 * step;
+        let counts = block.base_q16 >> 16;
+        let single =
+            BlockMean { counts, rest: deviations, age: 0, samples: 1, share: 1.0, scatter: 0.0, span: block.span };
+        if block.count <= 1 {
+            return (block.count == 1).then_some(single);
         }
         let share = 1.0 / f32::from(block.count);
-        let fine = fine_step(fine_bits);
-        let mean = block.levels as f32 * share;
-        let (counts, part) = math::whole_and_rest(block.first_q16);
-        let instant = block.instants as f32 * share;
-        let age = block.span.saturating_sub((block.ticks as f32 * share) as u64);
-        let spread = block.instant_squares as f32 - block.instants as f32 * instant;
-        let product = block.products as f32 - block.levels as f32 * instant;
-        let line = if spread > 0.0 { product * product / spread } else { 0.0 };
-        let scatter = (block.level_squares as f32 - block.levels as f32 * mean - line) * fine * fine;
-        Some(BlockMean { counts, rest: part + mean * fine, age, samples: block.count, scatter, span: block.span })
+        let instant = block.instants as f32 * share * math::two_to(i32::from(block.coarse_time));
+        let age = block.span.saturating_sub(instant as u32);
+        let scatter = block.scatter() * share * (step * step);
+        Some(BlockMean { rest: deviations * share, age, samples: block.count, share, scatter, ..single })
     }
-}
 
-/// The coarse steps of a block, as a power of two of ticks.
-fn coarse_shift(length: u32) -> u32 {
-    18_u32.saturating_sub(length.leading_zeros())
+    /// Sum of the squared deviations from a straight line, times the number of samples.
+    fn scatter(&self) -> f32 {
+        // Exact: each product is below 2^62.
+        let n = i64::from(self.count);
+        let (deviations, instants) = (i64::from(self.deviations), i64::from(self.instants));
+        let spread = n * self.instant_squares.cast_signed() - instants * instants;
+        let product = math::float(n * self.products - deviations * instants);
+        let about_mean = math::float(n * self.squares.cast_signed() - deviations * deviations);
+        if spread > 0 { about_mean - product * product / math::float(spread) } else { about_mean }
+    }
 }

@@ -30,7 +30,7 @@ pub(crate) use grid::Dot;
 pub use line::{Line, Point};
 pub use noise_fit::{Figure, NoiseFigures};
 pub use octave::{Octave, Octaves};
-pub(crate) use onset::{Cusum, cusum_threshold};
+pub(crate) use onset::{Cusum, DEVIATION, cusum_threshold};
 pub(crate) use shared::{Taken, Weights};
 pub(crate) use trend::LEVEL_VARIANCE_MAX;
 pub use trend::{Innovation, Trend, Walk};

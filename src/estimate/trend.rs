@@ -19,6 +19,9 @@ impl Walk {
     /// white noise (`rate_walk`, (counts/s)^2/s), which the level integrates:
     /// `[q_w t + q_d t^3/3, q_d t^2/2, q_d t]`.
     pub fn over(dt_s: f32, level_walk: f32, rate_walk: f32) -> Self {
+        if rate_walk <= 0.0 {
+            return Self { level: level_walk * dt_s, ..Self::default() };
+        }
         let rate = rate_walk * dt_s;
         let half = rate * dt_s * 0.5;
         Self { level: level_walk * dt_s + half * dt_s * (2.0 / 3.0), cross: half, rate }
@@ -108,7 +111,7 @@ impl Trend {
         let coupling = self.coupling + dt_s;
         if walk.rate <= 0.0 {
             self.coupling = coupling;
-            self.level_given_rate = (self.level_given_rate + walk.level).min(LEVEL_VARIANCE_MAX);
+            self.level_given_rate = math::lesser(self.level_given_rate + walk.level, LEVEL_VARIANCE_MAX);
             return;
         }
         let share = 1.0 / (self.rate_variance + walk.rate);
@@ -116,9 +119,9 @@ impl Trend {
         let spread = walk.level + coupling * (coupling * walk.rate - 2.0 * walk.cross);
         let determinant = walk.level * walk.rate - walk.cross * walk.cross;
         let gained = (self.rate_variance * spread + determinant) * share;
-        self.level_given_rate = (self.level_given_rate + gained.max(0.0)).min(LEVEL_VARIANCE_MAX);
+        self.level_given_rate = math::lesser(self.level_given_rate + gained.max(0.0), LEVEL_VARIANCE_MAX);
         self.coupling = (coupling * self.rate_variance + walk.cross) * share;
-        self.rate_variance = (self.rate_variance + walk.rate).min(RATE_VARIANCE_MAX);
+        self.rate_variance = math::lesser(self.rate_variance + walk.rate, RATE_VARIANCE_MAX);
     }
 
     /// Moves the origin of the levels by whole counts; no estimate changes.
@@ -129,7 +132,7 @@ impl Trend {
     /// Moves level and rate by what is known to have happened; the covariance stays.
     pub fn shift(&mut self, level: f32, rate: f32) {
         self.level += level;
-        self.rate = (self.rate + rate).clamp(-RATE_MAX, RATE_MAX);
+        self.rate = math::within(self.rate + rate, RATE_MAX);
         self.recentre();
     }
 
@@ -149,7 +152,10 @@ impl Trend {
     /// Lets the rate alone walk by `rate_walk`, (counts/s)^2, while the level is held: the switch is closed or the
     /// input open.
     pub fn rest(&mut self, rate_walk: f32) {
-        let walked = (self.rate_variance + rate_walk).min(RATE_VARIANCE_MAX);
+        if rate_walk <= 0.0 {
+            return;
+        }
+        let walked = math::lesser(self.rate_variance + rate_walk, RATE_VARIANCE_MAX);
         if walked > 0.0 {
             // The level's own variance and its covariance with the rate stay.
             let kept = self.rate_variance / walked;
@@ -171,9 +177,9 @@ impl Trend {
     ///
     /// The sample is `counts + rest`: a mean of several is not whole.
     pub fn update(&mut self, counts: i64, rest: f32, variance: f32) -> Innovation {
-        let residual = counts.saturating_sub(self.anchor) as f32 - self.level + rest;
+        let residual = math::float(counts.saturating_sub(self.anchor)) - self.level + rest;
         let shared = self.coupling * self.rate_variance;
-        let from_rate = (self.coupling * shared).min(LEVEL_VARIANCE_MAX);
+        let from_rate = math::lesser(self.coupling * shared, LEVEL_VARIANCE_MAX);
         let given_rate = self.level_given_rate + variance;
         let precision = 1.0 / (given_rate + from_rate);
         let kept = variance / given_rate;
@@ -188,16 +194,15 @@ impl Trend {
             self.level += level_gain * residual;
             self.recentre();
         }
-        self.rate = (self.rate + rate_gain * residual).clamp(-RATE_MAX, RATE_MAX);
+        self.rate = math::within(self.rate + rate_gain * residual, RATE_MAX);
         self.level_given_rate *= kept;
         self.coupling *= kept;
-        self.rate_variance = (self.rate_variance * (given_rate * precision)).max(self.rate_variance_floor());
+        if self.rate_variance > 0.0 {
+            // What rounding leaves of the rate, whatever the number of samples: one millionth.
+            let rounding = 1e-6 * self.rate;
+            self.rate_variance = math::greater(self.rate_variance * (given_rate * precision), rounding * rounding);
+        }
         Innovation { residual, precision, level_gain, rate_gain }
-    }
-
-    /// What rounding leaves of the rate, whatever the number of samples: one millionth. A rate that is held has none.
-    fn rate_variance_floor(&self) -> f32 {
-        if self.rate_variance > 0.0 { (self.rate * self.rate * 1e-12).min(RATE_VARIANCE_MAX) } else { 0.0 }
     }
 
     /// The level's whole part, counts.
@@ -217,7 +222,7 @@ impl Trend {
 
     /// Variance of the level, counts^2; at most 1e30.
     pub fn level_variance(&self) -> f32 {
-        (self.level_given_rate + self.coupling * self.coupling * self.rate_variance).min(LEVEL_VARIANCE_MAX)
+        math::lesser(self.level_given_rate + self.coupling * self.coupling * self.rate_variance, LEVEL_VARIANCE_MAX)
     }
 
     /// Covariance of level and rate, counts^2/s.

@@ -2,6 +2,7 @@
 
 use super::Linearity;
 use crate::level::{LeakLaw, SoakageLaw};
+use crate::math;
 
 /// Variance of rounding to whole counts (IEEE Std 1241).
 pub(crate) const QUANTISATION_VAR: f32 = 1.0 / 12.0;
@@ -93,8 +94,8 @@ pub(crate) struct Derived {
     pub(crate) step_counts: i32,
     /// Whether the noise is enough to make rounding errors of different samples independent.
     pub(crate) dithered: bool,
-    /// Where the cumulative sums of a zero's innovations alarm, standard deviations.
-    pub(crate) onset_threshold: f32,
+    /// Where the cumulative sums of a zero's innovations alarm, 2^-12 standard deviations.
+    pub(crate) onset_threshold: i32,
     /// Equal readings in a row that are a fault; 0: not watched.
     pub(crate) frozen_samples: u16,
     /// Variance of half the level's second derivative, (counts/s^2)^2; `None`: unknown.
@@ -120,12 +121,12 @@ pub(crate) struct Derived {
 }
 
 impl Derived {
-    /// Variance of the mean of `samples` samples, counts^2: rounding that nothing dithers does not average.
+    /// Variance of the mean of `1 / share` samples, counts^2: rounding that nothing dithers does not average.
     ///
     /// Within a block that walks, the mean knows less of its instant than this; by how much is of no account beside
     /// what the walk does to a run longer than the block.
-    pub(crate) fn block_var(&self, samples: u16) -> f32 {
-        if self.dithered { self.readout_var / f32::from(samples) } else { self.readout_var }
+    pub(crate) fn block_var(&self, share: f32) -> f32 {
+        if self.dithered { self.readout_var * share } else { self.readout_var }
     }
 
     /// What the variance of one of many blocks in a row is worth: rounding that nothing dithers keeps its sign over
@@ -140,7 +141,7 @@ impl Derived {
         if self.dithered || ticks == 0 {
             return 0.0;
         }
-        let known_s = ticks as f32 * self.tick_s;
+        let known_s = math::seconds(ticks, self.tick_s);
         2.0 * QUANTISATION_VAR / (known_s * known_s) + self.leaked_rounding_var(1.0)
     }
 
@@ -152,7 +153,7 @@ impl Derived {
 
     /// Whether figures of leak or soakage are uncertain.
     pub(crate) fn has_doubts(&self) -> bool {
-        self.terms_u_rel != [0.0; 2]
+        self.terms_u_rel.map(f32::to_bits) != [0; 2]
     }
 
     /// The level that a straight converter would have given, 2^-16 counts.

@@ -16,66 +16,94 @@ pub(super) enum Verdict {
     Onset(u32),
 }
 
-/// Where the next samples are expected, in integers, so that a sample costs no float.
+/// Where the next samples are expected and how far off they may lie, and how many in a row were farther. In integers of
+/// 32 bits, so that a sample costs no float.
 #[derive(Clone, Copy, Debug)]
-struct Aim {
-    /// At the filter's instant, 2^-16 counts.
-    level_q16: i64,
-    /// Drift in `2^shift` ticks, 2^-16 counts.
-    drift_q16: i64,
+pub(super) struct Gate {
+    /// At the filter's instant, fine steps (2^-8 count) above its whole counts.
+    ahead: i32,
+    /// Drift in `2^shift` ticks, 2^-16 fine steps.
+    drift: i32,
+    /// How far off the noise of samples alone may take them, fine steps; `OPEN`: nothing is expected yet.
+    reach: u32,
+    since: u32,
     shift: u8,
-    /// How far off is still noise, 2^-16 counts.
-    reach_q16: u64,
-    /// For so many ticks from the filter's instant.
-    ticks: u64,
+    /// How many in a row were off, with their sign.
+    astray: i8,
 }
 
-/// Judges samples, and counts those that are off.
-#[derive(Clone, Copy, Debug, Default)]
-pub(super) struct Gate {
-    aim: Option<Aim>,
-    /// How many in a row, with their sign.
-    astray: i8,
-    since: u32,
+/// A reach that nothing exceeds.
+const OPEN: u32 = u32::MAX;
+/// Fine steps in a count.
+const FINE: f32 = 256.0;
+/// Farthest drift that is reckoned with, fine steps.
+const FARTHEST: i32 = 1 << 29;
+
+impl Default for Gate {
+    fn default() -> Self {
+        Self { ahead: 0, drift: 0, reach: OPEN, since: 0, shift: 0, astray: 0 }
+    }
+}
+
+/// How far noise of this variance (counts^2) takes a sample, fine steps.
+pub(super) fn reach(variance: f32) -> u32 {
+    (SPIKE_DEVIATIONS * FINE * variance * math::about_inverse_sqrt(variance)) as u32
 }
 
 impl Gate {
-    /// Expects levels `level_q16` (2^-16 counts) and onward by `rate` (counts per tick), for up to `ticks` from now, at
-    /// the end of which they have the variance `variance` (counts^2).
-    pub(super) fn aim(&mut self, level_q16: i64, rate: f32, ticks: u64, variance: f32) {
-        let shift = (64 - ticks.leading_zeros()).min(40) as u8;
-        self.aim = Some(Aim {
-            level_q16,
-            drift_q16: (rate * 65536.0 * (1_u64 << shift) as f32) as i64,
-            shift,
-            reach_q16: (SPIKE_DEVIATIONS * 65536.0 * math::sqrt(variance)) as u64,
-            ticks,
-        });
-    }
-
-    /// Whether a sample so many ticks after the filter's instant is beyond what was aimed at.
-    pub(super) fn is_beyond(&self, ticks: u64) -> bool {
-        self.aim.is_some_and(|aim| ticks > aim.ticks)
-    }
-
     /// Whether nothing is expected yet.
     pub(super) fn is_open(&self) -> bool {
-        self.aim.is_none()
+        self.reach == OPEN
     }
 
-    /// Judges a sample at `tick`, so many ticks after the filter's instant. While too little is known to tell, all is
-    /// noise.
-    pub(super) fn judge(&mut self, tick: u32, level_q16: i64, ticks: u64) -> Verdict {
-        let Some(aim) = self.aim else { return Verdict::Noise };
-        // Steep drifts over long blocks of a fast counter: low bits give way.
-        let cut = aim.shift.saturating_sub(22);
-        let drifted_q16 = (aim.drift_q16 >> cut).saturating_mul(ticks.cast_signed()) >> (aim.shift - cut);
-        let off_q16 = level_q16.saturating_sub(aim.level_q16).saturating_sub(drifted_q16);
-        if off_q16.unsigned_abs() <= aim.reach_q16 {
-            self.astray = 0;
-            return Verdict::Noise;
+    /// Noise of samples reaches so far, fine steps.
+    pub(super) fn set_reach(&mut self, reach: u32) {
+        self.reach = reach.min(OPEN - 1);
+    }
+
+    /// Expects levels `residual` counts above the filter's whole counts and onward by `rate` (counts per tick), for
+    /// about so many ticks from the filter's instant.
+    pub(super) fn aim(&mut self, residual: f32, rate: f32, ticks: u32) {
+        self.shift = 17_u32.saturating_sub(ticks.leading_zeros()) as u8;
+        self.ahead = ((residual * FINE) as i32).clamp(-FARTHEST, FARTHEST);
+        self.drift = ((rate * math::two_to(24 + i32::from(self.shift))) as i32).clamp(-FARTHEST, FARTHEST);
+    }
+
+    /// How far a sample is off, fine steps, that is so many fine steps above the filter's whole counts and so many
+    /// ticks after its instant.
+    pub(super) fn off(&self, above: i32, ticks: u32) -> i32 {
+        above.saturating_sub(self.ahead).saturating_sub(self.drifted(ticks))
+    }
+
+    fn drifted(&self, ticks: u32) -> i32 {
+        match u16::try_from(ticks >> self.shift) {
+            Ok(steps) => {
+                // A product of 48 bits in two of 32.
+                let steps = i32::from(steps);
+                let low = (self.drift & 0xFFFF).cast_unsigned() * steps.cast_unsigned();
+                (self.drift >> 16) * steps + (low >> 16).cast_signed()
+            }
+            Err(_) => {
+                let drifted = (i64::from(self.drift) * i64::from(ticks >> self.shift)) >> 16;
+                drifted.clamp(-i64::from(FARTHEST), i64::from(FARTHEST)) as i32
+            }
         }
-        let sign = if off_q16 > 0 { 1 } else { -1 };
+    }
+
+    /// Whether a sample that is so far off is no farther than the noise of samples reaches.
+    pub(super) fn is_near(&self, off: i32) -> bool {
+        off.unsigned_abs() <= self.reach
+    }
+
+    /// A sample was noise.
+    pub(super) fn pass(&mut self) -> Verdict {
+        self.astray = 0;
+        Verdict::Noise
+    }
+
+    /// A sample at `tick` was more than noise.
+    pub(super) fn refuse(&mut self, tick: u32, off: i32) -> Verdict {
+        let sign = if off > 0 { 1 } else { -1 };
         if self.astray.signum() != sign {
             self.astray = 0;
             self.since = tick;

@@ -301,9 +301,14 @@ impl Zeroing {
 }
 
 /// Lets time pass for a level that drifts. Through a leak the samples' own noise walks into the effective level.
-pub(crate) fn advance(trend: &mut Trend, span: Span, derived: &Derived) {
+///
+/// Gives the time, s.
+pub(crate) fn advance(trend: &mut Trend, span: Span, derived: &Derived) -> f32 {
     let dt_s = math::seconds(span.ticks, derived.tick_s);
     let mut walk = Walk::over(dt_s, derived.level_walk, derived.rate_walk);
-    walk.level += derived.leak_walk * span.squares as f32;
+    if span.squares > 0 {
+        walk.level += derived.leak_walk * span.squares as f32;
+    }
     trend.advance(dt_s, walk);
+    dt_s
 }

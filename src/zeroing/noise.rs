@@ -1,6 +1,6 @@
 //! What the zeros show of the noise, beside what the set-up says.
 
-use crate::estimate::BlockMean;
+use crate::estimate::{BlockMean, DEVIATION};
 use crate::math;
 use crate::setup::{Derived, QUANTISATION_VAR};
 
@@ -20,8 +20,8 @@ const MOST_SURPRISE: f32 = 25.0;
 /// Scatter of a block over that of the others, as a ratio of variances.
 const TORN_RATIO: f32 = 9.0;
 /// Innovations that the set-up's figures are worth against the observed ones, and the most that these are given.
-const SETUP_INNOVATIONS: f32 = 16.0;
-const MOST_INNOVATIONS: f32 = 512.0;
+const SETUP_INNOVATIONS: u16 = 16;
+const MOST_INNOVATIONS: u16 = 512;
 
 /// The noise as observed.
 #[derive(Clone, Copy, Debug)]
@@ -31,11 +31,11 @@ pub(super) struct NoiseSeen {
     freedom: f32,
     /// Mean square of the innovations over what was expected, and the number of them that it rests on.
     dispersion: f32,
-    innovations: f32,
+    innovations: u16,
     /// The same for sums of so many innovations in a row; and the sum being made.
     slow_dispersion: f32,
     sums: f32,
-    sum: f32,
+    sum: i32,
     summed: u8,
     /// The same for the drift that each zero found over what the zeros before it said, and the number of zeros.
     rate_dispersion: f32,
@@ -53,7 +53,7 @@ impl NoiseSeen {
             innovations: SETUP_INNOVATIONS,
             slow_dispersion: 1.0,
             sums: SETUP_SUMS,
-            sum: 0.0,
+            sum: 0,
             summed: 0,
             rate_dispersion: 1.0,
             zeros: SETUP_ZEROS,
@@ -64,6 +64,11 @@ impl NoiseSeen {
     /// Variance of a single sample, hum included, counts^2.
     pub(super) fn sample_var(&self) -> f32 {
         self.sample_var
+    }
+
+    /// The same, no less than what the set-up states.
+    pub(super) fn sample_var_stated(&self, derived: &Derived) -> f32 {
+        math::greater(self.sample_var, derived.readout_var)
     }
 
     /// Noise of single samples, stated and observed, in hundredths of a count rms, if the two are clearly different.
@@ -111,7 +116,7 @@ impl NoiseSeen {
     /// the readout and the walk, 6 zeros that said something of the drift for the wander. Simulated; see
     /// `tests/adaptation.rs`.
     pub(super) fn is_tested(&self) -> bool {
-        self.innovations >= SETUP_INNOVATIONS + 64.0 && self.zeros >= SETUP_ZEROS + 6.0
+        self.innovations >= SETUP_INNOVATIONS + 64 && self.zeros >= SETUP_ZEROS + 6.0
     }
 
     /// Takes how far the drift that a zero found lies off the one expected, squared, over the variance of that.
@@ -124,8 +129,8 @@ impl NoiseSeen {
     /// standard deviations, `sqrt(2 / n)`, from 1.
     pub(super) fn percent(&self) -> Option<u16> {
         let off = self.dispersion - 1.0;
-        let enough = self.innovations >= 2.0 * SETUP_INNOVATIONS;
-        (enough && off * off * self.innovations > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
+        let enough = self.innovations >= 2 * SETUP_INNOVATIONS;
+        (enough && off * off * f32::from(self.innovations) > 32.0).then(|| (100.0 * math::sqrt(self.dispersion)) as u16)
     }
 
     /// Whether a block scatters so much more than expected that a spike must be in it: its mean is of no use. Before
@@ -139,30 +144,40 @@ impl NoiseSeen {
 
     /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
     pub(super) fn take_block(&mut self, mean: &BlockMean, derived: &Derived) {
-        let n = f32::from(mean.samples);
-        if n < 4.0 {
+        if mean.samples < 4 {
             return;
         }
         // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; h is the spacing.
-        let spacing_s = math::seconds(mean.span, derived.tick_s) / n;
-        let expected = derived.level_walk * spacing_s * (n * n - 4.0) * (1.0 / 15.0);
-        let freedom = self.freedom + (n - 2.0);
-        let sum = self.sample_var * self.freedom + (mean.scatter - expected);
-        self.sample_var = (sum / freedom).max(QUANTISATION_VAR);
+        let n = f32::from(mean.samples);
+        let span_s = mean.span as f32 * derived.tick_s;
+        let walked = derived.level_walk * span_s * ((n - 4.0 * mean.share) * (1.0 / 15.0));
+        let told = n - 2.0;
+        let freedom = self.freedom + told;
+        self.sample_var += (mean.scatter - walked - told * self.sample_var) / freedom;
+        self.sample_var = self.sample_var.max(QUANTISATION_VAR);
         self.freedom = freedom.min(MOST_FREEDOM);
     }
 
-    /// Takes an innovation in standard deviations, the dispersion included; a large one counts as 3, so that an onset
-    /// is not taken for noise.
-    pub(super) fn take_innovation(&mut self, deviation: f32) {
-        let square = (deviation * deviation).min(9.0) * self.dispersion();
-        self.dispersion += (square - self.dispersion) / (self.innovations + 1.0);
-        self.innovations = (self.innovations + 1.0).min(MOST_INNOVATIONS);
+    /// One standard deviation of an innovation, the dispersion included, as a factor on its residual.
+    pub(super) fn per_deviation(&self, precision: f32) -> f32 {
+        let precision = if self.dispersion > 1.0 { precision / self.dispersion } else { precision };
+        precision * math::about_inverse_sqrt(precision)
+    }
+
+    /// Takes an innovation in 2^-12 standard deviations, the dispersion included; a large one counts as 3, so that an
+    /// onset is not taken for noise.
+    pub(super) fn take_innovation(&mut self, deviation: i32) {
+        let deviation = deviation.clamp(-3 * DEVIATION, 3 * DEVIATION);
+        let square = (deviation * deviation) as f32 * (1.0 / (DEVIATION * DEVIATION) as f32);
+        let square = if self.dispersion > 1.0 { square * self.dispersion } else { square };
+        self.dispersion += (square - self.dispersion) / f32::from(self.innovations + 1);
+        self.innovations = (self.innovations + 1).min(MOST_INNOVATIONS);
         // Walks that are understated show in sums of innovations, which should be as independent as single ones.
-        self.sum += deviation.clamp(-3.0, 3.0);
+        self.sum += deviation;
         self.summed += 1;
         if self.summed >= SUMMED {
-            let square = self.sum * self.sum * (1.0 / SUMMED as f32);
+            let sum = self.sum as f32 * (1.0 / DEVIATION as f32);
+            let square = sum * sum * (1.0 / SUMMED as f32);
             self.slow_dispersion += (square.min(MOST_SURPRISE) - self.slow_dispersion) / (self.sums + 1.0);
             self.sums = (self.sums + 1.0).min(MOST_SUMS);
             self.drop_sum();
@@ -171,7 +186,7 @@ impl NoiseSeen {
 
     /// A sum must not reach over a break in the zero.
     pub(super) fn drop_sum(&mut self) {
-        self.sum = 0.0;
+        self.sum = 0;
         self.summed = 0;
     }
 }

@@ -1,9 +1,9 @@
 //! A zero's samples: one by one through the gate, in blocks to the filter, and back to the checkpoint on an onset.
 
-use super::gate::Verdict;
+use super::gate::{self, Verdict};
 use super::{Checkpoint, RateChange, Stop, Taken, Zeroing, advance};
 use crate::clock::Span;
-use crate::estimate::{BlockMean, Bracket};
+use crate::estimate::{BlockMean, Bracket, DEVIATION, Innovation};
 use crate::ledger::{to_q16, whole_q16};
 use crate::level::{Seen, Terms};
 use crate::math;
@@ -36,7 +36,13 @@ impl Zeroing {
             self.skip(ticks, derived);
             return Taken::Used;
         }
-        match self.judge(seen, derived) {
+        if self.block.is_empty() {
+            // Deviations are small where the filter expects the level.
+            let base = if self.gate.is_open() { seen.level_q16 >> 16 } else { self.trend.anchor() };
+            self.block.start(base);
+        }
+        let above = self.block.above(seen.level_q16);
+        match self.judge(seen.tick, above, ticks, derived) {
             Verdict::Noise => {}
             Verdict::Spike => {
                 self.skip(ticks, derived);
@@ -52,7 +58,7 @@ impl Zeroing {
             }
         }
         self.pending.add(ticks, derived.coarse_shift);
-        if self.block.push(seen.level_q16, ticks, derived.block_ticks, derived.fine_bits) {
+        if self.block.push(above, ticks, derived.block_ticks) {
             return self.finish_block(seen.tick, seen.terms, stop, derived);
         }
         Taken::Used
@@ -78,61 +84,73 @@ impl Zeroing {
         }
     }
 
-    /// Whether a sample is too far off to be noise; while too little is known to tell, none is.
-    fn judge(&mut self, seen: &Seen, derived: &Derived) -> Verdict {
-        let ticks = self.pending.ticks.saturating_add(u64::from(seen.ticks));
-        if self.gate.is_beyond(ticks) || (self.gate.is_open() && self.can_aim(derived)) {
-            self.aim(ticks.saturating_add(u64::from(derived.block_ticks)), derived);
-        }
-        self.gate.judge(seen.tick, seen.level_q16, ticks)
+    /// Whether a sample, so many fine steps above the block's base and so many ticks after the one before, is too far off
+    /// to be noise; while too little is known to tell, none is.
+    fn judge(&mut self, tick: u32, above: i32, ticks: u32, derived: &Derived) -> Verdict {
+        let ticks = self.pending_ticks().saturating_add(ticks);
+        let off = self.gate.off(above, ticks);
+        // Most samples lie within what noise alone does: what else there may be is reckoned only for the others.
+        let is_noise = self.gate.is_near(off) || off.unsigned_abs() <= gate::reach(self.variance_ahead(ticks, derived));
+        if is_noise { self.gate.pass() } else { self.gate.refuse(tick, off) }
     }
 
-    /// Whether enough is known to tell noise from more.
-    fn can_aim(&self, derived: &Derived) -> bool {
-        self.level_known && (derived.block_ticks == 0 || self.noise.has_scatter())
+    /// By how much the latest sample is ahead of the trend, ticks; in a zero these fit 32 bits but for hours without a
+    /// usable sample.
+    fn pending_ticks(&self) -> u32 {
+        u32::try_from(self.pending.ticks).unwrap_or(u32::MAX)
     }
 
-    /// Tells the gate what to expect for so many ticks from the trend's instant.
-    fn aim(&mut self, ticks: u64, derived: &Derived) {
+    /// Variance of a sample so many ticks after the trend's instant, counts^2.
+    fn variance_ahead(&self, ticks: u32, derived: &Derived) -> f32 {
         let trend = &self.trend;
-        let ahead_s = math::seconds(ticks, derived.tick_s);
+        let ahead_s = math::seconds(u64::from(ticks), derived.tick_s);
         let spread = ahead_s * (2.0 * trend.covariance() + ahead_s * trend.rate_variance());
         let walked = derived.level_walk * ahead_s;
-        let sample_var = self.noise.sample_var().max(derived.readout_var);
         let figures = DOUBTED * DOUBTED * self.considered.lag_variance_ahead();
-        let variance = sample_var + trend.level_variance() + spread + walked + figures;
-        let level_q16 = whole_q16(trend.anchor()).saturating_add(to_q16(trend.residual()));
-        self.gate.aim(level_q16, trend.rate() * derived.tick_s, ticks, variance);
+        self.noise.sample_var_stated(derived) + trend.level_variance() + spread + walked + figures
+    }
+
+    /// Tells the gate what to expect of the next block, when enough is known to tell noise from more.
+    fn aim_next(&mut self, mean: &BlockMean, derived: &Derived) {
+        if derived.block_ticks > 0 && !self.noise.has_scatter() {
+            return;
+        }
+        // A single sample shows no scatter: then the reach stays what it is.
+        if self.gate.is_open() || mean.samples > 1 {
+            self.gate.set_reach(gate::reach(self.noise.sample_var_stated(derived)));
+        }
+        let ticks = self.pending_ticks().saturating_add(mean.span);
+        self.gate.aim(self.trend.residual(), self.trend.rate() * derived.tick_s, ticks);
     }
 
     fn finish_block(&mut self, tick: u32, terms: Terms, stop: Option<&Stop>, derived: &Derived) -> Taken {
-        let Some(mean) = self.block.take(derived.fine_bits) else { return Taken::Used };
+        let Some(mean) = self.block.take() else { return Taken::Used };
         if !self.level_known && self.noise.is_torn(&mean) {
             return Taken::Spike;
         }
         self.noise.take_block(&mean, derived);
-        let variance = derived.block_var(mean.samples);
+        let variance = derived.block_var(mean.share);
         if !self.level_known {
             self.find_level(&mean, variance, terms, stop, derived);
-            self.aim_next(mean.span, derived);
+            self.aim_next(&mean, derived);
             return Taken::Used;
         }
-        let span = self.pending.leave(mean.age);
+        let span = self.pending.leave(u64::from(mean.age));
         let elapsed = span.ticks;
         let wandered = self.flicker_walk(elapsed, derived);
         self.warmth.half_step(&mut self.trend);
-        advance(&mut self.trend, span, derived);
+        let dt_s = advance(&mut self.trend, span, derived);
         self.considered.advance(elapsed, derived);
         self.considered.follow(terms, derived);
-        self.warmth.advance(math::seconds(elapsed, derived.tick_s));
+        self.warmth.advance(dt_s);
         self.warmth.half_step(&mut self.trend);
         self.warmth.follow();
         self.trend.rest(wandered);
         if let Some(bracket) = self.bracket.as_mut() {
-            bracket.advance(math::seconds(elapsed, derived.tick_s));
+            bracket.advance(dt_s);
         }
         let innovation = self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
-        let lag_var = self.considered.lag_variance();
+        let deviation = self.deviation(&innovation, derived);
         let run_gain = self.bracket.as_mut().map_or(0.0, |bracket| bracket.update(&innovation));
         self.considered.update(&innovation, run_gain, derived);
         self.warmth.update(&innovation);
@@ -141,14 +159,6 @@ impl Zeroing {
         }
         self.known_ticks = self.known_ticks.saturating_add(elapsed);
         self.known_innovations = self.known_innovations.saturating_add(1);
-        let per_deviation = math::sqrt(innovation.precision / self.noise.dispersion());
-        // What wrong figures of leak and soakage may have done is the same in block after block: no noise, and no
-        // onset.
-        let doubt = DOUBTED * math::sqrt(lag_var) * per_deviation;
-        let deviation = beyond(innovation.residual * per_deviation, doubt);
-        if doubt < NEGLIGIBLE {
-            self.noise.take_innovation(deviation);
-        }
         if self.cusum.take(deviation, derived.onset_threshold) {
             let (since, known) = self.checkpoint.map_or((tick, 0), |checkpoint| (checkpoint.tick, checkpoint.known));
             let contradicts_run = known < EARLY_INNOVATIONS;
@@ -169,20 +179,32 @@ impl Zeroing {
                 known,
             });
         }
-        self.aim_next(mean.span, derived);
+        self.aim_next(&mean, derived);
         Taken::Used
     }
 
-    /// Tells the gate what to expect until the next block of the same length is full.
-    fn aim_next(&mut self, block: u64, derived: &Derived) {
-        if self.can_aim(derived) {
-            self.aim(self.pending.ticks.saturating_add(block).saturating_add(block >> 2), derived);
+    /// An innovation for the watch over the input, 2^-12 standard deviations; the watch over the noise takes it as well.
+    fn deviation(&mut self, innovation: &Innovation, derived: &Derived) -> i32 {
+        let per_deviation = self.noise.per_deviation(innovation.precision);
+        let mut deviation = innovation.residual * per_deviation;
+        let mut is_noise = true;
+        if derived.has_doubts() {
+            // What wrong figures of leak and soakage may have done is the same in block after block: no noise, and no
+            // onset.
+            let doubt = DOUBTED * math::sqrt(self.considered.lag_variance()) * per_deviation;
+            deviation = beyond(deviation, doubt);
+            is_noise = doubt < NEGLIGIBLE;
         }
+        let deviation = (deviation * DEVIATION as f32) as i32;
+        if is_noise {
+            self.noise.take_innovation(deviation);
+        }
+        deviation
     }
 
     /// The first block of a zero: the level starts from it, and a run that has just stopped is bracketed.
     fn find_level(&mut self, mean: &BlockMean, variance: f32, terms: Terms, stop: Option<&Stop>, derived: &Derived) {
-        let span = self.pending.leave(mean.age);
+        let span = self.pending.leave(u64::from(mean.age));
         let elapsed = span.ticks;
         // A second zero after the same run goes on with the bracket that there is.
         match stop.filter(|_| self.bracket.is_none()) {

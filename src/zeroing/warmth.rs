@@ -42,6 +42,11 @@ impl Warmth {
         self.reference.get_or_insert(self.latest);
     }
 
+    /// Whether there is nothing to learn: the law is not known, and the coefficient is none.
+    fn is_certain(&self) -> bool {
+        self.row.variance <= 0.0
+    }
+
     /// How far the heat is above the reference.
     fn risen(&self) -> i32 {
         self.reference.map_or(0, |reference| self.latest.saturating_sub(reference))
@@ -108,11 +113,17 @@ impl Warmth {
 
     /// Time passes in a zero.
     pub(super) fn advance(&mut self, dt_s: f32) {
+        if self.is_certain() {
+            return;
+        }
         self.row.advance(dt_s);
     }
 
     /// A block of a zero.
     pub(super) fn update(&mut self, innovation: &Innovation) {
+        if self.is_certain() {
+            return;
+        }
         self.row.update(innovation);
         self.coefficient += core::mem::take(&mut self.row.correction);
     }
