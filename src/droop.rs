@@ -62,7 +62,8 @@ impl Droop {
         if self.block.is_empty() {
             self.block.start(seen.level_q16 >> 16);
         }
-        if !self.block.push(self.block.above(seen.level_q16), seen.ticks, derived.block_ticks) {
+        let above = self.block.above(seen.level_q16);
+        if !self.block.push(above, above, seen.ticks, derived.block_ticks) {
             return;
         }
         let Some(mean) = self.block.take() else { return };

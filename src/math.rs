@@ -65,6 +65,14 @@ pub(crate) fn float(x: i64) -> f32 {
     }
 }
 
+/// The same of one without a sign.
+pub(crate) fn float_unsigned(x: u64) -> f32 {
+    match u32::try_from(x) {
+        Ok(x) => x as f32,
+        Err(_) => x as f32,
+    }
+}
+
 /// A number's whole part, saturating. Most fit 32 bits.
 pub(crate) fn whole(x: f32) -> i64 {
     let short = x as i32;
@@ -113,11 +121,7 @@ pub(crate) fn whole_and_rest(q16: i64) -> (i64, f32) {
 
 /// Seconds in `ticks` of a counter whose period is `tick_s`.
 pub(crate) fn seconds(ticks: u64, tick_s: f32) -> f32 {
-    let ticks = match u32::try_from(ticks) {
-        Ok(ticks) => ticks as f32,
-        Err(_) => ticks as f32,
-    };
-    ticks * tick_s
+    float_unsigned(ticks) * tick_s
 }
 
 #[cfg(test)]

@@ -4,6 +4,7 @@ use crate::math;
 
 /// Bits of a *fine step*, a fraction of a count.
 const FINE_BITS: u32 = 8;
+const FINE: f32 = 1.0 / (1 << FINE_BITS) as f32;
 
 /// One fine step of a level kept with so many bits of a count, counts.
 pub(crate) fn fine_step(fine_bits: u8) -> f32 {
@@ -13,14 +14,17 @@ pub(crate) fn fine_step(fine_bits: u8) -> f32 {
 /// A block being filled.
 ///
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
-/// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So deviations are kept
-/// within 16 bits and instants within 15: what grows past that is *coarsened*, the sums so far and all that comes after,
-/// which costs no more than 2^-15 of the farthest deviation and 2^-14 of the time.
+/// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So what tells the
+/// scatter, deviations from where samples are expected and their instants, is kept within 16 and 15 bits: what grows
+/// past that is *coarsened*, the sums so far and all that comes after. The mean is exact.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
-    /// Where deviations are counted from, whole counts in 2^-16 counts.
+    /// Where levels are counted from, whole counts in 2^-16 counts.
     base_q16: i64,
-    /// Sums over the samples: squares of deviations and of instants, and products of the two.
+    /// Sums over the samples: fine steps above the base, and ticks since the block began.
+    levels: i64,
+    ticks: u64,
+    /// Sums of squares of deviations and of instants, and of products of the two.
     squares: u64,
     instant_squares: u64,
     products: i64,
@@ -46,8 +50,9 @@ pub(crate) struct BlockMean {
     pub(crate) samples: u16,
     /// One over `samples`.
     pub(crate) share: f32,
-    /// Sum of the squared deviations from a straight line, counts^2.
+    /// Sum of the squared deviations from a straight line, counts^2, and the step that these were rounded to, counts.
     pub(crate) scatter: f32,
+    pub(crate) step: f32,
     /// Ticks that the block spans.
     pub(crate) span: u32,
 }
@@ -80,25 +85,27 @@ impl Block {
         self.span = self.span.saturating_add(ticks);
     }
 
-    /// Takes a level, fine steps [`above`](Self::above) the base, `ticks` after the one before. `true` when the block
-    /// is as close to `length` ticks as this spacing allows.
-    pub(crate) fn push(&mut self, above: i32, ticks: u32, length: u32) -> bool {
+    /// Takes a level, fine steps [`above`](Self::above) the base and `off` fine steps from where it was expected, `ticks`
+    /// after the one before. `true` when the block is as close to `length` ticks as this spacing allows.
+    pub(crate) fn push(&mut self, above: i32, off: i32, ticks: u32, length: u32) -> bool {
         self.skip(ticks);
-        let (deviation, instant) = self.within_bits(above);
+        let (deviation, instant) = self.within_bits(off);
+        // A block ends at 2^16 samples: sums of products of 30 bits stay within 46, of deviations within 32.
+        self.levels += i64::from(above);
+        self.ticks += u64::from(self.span);
         self.deviations += deviation;
         self.instants += instant;
         self.squares += u64::from((deviation * deviation).cast_unsigned());
         self.instant_squares += u64::from(instant * instant);
         self.products += i64::from(deviation * instant.cast_signed());
-        // A block ends at 2^16 samples: sums of products of 30 bits stay within 46, of deviations within 32.
         self.count = self.count.saturating_add(1);
         self.span.saturating_add(ticks >> 1) >= length || self.count == u16::MAX
     }
 
     /// A deviation of at most 2^15 and the present instant, of at most 2^15.
-    fn within_bits(&mut self, above: i32) -> (i32, u32) {
+    fn within_bits(&mut self, off: i32) -> (i32, u32) {
         loop {
-            let deviation = (above + (1 << self.coarse >> 1)) >> self.coarse;
+            let deviation = off.saturating_add(1 << self.coarse >> 1) >> self.coarse;
             let instant = self.span >> self.coarse_time;
             match (i16::try_from(deviation), instant) {
                 (Ok(deviation), ..=0x7FFF) => return (i32::from(deviation), instant),
@@ -129,19 +136,33 @@ impl Block {
         let block = core::mem::take(self);
         // The next one has as long to go.
         self.coarse_time = block.coarse_time;
-        let step = math::two_to(i32::from(block.coarse) - FINE_BITS.cast_signed());
-        let deviations = block.deviations as f32 * step;
-        let counts = block.base_q16 >> 16;
-        let single =
-            BlockMean { counts, rest: deviations, age: 0, samples: 1, share: 1.0, scatter: 0.0, span: block.span };
-        if block.count <= 1 {
-            return (block.count == 1).then_some(single);
+        let count = block.count;
+        if count == 0 {
+            return None;
         }
-        let share = 1.0 / f32::from(block.count);
-        let instant = block.instants as f32 * share * math::two_to(i32::from(block.coarse_time));
-        let age = block.span.saturating_sub(instant as u32);
-        let scatter = block.scatter() * share * (step * step);
-        Some(BlockMean { rest: deviations * share, age, samples: block.count, share, scatter, ..single })
+        let share = if count == 1 { 1.0 } else { 1.0 / f32::from(count) };
+        let (counts, rest) = block.mean(share);
+        let step = math::two_to(i32::from(block.coarse)) * FINE;
+        let one = BlockMean { counts, rest, age: 0, samples: count, share, scatter: 0.0, step, span: block.span };
+        if count == 1 {
+            return Some(one);
+        }
+        let age = block.span.saturating_sub((math::float_unsigned(block.ticks) * share) as u32);
+        Some(BlockMean { age, scatter: block.scatter() * share * (step * step), ..one })
+    }
+
+    /// The mean level: whole counts and the rest.
+    fn mean(&self, share: f32) -> (i64, f32) {
+        let counts = self.base_q16 >> 16;
+        let per_sample = FINE * share;
+        let rest = math::float(self.levels) * per_sample;
+        if math::abs(rest) < 1024.0 {
+            return (counts, rest);
+        }
+        // Far from the base `f32` would round the mean: whole counts are taken from the sum first.
+        let whole = math::nearest(rest);
+        let left = self.levels - (whole << FINE_BITS) * i64::from(self.count);
+        (counts.saturating_add(whole), math::float(left) * per_sample)
     }
 
     /// Sum of the squared deviations from a straight line, times the number of samples.

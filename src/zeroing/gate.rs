@@ -36,8 +36,6 @@ pub(super) struct Gate {
 const OPEN: u32 = u32::MAX;
 /// Fine steps in a count.
 const FINE: f32 = 256.0;
-/// Farthest drift that is reckoned with, fine steps.
-const FARTHEST: i32 = 1 << 29;
 
 impl Default for Gate {
     fn default() -> Self {
@@ -64,9 +62,9 @@ impl Gate {
     /// Expects levels `residual` counts above the filter's whole counts and onward by `rate` (counts per tick), for
     /// about so many ticks from the filter's instant.
     pub(super) fn aim(&mut self, residual: f32, rate: f32, ticks: u32) {
-        self.shift = 17_u32.saturating_sub(ticks.leading_zeros()) as u8;
-        self.ahead = ((residual * FINE) as i32).clamp(-FARTHEST, FARTHEST);
-        self.drift = ((rate * math::two_to(24 + i32::from(self.shift))) as i32).clamp(-FARTHEST, FARTHEST);
+        self.shift = 12_u32.saturating_sub(ticks.leading_zeros()) as u8;
+        self.ahead = (residual * FINE) as i32;
+        self.drift = (rate * math::two_to(24 + i32::from(self.shift))) as i32;
     }
 
     /// How far a sample is off, fine steps, that is so many fine steps above the filter's whole counts and so many
@@ -76,18 +74,8 @@ impl Gate {
     }
 
     fn drifted(&self, ticks: u32) -> i32 {
-        match u16::try_from(ticks >> self.shift) {
-            Ok(steps) => {
-                // A product of 48 bits in two of 32.
-                let steps = i32::from(steps);
-                let low = (self.drift & 0xFFFF).cast_unsigned() * steps.cast_unsigned();
-                (self.drift >> 16) * steps + (low >> 16).cast_signed()
-            }
-            Err(_) => {
-                let drifted = (i64::from(self.drift) * i64::from(ticks >> self.shift)) >> 16;
-                drifted.clamp(-i64::from(FARTHEST), i64::from(FARTHEST)) as i32
-            }
-        }
+        let drifted = (i64::from(self.drift) * i64::from(ticks >> self.shift)) >> 16;
+        i32::try_from(drifted).unwrap_or(if drifted < 0 { i32::MIN } else { i32::MAX })
     }
 
     /// Whether a sample that is so far off is no farther than the noise of samples reaches.

@@ -137,14 +137,16 @@ impl NoiseSeen {
     /// any block has shown the scatter this may be hum as well: then only the first is left out.
     pub(super) fn is_torn(&mut self, mean: &BlockMean) -> bool {
         let n = f32::from(mean.samples);
-        let scattered = n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * self.sample_var;
+        let scattered =
+            n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * math::greater(self.sample_var, mean.step * mean.step);
         let first = !core::mem::replace(&mut self.seen, true);
         scattered && (first || self.has_scatter())
     }
 
     /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
     pub(super) fn take_block(&mut self, mean: &BlockMean, derived: &Derived) {
-        if mean.samples < 4 {
+        // Steps as coarse as the noise do not show it: so steep a drift is known after a block or two.
+        if mean.samples < 4 || 16.0 * mean.step * mean.step > self.sample_var {
             return;
         }
         // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; h is the spacing.

@@ -38,11 +38,13 @@ impl Zeroing {
         }
         if self.block.is_empty() {
             // Deviations are small where the filter expects the level.
-            let base = if self.gate.is_open() { seen.level_q16 >> 16 } else { self.trend.anchor() };
+            let base = if self.level_known { self.trend.anchor() } else { seen.level_q16 >> 16 };
             self.block.start(base);
         }
         let above = self.block.above(seen.level_q16);
-        match self.judge(seen.tick, above, ticks, derived) {
+        let ticks_ahead = self.pending_ticks().saturating_add(ticks);
+        let off = self.gate.off(above, ticks_ahead);
+        match self.judge(seen.tick, off, ticks_ahead, derived) {
             Verdict::Noise => {}
             Verdict::Spike => {
                 self.skip(ticks, derived);
@@ -58,7 +60,7 @@ impl Zeroing {
             }
         }
         self.pending.add(ticks, derived.coarse_shift);
-        if self.block.push(above, ticks, derived.block_ticks) {
+        if self.block.push(above, off, ticks, derived.block_ticks) {
             return self.finish_block(seen.tick, seen.terms, stop, derived);
         }
         Taken::Used
@@ -84,11 +86,9 @@ impl Zeroing {
         }
     }
 
-    /// Whether a sample, so many fine steps above the block's base and so many ticks after the one before, is too far off
-    /// to be noise; while too little is known to tell, none is.
-    fn judge(&mut self, tick: u32, above: i32, ticks: u32, derived: &Derived) -> Verdict {
-        let ticks = self.pending_ticks().saturating_add(ticks);
-        let off = self.gate.off(above, ticks);
+    /// Whether a sample, so many fine steps off and so many ticks after the trend's instant, is too far off to be noise;
+    /// while too little is known to tell, none is.
+    fn judge(&mut self, tick: u32, off: i32, ticks: u32, derived: &Derived) -> Verdict {
         // Most samples lie within what noise alone does: what else there may be is reckoned only for the others.
         let is_noise = self.gate.is_near(off) || off.unsigned_abs() <= gate::reach(self.variance_ahead(ticks, derived));
         if is_noise { self.gate.pass() } else { self.gate.refuse(tick, off) }
@@ -110,13 +110,11 @@ impl Zeroing {
         self.noise.sample_var_stated(derived) + trend.level_variance() + spread + walked + figures
     }
 
-    /// Tells the gate what to expect of the next block, when enough is known to tell noise from more.
+    /// Tells the gate what to expect of the next block, and when enough is known to tell noise from more, what is noise.
     fn aim_next(&mut self, mean: &BlockMean, derived: &Derived) {
-        if derived.block_ticks > 0 && !self.noise.has_scatter() {
-            return;
-        }
+        let can_tell = derived.block_ticks == 0 || self.noise.has_scatter();
         // A single sample shows no scatter: then the reach stays what it is.
-        if self.gate.is_open() || mean.samples > 1 {
+        if can_tell && (self.gate.is_open() || mean.samples > 1) {
             self.gate.set_reach(gate::reach(self.noise.sample_var_stated(derived)));
         }
         let ticks = self.pending_ticks().saturating_add(mean.span);
