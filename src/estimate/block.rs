@@ -50,9 +50,9 @@ pub(crate) struct BlockMean {
     pub(crate) samples: u16,
     /// One over `samples`.
     pub(crate) share: f32,
-    /// Sum of the squared deviations from a straight line, counts^2, and the step that these were rounded to, counts.
+    /// Sum of the squared deviations from a straight line, counts^2, and the square of the step that these were rounded to.
     pub(crate) scatter: f32,
-    pub(crate) step: f32,
+    pub(crate) step_squared: f32,
     /// Ticks that the block spans.
     pub(crate) span: u32,
 }
@@ -142,13 +142,14 @@ impl Block {
         }
         let share = if count == 1 { 1.0 } else { 1.0 / f32::from(count) };
         let (counts, rest) = block.mean(share);
-        let step = math::two_to(i32::from(block.coarse)) * FINE;
-        let one = BlockMean { counts, rest, age: 0, samples: count, share, scatter: 0.0, step, span: block.span };
+        let step_squared = math::two_to(2 * (i32::from(block.coarse) - FINE_BITS.cast_signed()));
+        let one =
+            BlockMean { counts, rest, age: 0, samples: count, share, scatter: 0.0, step_squared, span: block.span };
         if count == 1 {
             return Some(one);
         }
         let age = block.span.saturating_sub((math::float_unsigned(block.ticks) * share) as u32);
-        Some(BlockMean { age, scatter: block.scatter() * share * (step * step), ..one })
+        Some(BlockMean { age, scatter: block.scatter() * (share * step_squared), ..one })
     }
 
     /// The mean level: whole counts and the rest.
@@ -174,5 +175,90 @@ impl Block {
         let product = math::float(n * self.products - deviations * instants);
         let about_mean = math::float(n * self.squares.cast_signed() - deviations * deviations);
         if spread > 0 { about_mean - product * product / math::float(spread) } else { about_mean }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    extern crate std;
+    use std::vec::Vec;
+
+    use super::*;
+
+    /// Levels in fine steps at instants in ticks, as a block from `base` makes of them, each deviation as it is.
+    fn block(base: i64, samples: &[(u32, i32)]) -> BlockMean {
+        let (mut block, mut last) = (Block::default(), 0);
+        block.start(base);
+        for &(instant, level) in samples {
+            let level_q16 = (base << 16) + (i64::from(level) << 8);
+            let above = block.above(level_q16);
+            assert_eq!(above, level);
+            block.push(above, above, instant - last, 1 << 31);
+            last = instant;
+        }
+        block.take().unwrap()
+    }
+
+    /// Mean, mean age and sum of squares about the line, in `f64` from the definitions.
+    fn exactly(samples: &[(u32, i32)]) -> (f64, f64, f64) {
+        let n = samples.len() as f64;
+        let points = || samples.iter().map(|&(t, y)| (f64::from(t), f64::from(y) / 256.0));
+        let (t_mean, y_mean) = points().fold((0.0, 0.0), |(a, b), (t, y)| (a + t / n, b + y / n));
+        let tt: f64 = points().map(|(t, _)| (t - t_mean) * (t - t_mean)).sum();
+        let ty: f64 = points().map(|(t, y)| (t - t_mean) * (y - y_mean)).sum();
+        let scatter = points().map(|(t, y)| y - y_mean - ty / tt * (t - t_mean)).map(|off| off * off).sum();
+        (y_mean, f64::from(samples.last().unwrap().0) - t_mean, scatter)
+    }
+
+    /// Uneven instants and a level that steps about by `noise` on a drift, both fine steps.
+    fn uneven(n: i32, pace: u32, drift: i32, noise: i32) -> Vec<(u32, i32)> {
+        let jitter = |i: i32, k: i32| (i * i * 7 + i * k) % 11 - 5;
+        let instant = |i: i32| i.cast_unsigned() * pace + (jitter(i, 3) + 5).cast_unsigned() * pace / 20;
+        (1..=n).map(|i| (instant(i), i * drift + jitter(i, 5) * noise)).collect()
+    }
+
+    fn check(samples: &[(u32, i32)], tolerance: f64) {
+        for base in [0, -1 << 40, 12_345_678_901] {
+            let (mean, age, scatter) = exactly(samples);
+            let got = block(base, samples);
+            let level = (got.counts - base) as f64 + f64::from(got.rest);
+            assert!((level - mean).abs() < 1e-3, "{level}, not {mean}");
+            assert!((f64::from(got.age) - age).abs() <= 1.0 + 1e-6 * f64::from(got.span), "{}, not {age}", got.age);
+            assert!((f64::from(got.scatter) / scatter - 1.0).abs() < tolerance, "{}, not {scatter}", got.scatter);
+        }
+    }
+
+    #[test]
+    fn small_deviations_are_summed_without_loss() {
+        for (n, pace) in [(4, 40), (16, 100), (100, 250)] {
+            check(&uneven(n, pace, 20, 100), 1e-4);
+        }
+    }
+
+    #[test]
+    fn many_ticks_are_coarsened_and_the_scatter_stays() {
+        check(&uneven(16, 100_000_000, 20, 100), 1e-3);
+        check(&uneven(1000, 84_000, 3, 300), 1e-3);
+    }
+
+    #[test]
+    fn far_levels_are_coarsened_and_the_mean_stays_exact() {
+        // Up to 390 counts off with a noise of some counts, then up to 20,000 counts with 100.
+        check(&uneven(100, 1000, 1000, 500), 0.02);
+        check(&uneven(100, 1000, 51_200, 25_000), 0.02);
+    }
+
+    #[test]
+    fn longest_and_farthest_block_overflows_nothing() {
+        let mut block = Block::default();
+        for i in 0..65_534_u32 {
+            let level = if i % 2 == 0 { i64::MAX >> 1 } else { i64::MIN >> 1 };
+            let above = block.above(level);
+            assert_eq!(above.unsigned_abs(), 1 << 30);
+            assert!(!block.push(above, if i % 3 == 0 { i32::MAX } else { i32::MIN }, 65_000, u32::MAX));
+        }
+        assert!(block.push(0, 0, 1, u32::MAX));
+        assert!(block.take().unwrap().scatter > 0.0);
+        assert!(block.take().is_none());
     }
 }

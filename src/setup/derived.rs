@@ -53,6 +53,8 @@ pub(crate) struct Derived {
     pub(crate) readout_var: f32,
     /// Growth of the level's variance, counts^2/s.
     pub(crate) level_walk: f32,
+    /// A fifteenth of that in a tick: what it adds to the scatter of a block, counts^2.
+    pub(crate) scatter_walk: f32,
     /// Growth of the drift's variance, (counts/s)^2/s.
     pub(crate) rate_walk: f32,
     /// Flicker of the drift: its one-sided density times the frequency, (counts/s)^2.

@@ -6,8 +6,8 @@ use crate::setup::{Derived, QUANTISATION_VAR};
 
 /// Degrees of freedom that the set-up's readout noise is worth against the blocks' scatter, and the most that these are
 /// given, so that a change is followed.
-const SETUP_FREEDOM: f32 = 16.0;
-const MOST_FREEDOM: f32 = 4096.0;
+const SETUP_FREEDOM: u16 = 16;
+const MOST_FREEDOM: u16 = 4096;
 /// Innovations in a sum; the sums that the set-up's figures are worth, and the most that the observed ones are given.
 const SUMMED: u8 = 16;
 const SETUP_SUMS: f32 = 8.0;
@@ -28,7 +28,7 @@ const MOST_INNOVATIONS: u16 = 512;
 pub(super) struct NoiseSeen {
     /// Variance of single samples as the blocks show it, and the degrees of freedom it rests on.
     sample_var: f32,
-    freedom: f32,
+    freedom: u16,
     /// Mean square of the innovations over what was expected, and the number of them that it rests on.
     dispersion: f32,
     innovations: u16,
@@ -77,7 +77,7 @@ impl NoiseSeen {
         // 1.44 is 1.2 squared; with 250 degrees of freedom a variance is known to 9 per cent.
         let differs = observed > 1.44 * stated || 1.44 * observed < stated;
         let centicounts = |variance| (100.0 * math::sqrt(variance)) as u16;
-        (self.freedom >= 250.0 && differs).then(|| (centicounts(stated), centicounts(observed)))
+        (self.freedom >= 250 && differs).then(|| (centicounts(stated), centicounts(observed)))
     }
 
     /// Whether a block has shown how single samples scatter.
@@ -136,9 +136,9 @@ impl NoiseSeen {
     /// Whether a block scatters so much more than expected that a spike must be in it: its mean is of no use. Before
     /// any block has shown the scatter this may be hum as well: then only the first is left out.
     pub(super) fn is_torn(&mut self, mean: &BlockMean) -> bool {
-        let n = f32::from(mean.samples);
-        let scattered =
-            n >= 4.0 && mean.scatter > TORN_RATIO * (n - 2.0) * math::greater(self.sample_var, mean.step * mean.step);
+        let told = f32::from(mean.samples.saturating_sub(2));
+        let expected = told * math::greater(self.sample_var, mean.step_squared);
+        let scattered = mean.samples >= 4 && mean.scatter > TORN_RATIO * expected;
         let first = !core::mem::replace(&mut self.seen, true);
         scattered && (first || self.has_scatter())
     }
@@ -146,17 +146,17 @@ impl NoiseSeen {
     /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
     pub(super) fn take_block(&mut self, mean: &BlockMean, derived: &Derived) {
         // Steps as coarse as the noise do not show it: so steep a drift is known after a block or two.
-        if mean.samples < 4 || 16.0 * mean.step * mean.step > self.sample_var {
+        if mean.samples < 4 || mean.step_squared > self.sample_var * (1.0 / 16.0) {
             return;
         }
-        // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; h is the spacing.
-        let n = f32::from(mean.samples);
-        let span_s = mean.span as f32 * derived.tick_s;
-        let walked = derived.level_walk * span_s * ((n - 4.0 * mean.share) * (1.0 / 15.0));
-        let told = n - 2.0;
-        let freedom = self.freedom + told;
-        self.sample_var += (mean.scatter - walked - told * self.sample_var) / freedom;
-        self.sample_var = self.sample_var.max(QUANTISATION_VAR);
+        // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; the spacing h is span / n.
+        let spacings = f32::from(mean.samples) - 4.0 * mean.share;
+        let walked = derived.scatter_walk * mean.span as f32 * spacings;
+        let told = mean.samples - 2;
+        let freedom = self.freedom.saturating_add(told);
+        let surprise = mean.scatter - walked - f32::from(told) * self.sample_var;
+        let sample_var = self.sample_var + surprise / f32::from(freedom);
+        self.sample_var = if sample_var > QUANTISATION_VAR { sample_var } else { QUANTISATION_VAR };
         self.freedom = freedom.min(MOST_FREEDOM);
     }
 

@@ -7,7 +7,7 @@ use crate::estimate::{BlockMean, Bracket, DEVIATION, Innovation};
 use crate::ledger::{to_q16, whole_q16};
 use crate::level::{Seen, Terms};
 use crate::math;
-use crate::setup::Derived;
+use crate::setup::{Derived, WarmthLaw};
 
 /// An onset before so many innovations is as good as the beginning of the zero.
 const EARLY_INNOVATIONS: u16 = 16;
@@ -166,19 +166,30 @@ impl Zeroing {
             return Taken::Onset { since, contradicts_run, change };
         }
         if self.cusum.is_quiet() || self.checkpoint.is_none() {
-            let known = self.known_innovations;
-            self.checkpoint = Some(Checkpoint {
-                trend: self.trend,
-                bracket: self.bracket,
-                warmth: self.warmth,
-                considered: self.considered,
-                tick,
-                age: Span::default(),
-                known,
-            });
+            self.keep(tick, derived);
         }
         self.aim_next(&mean, derived);
         Taken::Used
+    }
+
+    /// Keeps what is known as the checkpoint.
+    fn keep(&mut self, tick: u32, derived: &Derived) {
+        let (trend, bracket, known) = (self.trend, self.bracket, self.known_innovations);
+        let age = Span::default();
+        let Some(checkpoint) = self.checkpoint.as_mut() else {
+            let (warmth, considered) = (self.warmth, self.considered);
+            self.checkpoint = Some(Checkpoint { trend, bracket, warmth, considered, tick, age, known });
+            return;
+        };
+        (checkpoint.trend, checkpoint.bracket, checkpoint.known) = (trend, bracket, known);
+        (checkpoint.tick, checkpoint.age) = (tick, age);
+        // Most boards have neither, and copies are dear.
+        if derived.warmth != WarmthLaw::Unknown {
+            checkpoint.warmth = self.warmth;
+        }
+        if derived.has_doubts() {
+            checkpoint.considered = self.considered;
+        }
     }
 
     /// An innovation for the watch over the input, 2^-12 standard deviations; the watch over the noise takes it as well.
