@@ -1,8 +1,8 @@
 //! The line just after the switch opens, extrapolated into a dead time that is over.
 
 use super::edge::{Drawn, Edge, Nearest, quadratic};
-use super::form::{Form, Polynomial, dot};
 use super::grid::Dot;
+use super::running::Running;
 use super::shared::Weights;
 use crate::math;
 use crate::setup::Derived;
@@ -68,14 +68,10 @@ impl After {
         let mut slope_var = drawn.readout[2];
         let mut walk_var = 0.0;
         if drawn.walk_of_unit > 0.0 {
-            let (passed, steps) = Form::of_steps(dots, drawn.curved);
-            let seen = |p: &Polynomial, gain: f32| {
-                let own = steps.of(p, p);
-                let passed = || dot(&passed, p, drawn.curved);
-                if hinted.is_some() { own + gain * (2.0 * passed() + gain * drawn.farthest) } else { own }
-            };
-            walk_var = drawn.walk_of_unit * (seen(&of_x, gain) - drawn.farthest);
-            slope_var += drawn.walk_of_unit * seen(change, turn);
+            let sums = Running::new(&of_x, gain, dots);
+            let [own, _, others] = sums.products(Running::new(change, turn, dots), dots);
+            walk_var = drawn.walk_of_unit * (own + gain * gain * drawn.nearest - drawn.farthest);
+            slope_var += drawn.walk_of_unit * (others + turn * turn * drawn.nearest);
         }
         Self {
             edge: drawn.edge,

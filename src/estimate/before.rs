@@ -1,8 +1,8 @@
 //! The line just before the switch closes: how long the dead time will be is not known yet.
 
 use super::edge::{Drawn, Edge, Nearest, quadratic};
-use super::form::{Form, dot};
 use super::grid::Dot;
+use super::running::Running;
 use super::shared::Taken;
 use crate::setup::Derived;
 
@@ -42,26 +42,20 @@ impl Before {
                 units_per_s: 0.0,
             };
         };
-        let Drawn { walk_of_unit, weights: [level, change], curved, .. } = &drawn;
-        let walks = *walk_of_unit > 0.0;
         let (mut readout, mut walk) = (drawn.readout, [0.0; 3]);
-        if walks {
-            let (_, steps) = Form::of_steps(dots, *curved);
-            let seen = steps.with(level);
-            walk = [dot(&seen, level, *curved) - drawn.farthest, dot(&seen, change, *curved), steps.of(change, change)];
+        if drawn.walk_of_unit > 0.0 {
+            let [level, change] = drawn.weights.map(|weights| Running::new(&weights, 0.0, dots));
+            walk = level.products(change, dots);
+            walk[0] -= drawn.farthest;
         }
-        if let Some(taken) = taken
-            && let Some(both) = dots.get(first_shared..).filter(|both| !both.is_empty())
-        {
-            let [of_readout, of_walk] = taken.common(both, &drawn, walks);
+        if let Some(taken) = taken.filter(|_| first_shared < dots.len()) {
+            let [of_readout, of_walk] = taken.common(dots, first_shared, &drawn);
             readout[0] += of_readout[0] * readout_var;
             readout[1] += of_readout[1] * readout_var;
             walk[0] += of_walk[0];
             walk[1] += of_walk[1];
         }
-        if walks {
-            walk = walk.map(|sum| sum * walk_of_unit);
-        }
+        let walk = walk.map(|sum| sum * drawn.walk_of_unit);
         let mut edge = drawn.edge;
         edge.slope = edge.slope.map(|away| -away);
         Self { edge, readout, walk, units_per_s: drawn.units_per_s }

@@ -1,7 +1,7 @@
 //! How a curved input bends the level beside a switching instant, and what neither line nor bend explains.
 
-use super::form::Polynomial;
 use super::moments::Moments;
+use super::running::Polynomial;
 
 /// A bend that noise could hardly have made is taken off: a parabola instead of a line.
 const CORRECTED_BEND: f32 = 4.0;

@@ -1,9 +1,10 @@
 //! The level and slope beside a switching instant, from the few samples next to it.
 
 use super::bend::{Bend, GridNoise, unexplained};
-use super::form::{Form, Polynomial};
+
 use super::grid::{Dot, Grid};
 use super::moments::Moments;
+use super::running::{Polynomial, Running};
 use crate::math;
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
@@ -46,8 +47,9 @@ pub(super) struct Drawn {
     pub(super) edge: Edge,
     pub(super) units_per_tick: f32,
     pub(super) units_per_s: f32,
-    /// From the instant to the middle of the samples and to the farthest.
+    /// From the instant to the middle of the samples, to the nearest and to the farthest.
     pub(super) middle: f32,
+    pub(super) nearest: f32,
     pub(super) farthest: f32,
     /// The weights of the samples in the level at the instant, and their change with the extrapolation.
     pub(super) weights: [Polynomial; 2],
@@ -86,7 +88,11 @@ impl Drawn {
                 var * to_grid / (squared * squared)
             }),
         };
-        let bend = Bend::of(&m, &noise, |p| Form::of_steps(dots, true).1.of(p, p) * math::power_of_two(-unit_bits));
+        let bend = Bend::of(&m, &noise, |p| {
+            let sums = Running::new(p, 0.0, dots);
+            let [walked, ..] = sums.products(sums, dots);
+            walked * math::power_of_two(-unit_bits)
+        });
         let var = readout_var * unexplained(&m, bend.as_ref(), &noise);
 
         let mut tilt = m.tilts as f32 * lever;
@@ -128,6 +134,7 @@ impl Drawn {
             units_per_tick,
             units_per_s,
             middle,
+            nearest: dots.first().map_or(0, |dot| dot.x) as f32 + middle,
             farthest: dots.last().map_or(0, |dot| dot.x) as f32 + middle,
             weights,
             curved,

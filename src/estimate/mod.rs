@@ -10,13 +10,13 @@ mod block;
 mod bracket;
 mod constant;
 mod edge;
-mod form;
 mod grid;
 mod line;
 mod moments;
 mod noise_fit;
 mod octave;
 mod onset;
+mod running;
 mod shared;
 mod trend;
 

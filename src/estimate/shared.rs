@@ -1,8 +1,8 @@
 //! Samples of a short segment that are in the lines at both of its ends.
 
 use super::edge::Drawn;
-use super::form::{Form, Polynomial, dot};
 use super::grid::Dot;
+use super::running::{Polynomial, Running};
 
 /// How the level at an instant was made of samples: their weights, a polynomial in `units_per_tick * ticks - middle`,
 /// where `ticks` is the distance of the sample.
@@ -54,25 +54,37 @@ impl Taken<'_> {
     }
 
     /// What noise that both lines see adds to the quadratic forms of readout and walk of this one, in a sample's
-    /// variance and in the walk of a unit. `dots` are the samples in both lines.
+    /// variance and in the walk of a unit. Of `dots` the first `own` are only in this line.
     ///
     /// Of a step of the walk, the other line sees the sum of its own weights nearer to this line's instant, and the run
     /// 1 less that of this line.
-    pub(super) fn common(&self, dots: &[Dot], drawn: &Drawn, walks: bool) -> [[f32; 2]; 2] {
-        let others = self.weights.turned(self.apart, drawn.units_per_tick, drawn.middle);
-        let [level, change] = &drawn.weights;
-        let curved = drawn.curved || others[2] != 0.0;
-        let (sums, samples) = Form::of_samples(dots, curved);
-        let seen = samples.with(&others);
-        let readout = [-2.0 * dot(&seen, level, curved), -dot(&seen, change, curved)];
-        if !walks {
-            return [readout, [0.0; 2]];
+    pub(super) fn common(&self, dots: &[Dot], own: usize, drawn: &Drawn) -> [[f32; 2]; 2] {
+        let turned = self.weights.turned(self.apart, drawn.units_per_tick, drawn.middle);
+        let [mut level, mut change] = drawn.weights.map(|weights| Running::new(&weights, 0.0, dots));
+        let mut others = Running::new(&turned, 0.0, dots);
+        let (mut with_level, mut with_change) = (0_i32, 0_i32);
+        let (mut passed, mut passed_level, mut passed_change) = (0_i32, 0_i32, 0_i32);
+        let mut near = 0;
+        for (i, dot) in dots.iter().enumerate() {
+            let step = (dot.x - near) * others.passed();
+            near = dot.x;
+            passed += step;
+            passed_level += step * level.passed();
+            passed_change += step * change.passed();
+            let (p, k) = (level.pass(dot.x), change.pass(dot.x));
+            if i >= own {
+                let weight = others.pass(dot.x);
+                with_level += p * weight;
+                with_change += k * weight;
+            }
         }
-        let (passed, steps) = Form::of_steps(dots, curved);
-        let (seen, passed) = (steps.with(&others), dot(&passed, &others, curved));
+        let unit = others.weight_unit();
+        let readout =
+            [-2.0 * unit * level.weight_unit() * with_level as f32, -unit * change.weight_unit() * with_change as f32];
+        let unit = others.passed_unit();
         let walk = [
-            2.0 * (dot(&sums, level, curved) * passed - dot(&seen, level, curved)),
-            dot(&sums, change, curved) * passed - dot(&seen, change, curved),
+            2.0 * unit * (passed as f32 - passed_level as f32 * level.passed_unit()),
+            -unit * change.passed_unit() * passed_change as f32,
         ];
         [readout, walk]
     }
