@@ -5,7 +5,7 @@ use crate::math;
 
 /// 2^-16 counts, rounded toward zero, saturating.
 pub(crate) fn to_q16(counts: f32) -> i64 {
-    math::whole(counts * 65536.0)
+    math::fixed(counts, 16)
 }
 
 /// Whole counts in 2^-16 counts, saturating.
@@ -57,7 +57,7 @@ impl Ledger {
         rate: f32,
         level_walk: f32,
     ) -> Bridged {
-        let half = 0.5 * dead_s;
+        let half = math::scaled(dead_s, -1);
         let (slopes, bridged) = match (before.edge.slope, after.edge.slope) {
             (Some(b), Some(a)) => ((b, a), Bridged::Interpolated),
             (Some(s), None) | (None, Some(s)) => ((s, s), Bridged::Guessed),
@@ -69,7 +69,7 @@ impl Ledger {
             Bridged::Guessed => drifted,
         };
         let difference = slopes.0 - slopes.1;
-        let noise = before.slope_variance() + after.slope_var;
+        let noise = before.slope_var + after.slope_var;
         let changed = match bridged {
             Bridged::Interpolated => difference * difference - noise,
             Bridged::Guessed => slopes.0 * slopes.0 * 12.0,
@@ -81,7 +81,7 @@ impl Ledger {
         self.dead_drift_q16 = self.dead_drift_q16.saturating_add(drifted);
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
         let (before_var, before_walk) = before.variances(half);
-        self.dead_time_var = bounded(self.dead_time_var + before_var + after.readout_var + input).max(0.0);
+        self.dead_time_var = bounded(self.dead_time_var + before_var + after.readout_var + input);
         self.pedestal_lever += after.hinted;
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
         let walk = before_walk + after.walk_var - level_walk * dead_s;
@@ -97,5 +97,9 @@ impl Ledger {
 
 /// Within what is known at all; what is not a number is not known.
 fn bounded(variance: f32) -> f32 {
-    if variance < LEVEL_VARIANCE_MAX { variance.max(-LEVEL_VARIANCE_MAX) } else { LEVEL_VARIANCE_MAX }
+    match variance < LEVEL_VARIANCE_MAX {
+        true if variance > -LEVEL_VARIANCE_MAX => variance,
+        true => -LEVEL_VARIANCE_MAX,
+        false => LEVEL_VARIANCE_MAX,
+    }
 }

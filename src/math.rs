@@ -89,9 +89,40 @@ pub(crate) fn exp2(x: f32) -> f32 {
     libm::exp2f(x)
 }
 
-/// Two to a whole power between -126 and 127, without arithmetic.
-pub(crate) fn power_of_two(exponent: i32) -> f32 {
-    f32::from_bits((127 + exponent).cast_unsigned() << 23)
+/// `x 2^bits` for `bits` up to 300 either way, a few steps with integers; 0 where `f32` would be subnormal.
+pub(crate) fn scaled(x: f32, bits: i32) -> f32 {
+    let exponent = exponent_bits(x);
+    match exponent + bits {
+        _ if exponent == 0xFF => x,
+        _ if exponent == 0 => 0.0,
+        ..=0 => 0.0,
+        0xFF.. => f32::INFINITY.copysign(x),
+        _ => f32::from_bits(x.to_bits().wrapping_add(bits.cast_unsigned() << 23)),
+    }
+}
+
+/// `x 2^bits` as a whole number, rounded toward zero and saturating; 0 for what is not a number.
+pub(crate) fn fixed(x: f32, bits: i32) -> i64 {
+    let fraction = i64::from(x.to_bits() & 0x7F_FFFF | 0x80_0000);
+    let exponent = exponent_bits(x);
+    let magnitude = match exponent - 150 + bits {
+        _ if exponent == 0 || x.is_nan() => 0,
+        ..=-24 => 0,
+        shift @ ..0 => fraction >> -shift,
+        shift @ ..39 => fraction << shift,
+        _ if x.is_sign_negative() => return i64::MIN,
+        _ => return i64::MAX,
+    };
+    if x.is_sign_negative() { -magnitude } else { magnitude }
+}
+
+/// The power of two that a number's magnitude begins with; -127 for 0.
+pub(crate) fn exponent(x: f32) -> i32 {
+    exponent_bits(x) - 127
+}
+
+fn exponent_bits(x: f32) -> i32 {
+    (x.to_bits() >> 23 & 0xFF).cast_signed()
 }
 
 /// `e^x - 1`, without loss near 0.
@@ -104,6 +135,11 @@ pub(crate) fn abs(x: f32) -> f32 {
     libm::fabsf(x)
 }
 
+/// A variance that rounding may have taken below zero; 0 for what is not a number.
+pub(crate) fn not_negative(variance: f32) -> f32 {
+    if variance > 0.0 { variance } else { 0.0 }
+}
+
 /// Nearest whole number of counts, halves away from zero, saturating at the ends of `i64`.
 pub(crate) fn nearest(x: f32) -> i64 {
     whole(libm::roundf(x))
@@ -111,7 +147,7 @@ pub(crate) fn nearest(x: f32) -> i64 {
 
 /// A difference of levels in 2^-16 counts, as counts.
 pub(crate) fn counts(q16: i64) -> f32 {
-    float(q16) * (1.0 / 65536.0)
+    scaled(float(q16), -16)
 }
 
 /// A level in 2^-16 counts as whole counts and the rest, which is not negative.
@@ -127,6 +163,8 @@ pub(crate) fn seconds(ticks: u64, tick_s: f32) -> f32 {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    const ODD: [f32; 8] = [0.0, -0.0, 1.5e-40, 0.3, -7.75, 1.0e9, -3.4e38, 1.2e-38];
 
     #[test]
     fn the_inverse_square_root_is_within_1e_4_for_every_significand() {
@@ -165,5 +203,35 @@ mod tests {
         assert_eq!((within(3.0, 2.0), within(-3.0, 2.0), within(1.0, 2.0)), (2.0, -2.0, 1.0));
         assert_eq!((lesser(3.0, 2.0), lesser(2.0, 3.0), lesser(f32::NAN, 2.0)), (2.0, 2.0, 2.0));
         assert_eq!((two_to(-200), two_to(-3), two_to(0), two_to(200)), (f32::MIN_POSITIVE, 0.125, 1.0, 1.7014118e38));
+    }
+
+    #[test]
+    fn scaling_is_a_product_with_a_power_of_two() {
+        for x in ODD {
+            for bits in [-140, -30, -1, 0, 1, 17, 60, 140] {
+                let exact = f64::from(x) * 2_f64.powi(bits);
+                let product = exact as f32;
+                let expected = if product.is_subnormal() || x.is_subnormal() { 0.0 } else { product };
+                assert_eq!(scaled(x, bits), expected, "{x:e} {bits}");
+            }
+        }
+        assert_eq!(scaled(f32::NEG_INFINITY, -3), f32::NEG_INFINITY);
+        assert!(scaled(f32::NAN, -3).is_nan());
+    }
+
+    #[test]
+    fn fixed_point_is_a_product_rounded_toward_zero() {
+        for x in ODD {
+            for bits in [-40, -1, 0, 16, 35, 62, 155] {
+                let exact = if x.is_subnormal() { 0.0 } else { f64::from(x) * 2_f64.powi(bits) };
+                assert_eq!(fixed(x, bits), exact as i64, "{x:e} {bits}");
+            }
+        }
+        assert_eq!((fixed(f32::NAN, 3), fixed(f32::NEG_INFINITY, 3)), (0, i64::MIN));
+    }
+
+    #[test]
+    fn exponents_begin_magnitudes() {
+        assert_eq!([1.0, -1.99, 2.0, 0.25, 0.0].map(exponent), [0, 0, 1, -2, -127]);
     }
 }

@@ -208,7 +208,8 @@ impl Run {
         let counted_twice = shown.sample_var * weight * weight;
         let start_var = (self.start_var * shown.widening).max(shown.rounding.0);
         let leaked = self.leaked_readout(derived);
-        let drift = not_negative(baseline.level_variance() - self.start_var - walk - leaked) * shown.rate_widening;
+        let drift =
+            math::not_negative(baseline.level_variance() - self.start_var - walk - leaked) * shown.rate_widening;
         let (of_start, of_dead_time) = match self.dead_time_var(derived) >= counted_twice {
             true => (0.0, counted_twice),
             false => (counted_twice, 0.0),
@@ -217,7 +218,7 @@ impl Run {
             movement_q16: movement_q16(self.last_q16, baseline).saturating_add(self.ledger.total_q16()),
             readout: (shown.sample_var * own * own + start_var - of_start).max(QUANTISATION_VAR)
                 + 2.0 * derived.linearity_var,
-            input_noise: not_negative(walk + self.ledger.walk_var),
+            input_noise: math::not_negative(walk + self.ledger.walk_var),
             drift: drift + shown.rounding.1 * driven_s * driven_s,
             dead_time: self.dead_time_var(derived) - of_dead_time,
             leak_and_soakage: leaked + self.leaked_rounding(derived) + considered,
@@ -249,9 +250,9 @@ impl Run {
         let walk = derived.level_walk * driven_s;
         // Rounding without dither: of the level at both ends, and of the drift of the two zeros together.
         let rounding = 2.0 * shown.rounding.0 + 0.5 * shown.rounding.1 * driven_s * driven_s;
-        let input_noise = not_negative(walk + self.ledger.walk_var);
+        let input_noise = math::not_negative(walk + self.ledger.walk_var);
         let leaked = self.leaked_readout(derived);
-        let of_zeros = not_negative(bracket.variance() + self.ledger.walk_var - input_noise - leaked);
+        let of_zeros = math::not_negative(bracket.variance() + self.ledger.walk_var - input_noise - leaked);
         let rest = of_zeros * shown.rate_widening + rounding;
         let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {
@@ -306,8 +307,4 @@ impl Run {
 
 fn baseline_q16(baseline: &Trend) -> i64 {
     whole_q16(baseline.anchor()).saturating_add(to_q16(baseline.residual()))
-}
-
-fn not_negative(variance: f32) -> f32 {
-    if variance > 0.0 { variance } else { 0.0 }
 }

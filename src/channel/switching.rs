@@ -184,7 +184,7 @@ impl<Q: Integral> Channel<'_, Q> {
         let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
         run.see(self.window.latest());
         let sample_var = self.zeroing.shown(derived).sample_var;
-        let half_s = 0.5 * math::seconds(crossing.dead, derived.tick_s);
+        let half_s = math::scaled(math::seconds(crossing.dead, derived.tick_s), -1);
         let after = self.window.after(run.opened_tick, run.opened(derived).as_ref(), half_s, sample_var, derived)?;
         let opened_q16 = after.edge.anchor_q16.saturating_sub(run.opened_terms_q16);
         let opened_at = (opened_q16 >> 16).saturating_add(math::nearest(after.edge.level_at_instant(baseline.rate())));

@@ -75,7 +75,7 @@ impl After {
         }
         Self {
             edge: drawn.edge,
-            readout_var: quadratic(&drawn.readout, d).max(0.0),
+            readout_var: math::not_negative(quadratic(&drawn.readout, d)),
             walk_var,
             slope_var: slope_var * drawn.units_per_s * drawn.units_per_s,
             weights: Weights { units_per_tick: drawn.units_per_tick, middle: drawn.middle, of_x },
@@ -97,7 +97,7 @@ impl Drawn {
         if off * off > 25.0 * sum {
             return None;
         }
-        let gain = ((level_var - hint.lever * hint.shared_var) / sum).max(0.0);
+        let gain = math::not_negative(level_var - hint.lever * hint.shared_var) / sum;
         let ratio = if level_var > 0.0 { cross / level_var } else { 0.0 };
         let (kept, turn) = (1.0 - gain, gain * ratio);
         self.edge.level += gain * off;

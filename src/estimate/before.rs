@@ -4,6 +4,7 @@ use super::edge::{Drawn, Edge, Nearest, quadratic};
 use super::grid::Dot;
 use super::running::Running;
 use super::shared::Taken;
+use crate::math::not_negative;
 use crate::setup::Derived;
 
 /// A line with the quadratic forms of what its extrapolation into the dead time adds to the run.
@@ -14,6 +15,8 @@ pub(crate) struct Before {
     readout: [f32; 3],
     /// Of input noise: what the weights change in the walk that the whole run is charged with. May be negative.
     walk: [f32; 3],
+    /// Variance of the slope, (counts/s)^2.
+    pub(crate) slope_var: f32,
     /// The forms' unit of extrapolation.
     units_per_s: f32,
 }
@@ -39,6 +42,7 @@ impl Before {
                 edge: Edge::of_single(nearest, -reach),
                 readout: [readout_var * (1.0 - 2.0 * shared), 0.0, 0.0],
                 walk: [-derived.level_walk * reach, 0.0, 0.0],
+                slope_var: 0.0,
                 units_per_s: 0.0,
             };
         };
@@ -58,18 +62,15 @@ impl Before {
         let walk = walk.map(|sum| sum * drawn.walk_of_unit);
         let mut edge = drawn.edge;
         edge.slope = edge.slope.map(|away| -away);
-        Self { edge, readout, walk, units_per_s: drawn.units_per_s }
+        let units_per_s = drawn.units_per_s;
+        let slope_var = (readout[2] + walk[2]) * units_per_s * units_per_s;
+        Self { edge, readout, walk, slope_var, units_per_s }
     }
 
     /// Variances when the line is extrapolated by `d` seconds: of readout noise, and the change of the run's by input
     /// noise, counts^2.
     pub(crate) fn variances(&self, d: f32) -> (f32, f32) {
         let d = d * self.units_per_s;
-        (quadratic(&self.readout, d).max(0.0), quadratic(&self.walk, d))
-    }
-
-    /// Variance of the slope, (counts/s)^2.
-    pub(crate) fn slope_variance(&self) -> f32 {
-        (self.readout[2] + self.walk[2]) * self.units_per_s * self.units_per_s
+        (not_negative(quadratic(&self.readout, d)), quadratic(&self.walk, d))
     }
 }

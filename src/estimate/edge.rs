@@ -72,26 +72,26 @@ impl Drawn {
         let span = grid.span as f32;
         let units_per_tick = ((m.count - 1) << grid.unit_bits) as f32 / span;
         let units_per_s = units_per_tick * derived.ticks_per_s;
-        let beyond = grid.sum as f32 * math::power_of_two(grid.tick_bits.cast_signed()) * share;
+        let beyond = math::scaled(grid.sum as f32 * share, grid.tick_bits.cast_signed());
         let middle = (nearest.ticks as f32 + beyond) * units_per_tick;
 
         let step_walk = derived.level_walk * (span * derived.tick_s) * reciprocal(m.count - 1);
         let unit_bits = grid.unit_bits.cast_signed();
         // A residual's unit is 2^counts_bits counts.
         let counts_bits = grid.level_bits.cast_signed() - i32::from(derived.fine_bits);
-        let to_grid = math::power_of_two(-2 * counts_bits);
+        let to_grid = |var| math::scaled(var, -2 * counts_bits);
         let noise = GridNoise {
-            readout: readout_var * to_grid,
-            walk: step_walk * to_grid,
+            readout: to_grid(readout_var),
+            walk: to_grid(step_walk),
             bend: derived.bend_var.map(|var| {
                 let squared = units_per_s * units_per_s;
-                var * to_grid / (squared * squared)
+                to_grid(var / (squared * squared))
             }),
         };
         let bend = Bend::of(&m, &noise, |p| {
             let sums = Running::new(p, 0.0, dots);
             let [walked, ..] = sums.products(sums, dots);
-            walked * math::power_of_two(-unit_bits)
+            math::scaled(walked, -unit_bits)
         });
         let var = readout_var * unexplained(&m, bend.as_ref(), &noise);
 
@@ -104,7 +104,7 @@ impl Drawn {
         let mut curved = false;
         if let Some(bend) = bend {
             let at = bend.at(-middle);
-            let mut charge = bend.left_in * math::power_of_two(2 * counts_bits);
+            let mut charge = math::scaled(bend.left_in, 2 * counts_bits);
             if bend.taken_off > 0.0 {
                 curved = true;
                 let amount = bend.taken_off * bend.amount;
@@ -121,13 +121,12 @@ impl Drawn {
         // The chord is put back where it was taken off: to the level in whole numbers.
         let fine = i32::from(derived.fine_bits);
         let chord_q16 = grid.chord_q32.saturating_mul(i64::from(nearest.ticks)) >> (16 + fine);
-        let chord_per_tick = grid.chord_q32 as f32 * math::power_of_two(-32 - fine);
-        let to_counts = math::power_of_two(counts_bits);
-        let slope = chord_per_tick * derived.ticks_per_s + tilt * to_counts * units_per_s;
+        let chord_per_tick = math::scaled(grid.chord_q32 as f32, -32 - fine);
+        let slope = chord_per_tick * derived.ticks_per_s + math::scaled(tilt, counts_bits) * units_per_s;
         Some(Self {
             edge: Edge {
                 anchor_q16: nearest.level_q16.saturating_sub(chord_q16),
-                level: level * to_counts,
+                level: math::scaled(level, counts_bits),
                 slope: Some(slope),
                 reach: 0.0,
             },
@@ -139,7 +138,7 @@ impl Drawn {
             weights,
             curved,
             readout,
-            walk_of_unit: step_walk * math::power_of_two(-unit_bits),
+            walk_of_unit: math::scaled(step_walk, -unit_bits),
         })
     }
 }

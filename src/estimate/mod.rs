@@ -18,6 +18,8 @@ mod octave;
 mod onset;
 mod running;
 mod shared;
+#[cfg(test)]
+mod textbook;
 mod trend;
 
 pub(crate) use after::{After, Hint};

@@ -15,26 +15,33 @@ pub(super) struct Running {
     /// The sum up to here, in `2^unit_bits`.
     sum: i32,
     unit_bits: i32,
+    /// Bits that a sum drops before it is multiplied: of many samples it may be larger.
+    dropped_bits: i32,
 }
 
-/// Bits of a weight, of its fraction while it is made, and those that are dropped before sums are multiplied.
-const WEIGHT_BITS: i32 = 11;
-const FRACTION_BITS: i32 = 18;
-const DROPPED_BITS: i32 = 5;
+/// Bits of a weight and of its fraction while it is made.
+const WEIGHT_BITS: i32 = 13;
+const FRACTION_BITS: i32 = 16;
+/// Bits that a product drops, so that 16 of them have room in 32 bits.
+const PRODUCT_BITS: i32 = 4;
 
 impl Running {
     /// The weights `p(x)` of `dots`; `start` is the weight of what lies nearer than all of them.
     pub(super) fn new(p: &Polynomial, start: f32, dots: &[Dot]) -> Self {
         let end = |dot: Option<&Dot>| dot.map_or(0, |dot| dot.x.unsigned_abs());
         let reach = (u32::BITS - end(dots.first()).max(end(dots.last())).leading_zeros()).cast_signed();
-        let [one, x, square] = p.map(exponent);
-        let largest = one.max(x + reach).max(square + 2 * reach).max(exponent(start)).max(LEAST);
-        // Each term stays below 2^WEIGHT_BITS, so a sum over 16 samples below 2^17.
+        let [one, x, square] = p.map(math::exponent);
+        let largest = one.max(x + reach).max(square + 2 * reach).max(math::exponent(start));
+        // Each of a weight's three terms stays below 2^WEIGHT_BITS, and a sum without its dropped bits below 2^14.
         let unit_bits = largest + 1 - WEIGHT_BITS;
-        let most = 1 << (WEIGHT_BITS + FRACTION_BITS);
-        let to_fraction = math::power_of_two(FRACTION_BITS - unit_bits);
-        let coefficients = p.map(|c| ((c * to_fraction) as i32).clamp(-most, most));
-        Self { coefficients, sum: (start * math::power_of_two(-unit_bits)) as i32, unit_bits }
+        let most = 1_i64 << (WEIGHT_BITS + FRACTION_BITS);
+        let whole = |c: f32, bits: i32| math::fixed(c, bits).clamp(-most, most) as i32;
+        Self {
+            coefficients: p.map(|c| whole(c, FRACTION_BITS - unit_bits)),
+            sum: whole(start, -unit_bits),
+            unit_bits,
+            dropped_bits: dots.len().checked_ilog2().unwrap_or(0).cast_signed() + 2,
+        }
     }
 
     /// The weight at `x`, which the sum then holds.
@@ -47,16 +54,22 @@ impl Running {
 
     /// The sum of the weights so far, coarser.
     pub(super) fn passed(&self) -> i32 {
-        (self.sum + (1 << DROPPED_BITS >> 1)) >> DROPPED_BITS
+        (self.sum + (1 << self.dropped_bits >> 1)) >> self.dropped_bits
     }
 
-    /// What a weight and a coarser sum have to be multiplied by.
-    pub(super) fn weight_unit(&self) -> f32 {
-        math::power_of_two(self.unit_bits)
+    /// A sum of products of weights as what it stands for.
+    pub(super) fn of_weights(&self, other: &Self, sum: i32) -> f32 {
+        math::scaled(sum as f32, self.unit_bits + other.unit_bits + PRODUCT_BITS)
     }
 
-    pub(super) fn passed_unit(&self) -> f32 {
-        math::power_of_two(self.unit_bits + DROPPED_BITS)
+    /// A coarser sum is in two to this power.
+    pub(super) fn passed_bits(&self) -> i32 {
+        self.unit_bits + self.dropped_bits
+    }
+
+    /// A sum of products of coarser sums as what it stands for.
+    pub(super) fn of_passed(&self, other: &Self, sum: i32) -> f32 {
+        math::scaled(sum as f32, self.passed_bits() + other.passed_bits() + PRODUCT_BITS)
     }
 
     /// Sums over the steps between samples, a unit of distance each, of the products of two running sums: of the first
@@ -68,21 +81,17 @@ impl Running {
             let step = dot.x - near;
             near = dot.x;
             let (p, q) = (self.passed(), other.passed());
-            own += step * p * p;
-            mixed += step * p * q;
-            others += step * q * q;
+            own += step * product(p, p);
+            mixed += step * product(p, q);
+            others += step * product(q, q);
             self.pass(dot.x);
             other.pass(dot.x);
         }
-        let (p, q) = (self.passed_unit(), other.passed_unit());
-        [own as f32 * (p * p), mixed as f32 * (p * q), others as f32 * (q * q)]
+        [self.of_passed(&self, own), self.of_passed(&other, mixed), other.of_passed(&other, others)]
     }
 }
 
-/// Smaller weights than `2^LEAST` are none.
-const LEAST: i32 = -40;
-
-/// The power of two that a number's magnitude begins with.
-fn exponent(x: f32) -> i32 {
-    (x.to_bits() >> 23 & 0xFF).cast_signed() - 127
+/// Of two weights or of two sums without their dropped bits.
+pub(super) fn product(p: i32, q: i32) -> i32 {
+    (p * q) >> PRODUCT_BITS
 }

@@ -2,7 +2,8 @@
 
 use super::edge::Drawn;
 use super::grid::Dot;
-use super::running::{Polynomial, Running};
+use super::running::{Polynomial, Running, product};
+use crate::math;
 
 /// How the level at an instant was made of samples: their weights, a polynomial in `units_per_tick * ticks - middle`,
 /// where `ticks` is the distance of the sample.
@@ -66,26 +67,21 @@ impl Taken<'_> {
         let (mut passed, mut passed_level, mut passed_change) = (0_i32, 0_i32, 0_i32);
         let mut near = 0;
         for (i, dot) in dots.iter().enumerate() {
-            let step = (dot.x - near) * others.passed();
+            let (step, seen) = (dot.x - near, others.passed());
             near = dot.x;
-            passed += step;
-            passed_level += step * level.passed();
-            passed_change += step * change.passed();
+            passed += step * seen;
+            passed_level += step * product(seen, level.passed());
+            passed_change += step * product(seen, change.passed());
             let (p, k) = (level.pass(dot.x), change.pass(dot.x));
             if i >= own {
                 let weight = others.pass(dot.x);
-                with_level += p * weight;
-                with_change += k * weight;
+                with_level += product(p, weight);
+                with_change += product(k, weight);
             }
         }
-        let unit = others.weight_unit();
-        let readout =
-            [-2.0 * unit * level.weight_unit() * with_level as f32, -unit * change.weight_unit() * with_change as f32];
-        let unit = others.passed_unit();
-        let walk = [
-            2.0 * unit * (passed as f32 - passed_level as f32 * level.passed_unit()),
-            -unit * change.passed_unit() * passed_change as f32,
-        ];
+        let readout = [-2.0 * others.of_weights(&level, with_level), -others.of_weights(&change, with_change)];
+        let passed = math::scaled(passed as f32, others.passed_bits());
+        let walk = [2.0 * (passed - others.of_passed(&level, passed_level)), -others.of_passed(&change, passed_change)];
         [readout, walk]
     }
 }
