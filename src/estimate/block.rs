@@ -6,11 +6,6 @@ use crate::math;
 const FINE_BITS: u32 = 8;
 const FINE: f32 = 1.0 / (1 << FINE_BITS) as f32;
 
-/// One fine step of a level kept with so many bits of a count, counts.
-pub(crate) fn fine_step(fine_bits: u8) -> f32 {
-    1.0 / (1_u32 << fine_bits.min(31)) as f32
-}
-
 /// A block being filled.
 ///
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
