@@ -192,3 +192,38 @@ impl NoiseSeen {
         self.summed = 0;
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::{Charge, Circuit, Converter, Noise, Policy, Setup};
+
+    #[test]
+    fn deviations_rounded_as_coarsely_as_the_noise_tell_nothing_of_it() {
+        let circuit = Circuit { capacitance_f: 470e-9, rail_low_v: -12.0, rail_high_v: 12.0, ..Circuit::DEFAULT };
+        let converter = Converter { code_zero_v: -2.5, lsb_v: 5.0 / 65536.0, ..Converter::DEFAULT };
+        let noise = Noise { readout_counts: 0.9, ..Noise::NONE };
+        let setup: Setup<Charge> = Setup::new(circuit, converter, noise, Policy::DEFAULT);
+        let stated = NoiseSeen::new(setup.derived());
+        let after = |step_squared| {
+            let block = BlockMean {
+                counts: 0,
+                rest: 0.0,
+                age: 50,
+                samples: 16,
+                share: 1.0 / 16.0,
+                scatter: 56.0,
+                step_squared,
+                span: 100,
+            };
+            let mut seen = stated;
+            seen.take_block(&block, setup.derived());
+            (seen.sample_var, seen.has_scatter())
+        };
+        assert_eq!(after(1.0), (stated.sample_var, false));
+        let (sample_var, has_scatter) = after(1.0 / 65536.0);
+        // 16 degrees of freedom of the set-up's, 14 with 4 counts^2 each.
+        let expected = (16.0 * stated.sample_var + 56.0) / 30.0;
+        assert!(has_scatter && (sample_var / expected - 1.0).abs() < 1e-3, "{sample_var}, not {expected}");
+    }
+}
