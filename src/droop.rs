@@ -70,7 +70,7 @@ impl Droop {
         let span = self.pending.leave(u64::from(mean.age));
         let variance = derived.block_var(mean.share);
         if self.level_known {
-            advance(&mut self.trend, span, derived);
+            advance(&mut self.trend, None, span, derived);
             self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
             self.known_ticks = self.known_ticks.saturating_add(span.ticks);
             self.held = self.held.saturating_add(span.ticks);

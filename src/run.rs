@@ -252,7 +252,7 @@ impl Run {
         let rounding = 2.0 * shown.rounding.0 + 0.5 * shown.rounding.1 * driven_s * driven_s;
         let input_noise = math::not_negative(walk + self.ledger.walk_var);
         let leaked = self.leaked_readout(derived);
-        let of_zeros = math::not_negative(bracket.variance() + self.ledger.walk_var - input_noise - leaked);
+        let of_zeros = math::not_negative(bracket.variance(zero) + self.ledger.walk_var - input_noise - leaked);
         let rest = of_zeros * shown.rate_widening + rounding;
         let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {

@@ -113,7 +113,7 @@ impl<'s, Q: Integral> Channel<'s, Q> {
                 considered.advance(self.zeroing.pending.ticks, derived);
                 considered.follow(self.level.terms(), derived);
             }
-            advance(&mut baseline, self.zeroing.pending, derived);
+            advance(&mut baseline, None, self.zeroing.pending, derived);
             self.zeroing.warm(&mut baseline, run.driven.ticks, derived);
             baseline.advance(0.0, run.flicker(derived));
             run.drift_q16 = run.drifted_q16(&baseline);

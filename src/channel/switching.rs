@@ -138,7 +138,7 @@ impl<Q: Integral> Channel<'_, Q> {
             return;
         };
         let crossing = run.crossing.unwrap_or_default();
-        advance(&mut self.zeroing.trend, Span { ticks: crossing.dead, squares: 0 }, derived);
+        advance(&mut self.zeroing.trend, None, Span { ticks: crossing.dead, squares: 0 }, derived);
         self.zeroing.considered.advance(crossing.dead, derived);
         self.zeroing.considered.skip(self.level.terms());
         self.zeroing.trend.rest(derived.rate_walk * math::seconds(crossing.held, derived.tick_s));

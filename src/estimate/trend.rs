@@ -1,5 +1,6 @@
 //! Level and drift by recursive least squares.
 
+use super::bracket::Bracket;
 use crate::math;
 
 /// How far level and rate may have walked over a step: the process noise, as variances.
@@ -106,6 +107,19 @@ impl Trend {
 
     /// Lets `dt_s` seconds pass: the level moves by `rate dt_s`, and both walk. Exact for a step of any length.
     pub fn advance(&mut self, dt_s: f32, walk: Walk) {
+        self.advance_beside(None, dt_s, walk);
+    }
+
+    /// The same beside a constant that has something in common with level and rate.
+    pub(crate) fn advance_beside(&mut self, constant: Option<&mut Bracket>, dt_s: f32, walk: Walk) {
+        let before = *self;
+        self.pass(dt_s, walk);
+        if let Some(constant) = constant {
+            constant.follow(&before, dt_s, &walk, self);
+        }
+    }
+
+    fn pass(&mut self, dt_s: f32, walk: Walk) {
         self.level += self.rate * dt_s;
         self.recentre();
         let coupling = self.coupling + dt_s;
@@ -138,7 +152,15 @@ impl Trend {
 
     /// Adds to the covariance what something with which level and rate are correlated did to them. The sum must be
     /// positive definite but for rounding.
-    pub(crate) fn absorb(&mut self, added: Walk) {
+    pub(crate) fn absorb(&mut self, constant: Option<&mut Bracket>, added: Walk) {
+        let before = *self;
+        self.add(added);
+        if let Some(constant) = constant {
+            constant.follow(&before, 0.0, &added, self);
+        }
+    }
+
+    fn add(&mut self, added: Walk) {
         let level = (self.level_variance() + added.level).max(0.0);
         let cross = self.covariance() + added.cross;
         let rate = (self.rate_variance + added.rate).min(RATE_VARIANCE_MAX);
@@ -152,9 +174,15 @@ impl Trend {
     /// Lets the rate alone walk by `rate_walk`, (counts/s)^2, while the level is held: the switch is closed or the
     /// input open.
     pub fn rest(&mut self, rate_walk: f32) {
+        self.rest_beside(None, rate_walk);
+    }
+
+    /// The same beside a constant.
+    pub(crate) fn rest_beside(&mut self, constant: Option<&mut Bracket>, rate_walk: f32) {
         if rate_walk <= 0.0 {
             return;
         }
+        let before = *self;
         let walked = math::lesser(self.rate_variance + rate_walk, RATE_VARIANCE_MAX);
         if walked > 0.0 {
             // The level's own variance and its covariance with the rate stay.
@@ -162,12 +190,27 @@ impl Trend {
             self.level_given_rate += self.coupling * self.coupling * self.rate_variance * (1.0 - kept);
             self.coupling *= kept;
             self.rate_variance = walked;
+            if let Some(constant) = constant {
+                constant.follow(&before, 0.0, &Walk { rate: rate_walk, ..Walk::default() }, self);
+            }
         }
     }
 
     /// Makes the rate at least as uncertain as `rate_variance` again, and keeps its estimate.
     pub fn doubt_rate(&mut self, rate_variance: f32) {
-        self.rate_variance = self.rate_variance.max(rate_variance);
+        self.doubt_rate_beside(None, rate_variance);
+    }
+
+    /// The same beside a constant.
+    pub(crate) fn doubt_rate_beside(&mut self, constant: Option<&mut Bracket>, rate_variance: f32) {
+        let before = *self;
+        self.rate_variance = math::greater(self.rate_variance, rate_variance);
+        let rate = self.rate_variance - before.rate_variance;
+        if let Some(constant) = constant
+            && rate > 0.0
+        {
+            constant.follow(&before, 0.0, &Walk { level: 0.0, cross: self.coupling * rate, rate }, self);
+        }
     }
 
     /// Takes a sample of the level with `variance` (counts^2, above 0).
@@ -177,6 +220,17 @@ impl Trend {
     ///
     /// The sample is `counts + rest`: a mean of several is not whole.
     pub fn update(&mut self, counts: i64, rest: f32, variance: f32) -> Innovation {
+        self.update_beside(None, counts, rest, variance).0
+    }
+
+    /// The same beside a constant. Gives also the share of the residual that the constant takes.
+    pub(crate) fn update_beside(
+        &mut self,
+        mut constant: Option<&mut Bracket>,
+        counts: i64,
+        rest: f32,
+        variance: f32,
+    ) -> (Innovation, f32) {
         let residual = math::float(counts.saturating_sub(self.anchor)) - self.level + rest;
         let shared = self.coupling * self.rate_variance;
         let from_rate = math::lesser(self.coupling * shared, LEVEL_VARIANCE_MAX);
@@ -187,6 +241,8 @@ impl Trend {
 
         let level_gain = (self.level_given_rate + from_rate) * precision;
 
+        let taken =
+            constant.as_deref_mut().map_or(0.0, |constant| constant.update(self, given_rate, precision, residual));
         if math::abs(residual) < ANCHOR_REACH {
             self.anchor = counts;
             self.level = rest - residual * (variance * precision);
@@ -200,9 +256,10 @@ impl Trend {
         if self.rate_variance > 0.0 {
             // What rounding leaves of the rate, whatever the number of samples: one millionth.
             let rounding = 1e-6 * self.rate;
-            self.rate_variance = math::greater(self.rate_variance * (given_rate * precision), rounding * rounding);
+            self.rate_variance *= given_rate * precision;
+            self.doubt_rate_beside(constant, rounding * rounding);
         }
-        Innovation { residual, precision, level_gain, rate_gain }
+        (Innovation { residual, precision, level_gain, rate_gain }, taken)
     }
 
     /// The level's whole part, counts.
@@ -218,6 +275,16 @@ impl Trend {
     /// The rate, counts/s.
     pub const fn rate(&self) -> f32 {
         self.rate
+    }
+
+    /// Variance of the level if the rate were known, counts^2.
+    pub(super) const fn level_given_rate(&self) -> f32 {
+        self.level_given_rate
+    }
+
+    /// Change of the level's estimate per change of the rate's, s.
+    pub(super) const fn coupling(&self) -> f32 {
+        self.coupling
     }
 
     /// Variance of the level, counts^2; at most 1e30.

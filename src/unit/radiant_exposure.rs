@@ -28,8 +28,8 @@ pub struct Photodetector {
 }
 
 impl Photodetector {
-    /// A detector of `responsivity_a_per_w` (1e-30 to 1e3 A/W) behind an aperture of `area_m2` (1e-30 to 1e4 m^2), each
-    /// with a relative standard uncertainty of 0 to 1.
+    /// A detector of `responsivity_a_per_w` (above 0, 1e-30 to 1e3 A/W) behind an aperture of `area_m2` (above 0, 1e-30
+    /// to 1e4 m^2), each with a relative standard uncertainty of 0 to 1.
     ///
     /// # Errors
     ///
@@ -43,10 +43,10 @@ impl Photodetector {
         check!(
             responsivity_a_per_w >= 1e-30 && responsivity_a_per_w <= 1e3,
             "responsivity_a_per_w",
-            "1e-30 to 1000 (ampere per watt)"
+            "above 0, from 1e-30 to 1000 (ampere per watt)"
         );
         check!(responsivity_u_rel >= 0.0 && responsivity_u_rel <= 1.0, "responsivity_u_rel", "0 to 1");
-        check!(area_m2 >= 1e-30 && area_m2 <= 1e4, "area_m2", "1e-30 to 10000 (square metre)");
+        check!(area_m2 >= 1e-30 && area_m2 <= 1e4, "area_m2", "above 0, from 1e-30 to 10000 (square metre)");
         check!(area_u_rel >= 0.0 && area_u_rel <= 1.0, "area_u_rel", "0 to 1");
         Ok(Self {
             exposure_per_charge: 1.0 / (responsivity_a_per_w * area_m2),

@@ -147,7 +147,7 @@ impl Zeroing {
     /// thought, the drift is as uncertain again as the data sheet.
     pub(crate) fn enter(&mut self, derived: &Derived) {
         if self.disturbed {
-            self.trend.doubt_rate(derived.rate_prior_var);
+            self.trend.doubt_rate_beside(self.bracket.as_mut(), derived.rate_prior_var);
         }
         self.disturbed = false;
         self.forget_level();
@@ -167,7 +167,7 @@ impl Zeroing {
         self.warmth.release_level();
         self.considered.release_level();
         if let Some(bracket) = self.bracket.as_mut() {
-            bracket.release_level();
+            bracket.release_level(&self.trend);
         }
     }
 
@@ -259,7 +259,7 @@ impl Zeroing {
     /// Brings the trend up to the latest sample: what is drift from here on belongs to a run.
     pub(crate) fn catch_up(&mut self, terms: Terms, derived: &Derived) {
         let pending = core::mem::take(&mut self.pending);
-        advance(&mut self.trend, pending, derived);
+        advance(&mut self.trend, self.bracket.as_mut(), pending, derived);
         self.considered.advance(pending.ticks, derived);
         self.considered.follow(terms, derived);
     }
@@ -296,19 +296,20 @@ impl Zeroing {
     pub(crate) fn rest(&mut self, derived: &Derived) {
         let resting = core::mem::take(&mut self.resting);
         let step = core::mem::take(&mut self.rate_step);
-        self.trend.rest(derived.rate_walk * math::seconds(resting, derived.tick_s) + step);
+        self.trend
+            .rest_beside(self.bracket.as_mut(), derived.rate_walk * math::seconds(resting, derived.tick_s) + step);
     }
 }
 
 /// Lets time pass for a level that drifts. Through a leak the samples' own noise walks into the effective level.
 ///
 /// Gives the time, s.
-pub(crate) fn advance(trend: &mut Trend, span: Span, derived: &Derived) -> f32 {
+pub(crate) fn advance(trend: &mut Trend, bracket: Option<&mut Bracket>, span: Span, derived: &Derived) -> f32 {
     let dt_s = math::seconds(span.ticks, derived.tick_s);
     let mut walk = Walk::over(dt_s, derived.level_walk, derived.rate_walk);
     if span.squares > 0 {
         walk.level += derived.leak_walk * span.squares as f32;
     }
-    trend.advance(dt_s, walk);
+    trend.advance_beside(bracket, dt_s, walk);
     dt_s
 }

@@ -136,20 +136,18 @@ impl Zeroing {
         let span = self.pending.leave(u64::from(mean.age));
         let elapsed = span.ticks;
         let wandered = self.flicker_walk(elapsed, derived);
-        self.warmth.half_step(&mut self.trend);
-        let dt_s = advance(&mut self.trend, span, derived);
+        self.warmth.half_step(&mut self.trend, self.bracket.as_mut());
+        let dt_s = advance(&mut self.trend, self.bracket.as_mut(), span, derived);
         self.considered.advance(elapsed, derived);
         self.considered.follow(terms, derived);
         self.warmth.advance(dt_s);
-        self.warmth.half_step(&mut self.trend);
+        self.warmth.half_step(&mut self.trend, self.bracket.as_mut());
         self.warmth.follow();
-        self.trend.rest(wandered);
-        if let Some(bracket) = self.bracket.as_mut() {
-            bracket.advance(dt_s);
-        }
-        let innovation = self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
+        self.trend.rest_beside(self.bracket.as_mut(), wandered);
+        let variance_here = derived.serial_var(variance);
+        let (innovation, run_gain) =
+            self.trend.update_beside(self.bracket.as_mut(), mean.counts, mean.rest, variance_here);
         let deviation = self.deviation(&innovation, derived);
-        let run_gain = self.bracket.as_mut().map_or(0.0, |bracket| bracket.update(&innovation));
         self.considered.update(&innovation, run_gain, derived);
         self.warmth.update(&innovation);
         if let Some(checkpoint) = self.checkpoint.as_mut() {
@@ -216,14 +214,15 @@ impl Zeroing {
         let span = self.pending.leave(u64::from(mean.age));
         let elapsed = span.ticks;
         // A second zero after the same run goes on with the bracket that there is.
-        match stop.filter(|_| self.bracket.is_none()) {
+        let stop = stop.filter(|_| self.bracket.is_none());
+        match stop {
             // Level and baseline drift together from the stop on.
             Some(stop) if stop.unbroken => {
-                advance(&mut self.trend, span, derived);
+                advance(&mut self.trend, None, span, derived);
                 self.considered.advance(elapsed, derived);
                 self.considered.follow(terms, derived);
                 self.considered.extend_run();
-                self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, variance, &self.trend));
+                self.bracket = Some(Bracket::on_level(mean.counts, mean.rest, &self.trend));
             }
             Some(stop) => {
                 let last_var = self.noise.sample_var() * stop.last_weight;
@@ -232,9 +231,12 @@ impl Zeroing {
             }
             None => self.resting = self.resting.saturating_add(elapsed),
         }
-        self.rest(derived);
-        self.warmth.whole_step(&mut self.trend);
         self.trend.restart(mean.counts, mean.rest, variance);
+        if let (Some(bracket), Some(Stop { unbroken: true, .. })) = (self.bracket.as_mut(), stop) {
+            bracket.hold_level();
+        }
+        self.rest(derived);
+        self.warmth.whole_step(&mut self.trend, self.bracket.as_mut());
         self.found_q16 = whole_q16(mean.counts).saturating_add(to_q16(mean.rest));
         self.found_var = variance;
         self.considered.release_level();

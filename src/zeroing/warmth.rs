@@ -1,6 +1,6 @@
 //! The drift's dependence on temperature.
 
-use crate::estimate::{Constant, Innovation, Trend, Walk};
+use crate::estimate::{Bracket, Constant, Innovation, Trend, Walk};
 use crate::math;
 use crate::quantity::Temperature;
 use crate::setup::{Derived, WarmthLaw};
@@ -65,35 +65,36 @@ impl Warmth {
         let area = core::mem::take(&mut self.area) as f32 * derived.tick_s;
         self.row.advance(driven_s);
         let risen = self.risen() as f32;
-        self.step(baseline, area, risen);
+        self.step(baseline, None, area, risen);
         self.follow();
     }
 
     /// Half of what the warming since the block before does to a zero's rate: once before the time passes, once after.
-    pub(super) fn half_step(&mut self, trend: &mut Trend) {
+    pub(super) fn half_step(&mut self, trend: &mut Trend, bracket: Option<&mut Bracket>) {
         if self.risen() != 0 {
             let half = 0.5 * self.risen() as f32;
-            self.step(trend, 0.0, half);
+            self.step(trend, bracket, 0.0, half);
         }
     }
 
     /// The same for warming that no sample of a zero has followed: while the input was open or the switch closed.
-    pub(super) fn whole_step(&mut self, trend: &mut Trend) {
-        self.half_step(trend);
-        self.half_step(trend);
+    pub(super) fn whole_step(&mut self, trend: &mut Trend, mut bracket: Option<&mut Bracket>) {
+        self.half_step(trend, bracket.as_deref_mut());
+        self.half_step(trend, bracket);
         self.follow();
         self.row.with_level = 0.0;
     }
 
     /// Level and rate move by what the coefficient makes of `area` and `risen`, and have that in common with it.
-    fn step(&mut self, trend: &mut Trend, area: f32, risen: f32) {
+    fn step(&mut self, trend: &mut Trend, bracket: Option<&mut Bracket>, area: f32, risen: f32) {
         let Constant { variance: v, with_level, with_rate, .. } = self.row;
         trend.shift(self.coefficient * area, self.coefficient * risen);
-        trend.absorb(Walk {
+        let added = Walk {
             level: area * (area * v + 2.0 * with_level),
             cross: area * with_rate + risen * with_level + area * risen * v,
             rate: risen * (risen * v + 2.0 * with_rate),
-        });
+        };
+        trend.absorb(bracket, added);
         // An area comes only with the end of a run, where the level is let go: no covariance with it is kept.
         self.row.with_rate += risen * v;
     }
