@@ -89,6 +89,12 @@ impl Ledger {
         bridged
     }
 
+    /// Whether so much was carried that it may have come to the end of its range: 2^46 counts.
+    pub(crate) fn is_full(&self) -> bool {
+        const END_Q16: u64 = 1 << 62;
+        self.carried_q16.unsigned_abs() > END_Q16 || self.interpolated_q16.unsigned_abs() > END_Q16
+    }
+
     /// Carried and interpolated movement together, 2^-16 counts.
     pub(crate) fn total_q16(&self) -> i64 {
         self.carried_q16.saturating_add(self.interpolated_q16)

@@ -97,8 +97,11 @@ impl Verification {
                 self.settled_q16 = level_q16;
             }
             self.latest_q16 = level_q16;
-            self.sum_q16 = self.sum_q16.saturating_add(level_q16 - self.settled_q16);
-            self.samples = self.samples.saturating_add(1);
+            // So many tell the level well enough: from there on sum and number stand.
+            if let Some(samples) = self.samples.checked_add(1) {
+                self.sum_q16 = self.sum_q16.saturating_add(level_q16 - self.settled_q16);
+                self.samples = samples;
+            }
             if !self.failed && Health::outside((level_q16 + 0x8000) >> 16, derived.reset_window) {
                 return Closed::NotArrived;
             }

@@ -194,6 +194,9 @@ impl<Q: Integral> Channel<'_, Q> {
         if bridged == Bridged::Guessed {
             run.reasons.insert(Reason::DeadTime);
         }
+        if run.ledger.is_full() {
+            run.reasons.insert(Reason::OutOfRange);
+        }
         Some((bridged, arrived))
     }
 

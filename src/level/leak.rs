@@ -42,6 +42,9 @@ impl LeakLaw {
     }
 }
 
+/// A page in 2^-28 counts, as a power of two.
+const PAGE_BENDS: u32 = 15 + 28;
+
 /// The area under the level so far: exact, whatever the steps.
 ///
 /// Between two samples the level bends by what leaks: with a steady input, a step of `a` time constants from `l0` to
@@ -67,6 +70,11 @@ impl Leak {
         }
         let rise = i64::from(to) - i64::from(from);
         self.bends = self.bends.saturating_add(rise * i64::from(self.bend));
+        let pages = self.bends >> PAGE_BENDS;
+        if pages != 0 {
+            self.pages = self.pages.saturating_add(pages);
+            self.bends -= pages << PAGE_BENDS;
+        }
         // At most 2^31 * 2^31 on top of a page, which is below 2^60.
         self.area += (i64::from(from) + i64::from(to)) * i64::from(ticks);
         if self.area.unsigned_abs() >= law.page.unsigned_abs() {

@@ -49,7 +49,7 @@ impl Derived {
             leaking_limit = leaking_v / time_constant_s / converter.lsb_v;
             rate_limit += leaking_limit;
         }
-        let coarse_shift = coarse_shift(converter.tick_hz);
+        let coarse_shift = coarse_shift(leak_per_tick);
         let coarse_tick = leak_per_tick * (1_u64 << coarse_shift) as f64;
         let soakage = match soakage(circuit, converter.tick_hz) {
             Ok(law) => law,
@@ -237,10 +237,12 @@ const fn soakage(circuit: &Circuit, tick_hz: f64) -> Result<Option<SoakageLaw>, 
     }
 }
 
-/// How far the counter's ticks are coarsened for squares: to between 2^18 and 2^19 a second.
-const fn coarse_shift(tick_hz: f64) -> u8 {
-    let bits = 64 - (tick_hz as u64).leading_zeros();
-    if bits > 19 { (bits - 19) as u8 } else { 0 }
+/// How far the counter's ticks are coarsened for squares: to between 2^12 and 2^13 in a time constant of the leak. Of
+/// shorter steps the noise that leaks is less than a thousandth of a sample's; and the longest fill a sum after 2^30.
+const fn coarse_shift(leak_per_tick: f64) -> u8 {
+    let ticks = if leak_per_tick > 0.0 { (1.0 / leak_per_tick) as u64 } else { 0 };
+    let bits = 64 - ticks.leading_zeros();
+    if bits > 13 { (bits - 13) as u8 } else { 0 }
 }
 
 /// Spare bits above the converter's span and a sign.

@@ -19,9 +19,14 @@ pub(crate) struct Warmth {
     reference: Option<i32>,
     latest: i32,
     temperature: Option<Temperature>,
-    /// Time integral of the heat above the reference during a run, thousandths times ticks.
+    /// Time integral of the heat above the reference during a run, thousandths times 2^12 ticks, and the rest of it in
+    /// thousandths times ticks: no run is long enough to fill it.
     area: i64,
+    rest: u16,
 }
+
+/// Ticks that areas are counted in, as a power of two.
+const AREA_TICKS: u32 = 12;
 
 impl Warmth {
     pub(super) fn new(derived: &Derived) -> Self {
@@ -56,13 +61,15 @@ impl Warmth {
     pub(super) fn drive(&mut self, ticks: u64) {
         let risen = self.risen();
         if risen != 0 {
-            self.area = self.area.saturating_add(i64::from(risen).saturating_mul(ticks.cast_signed()));
+            let area = i64::from(risen).saturating_mul(ticks.cast_signed()).saturating_add(i64::from(self.rest));
+            self.area = self.area.saturating_add(area >> AREA_TICKS);
+            self.rest = (area & ((1 << AREA_TICKS) - 1)) as u16;
         }
     }
 
     /// What the warming in a run of `driven_s` seconds has done to a baseline, and how uncertain that is.
     pub(super) fn apply(&mut self, baseline: &mut Trend, driven_s: f32, derived: &Derived) {
-        let area = core::mem::take(&mut self.area) as f32 * derived.tick_s;
+        let area = math::scaled(core::mem::take(&mut self.area) as f32 * derived.tick_s, AREA_TICKS.cast_signed());
         self.row.advance(driven_s);
         let risen = self.risen() as f32;
         self.step(baseline, None, area, risen);
