@@ -161,6 +161,7 @@ pub(crate) fn seconds(ticks: u64, tick_s: f32) -> f32 {
 }
 
 #[cfg(test)]
+#[allow(clippy::disallowed_methods, reason = "the test compares with f64 on the host")]
 mod tests {
     use super::*;
 

@@ -1,6 +1,8 @@
 //! The lines beside an instant against the textbook's sums in f64: Draper & Smith, Applied Regression Analysis, from
 //! memory; the walk's share written out step by step.
 
+#![allow(clippy::disallowed_methods, reason = "a reference on the host computes in f64; only src must give equal bits")]
+
 extern crate std;
 
 use std::vec::Vec;
@@ -37,6 +39,8 @@ impl Dice {
 enum Spacing {
     Even,
     Jittered,
+    /// Wider and wider: no symmetry.
+    Widening,
     Wild,
 }
 
@@ -52,9 +56,14 @@ struct Case {
 impl Case {
     /// `level(s)`: counts at a distance in seconds beyond the nearest sample.
     fn new(dice: &mut Dice, n: usize, spacing: Spacing, fine_bits: u8, level: impl Fn(f64) -> f64) -> Self {
+        let mut wider = 4_000;
         let mut step = || match spacing {
             Spacing::Even => 10_000,
             Spacing::Jittered => 8_000 + (4_000.0 * dice.uniform()) as u32,
+            Spacing::Widening => {
+                wider += 1_000;
+                wider
+            }
             Spacing::Wild => 2_f64.powf(26.0 * dice.uniform()) as u32,
         };
         let nearest = step();
@@ -128,7 +137,7 @@ fn near(what: &str, value: f32, expected: f64, tolerance: f64, case: &Case) {
 fn shares(spacing: Spacing) -> (f64, f64) {
     match spacing {
         Spacing::Even => (1e-4, 2e-3),
-        Spacing::Jittered => (0.02, 0.01),
+        Spacing::Jittered | Spacing::Widening => (0.02, 0.01),
         Spacing::Wild => (0.02, 0.03),
     }
 }
@@ -219,6 +228,10 @@ fn a_line_after_is_pulled_as_by_another_sample() {
             let expected = level + gain * off;
             let tolerance = value_share * (var + off * off).sqrt() + rounding(&at, &case) + 1e-6 * level.abs();
             near("level", found as f32, expected, tolerance, &case);
+            let slope = -(product(&change, &y) + turn * off);
+            let slope_u = (READOUT_VAR * product(&change, &change)).sqrt() + turn * off;
+            let tolerance = value_share * slope_u + rounding(&change, &case) + 1e-6 * slope.abs();
+            near("slope", line.edge.slope.unwrap(), slope, tolerance, &case);
             let pulled: Vec<f64> = at.iter().zip(&change).map(|(a, b)| a * (1.0 - gain) + d * (b - turn * a)).collect();
             let hinted = gain + d * turn;
             near("hinted", line.hinted, hinted, share * hinted, &case);
@@ -242,34 +255,39 @@ fn a_line_after_is_pulled_as_by_another_sample() {
     });
 }
 
-/// Samples that the line after the last reset used as well.
+/// Samples that the line after the last reset used as well; straight lines and parabolas.
 #[test]
 fn samples_in_two_lines_weigh_with_both_weights() {
     let mut dice = Dice(7);
-    for spacing in [Spacing::Even, Spacing::Jittered] {
-        for (n, both) in [(16, 16), (16, 12), (16, 1), (9, 9), (6, 4), (16, 0)] {
-            let case = Case::new(&mut dice, n, spacing, 8, |s| 500.0 * s);
+    let straight = [(16, 16), (16, 12), (16, 1), (9, 9), (6, 4), (16, 0)].map(|(n, both)| (n, both, 0.0, 900.0));
+    let curved = [(16, 16), (16, 13)].map(|(n, both)| (n, both, 9_000.0, 20.0));
+    for spacing in [Spacing::Even, Spacing::Jittered, Spacing::Widening] {
+        for (n, both, bend, level_walk) in straight.into_iter().chain(curved) {
+            let case = Case::new(&mut dice, n, spacing, 8, |s| 500.0 * s + bend * s * s);
             let x = case.x();
-            let derived = derived(8, 900.0, None);
+            let derived = derived(8, level_walk, None);
+            let taken_off = if bend > 0.0 { 1.0 } else { 0.0 };
             let apart = case.ticks[n - 1] + case.nearest + 9_000;
             // Seen from the other instant: the farthest come first.
             let from_there: Vec<u32> = case.ticks.iter().rev().map(|t| apart - case.nearest - t).collect();
             let (d, window) = (0.05, if both == 0 { 100 } else { from_there[both - 1] });
             let used = &from_there[..both.max(2)];
             let there: Vec<f64> = used.iter().map(|&t| f64::from(t) * 1e-6).collect();
-            let mut dots: Vec<Dot> = used.iter().map(|&t| Dot { x: (t - used[0]) as i32, y: 0 }).collect();
+            let rise = |i: usize| case.fine[n - 1 - i] - case.fine[n - 1];
+            let mut dots: Vec<Dot> =
+                used.iter().enumerate().map(|(i, &t)| Dot { x: (t - used[0]) as i32, y: rise(i) }).collect();
             let nearest = Nearest { ticks: used[0], level_q16: 0 };
             let other = After::fit(&mut dots, &nearest, READOUT_VAR as f32, None, d as f32, &derived);
             let taken = Taken { weights: &other.weights, apart, window };
             let line = Before::fit(&mut case.dots(), &case.nearest(), READOUT_VAR as f32, Some(&taken), &derived);
             let mut others = std::vec![0.0; n];
-            for (i, w) in weights(&there, d, 0.0).iter().enumerate().take(both) {
+            for (i, w) in weights(&there, d, taken_off).iter().enumerate().take(both) {
                 others[n - 1 - i] = *w;
             }
             for e in [0.0, 0.07] {
-                let w = weights(&x, e, 0.0);
+                let w = weights(&x, e, taken_off);
                 let (readout, walk) = line.variances(e as f32);
-                let (_, share) = shares(spacing);
+                let share = (1.0 + taken_off) * shares(spacing).1;
                 // The total holds this line's less the other's; what only the other sees is charged there.
                 let expected = READOUT_VAR * (product(&w, &w) - 2.0 * product(&w, &others));
                 let scale = READOUT_VAR * (product(&w, &w) + 2.0 * product(&w, &others).abs());
@@ -281,13 +299,103 @@ fn samples_in_two_lines_weigh_with_both_weights() {
                     scale += step * (seen * seen + 1.0 + 2.0 * (other_seen * (1.0 - seen)).abs());
                     (at, seen, other_seen) = (x[i], seen + w[i], other_seen + others[i]);
                 }
-                near("walk", walk, 900.0 * sum, share * 900.0 * scale, &case);
+                near("walk", walk, level_walk * sum, share * level_walk * scale, &case);
             }
         }
     }
 }
 
-/// A bend far above the noise is followed, one within it is not; the parabola is that of the textbook.
+/// A parabola of which `1` or, where the bend is known to be of the order of what noise makes of it, a part is taken
+/// off; with the walk that its weights see.
+#[test]
+fn a_bend_that_walks() {
+    let mut dice = Dice(11);
+    let level_walk = 20.0;
+    for spacing in [Spacing::Even, Spacing::Jittered, Spacing::Widening] {
+        for (n, known) in [(11, false), (16, false), (11, true), (16, true)] {
+            let case = Case::new(&mut dice, n, spacing, 8, |s| 9_000.0 * s * s - 700.0 * s);
+            let (x, y) = (case.x(), case.y());
+            let parts = |taken_off: f64| {
+                let at = weights(&x, 0.0, taken_off);
+                let change: Vec<f64> = weights(&x, 1.0, taken_off).iter().zip(&at).map(|(b, a)| b - a).collect();
+                (at, change)
+            };
+            // The bend's own weights are what taking it off adds to any level's, over what it does there.
+            let line = parts(0.0);
+            let mean = x.iter().sum::<f64>() / n as f64;
+            let u: Vec<f64> = x.iter().map(|x| x - mean).collect();
+            let sum = |power: i32| u.iter().map(|u| u.powi(power)).sum::<f64>();
+            let (skew, square) = (sum(3) / sum(2), sum(2) / n as f64);
+            let q: Vec<f64> = u.iter().map(|u| u * u - skew * u - square).collect();
+            let power = product(&q, &q);
+            let of_noise = (READOUT_VAR + level_walk * (walked(&x, &q, 0.0) + x[n - 1]) / power) / power;
+            let (taken_off, left, prior) = match known {
+                false => (1.0, 0.0, None),
+                true => (0.6, 1.5 * of_noise * 0.16, Some(1.5 * of_noise)),
+            };
+            let (at, change) = parts(taken_off);
+            let derived = derived(8, level_walk, prior);
+            let after = After::fit(&mut case.dots(), &case.nearest(), READOUT_VAR as f32, None, 0.1, &derived);
+            let before = Before::fit(&mut case.dots(), &case.nearest(), READOUT_VAR as f32, None, &derived);
+            let (value_share, share) = shares(spacing);
+            let bent = 9_000.0 * (x[n - 1] - x[0]).powi(2);
+            let tolerance = |weights: &[f64]| {
+                let weighed = weights.iter().map(|w| w.abs()).sum::<f64>();
+                let of_grid = if spacing == Spacing::Even { 1e-5 } else { 1e-3 } * bent * weighed;
+                value_share * (READOUT_VAR * product(weights, weights)).sqrt() + rounding(weights, &case) + of_grid
+            };
+            let level = before.edge.anchor_q16 as f64 / 65536.0 + f64::from(before.edge.level_at_instant(0.0));
+            near("level", level as f32, product(&at, &y), tolerance(&at), &case);
+            near("slope", before.edge.slope.unwrap(), product(&change, &y), tolerance(&change), &case);
+            near("slope", after.edge.slope.unwrap(), -product(&change, &y), tolerance(&change), &case);
+            let w: Vec<f64> = at.iter().zip(&change).map(|(a, b)| a + 0.1 * b).collect();
+            let bend_at = if known { (product(&w, &q) - product(&line.0, &q)) / taken_off } else { 0.0 };
+            let readout = READOUT_VAR * product(&w, &w) + left * bend_at * bend_at;
+            let walk = level_walk * walked(&x, &w, 0.0);
+            let tolerances = (2.0 * share * readout, 2.0 * share * (walk + 2.0 * level_walk * x[n - 1]));
+            let (before_readout, before_walk) = before.variances(0.1);
+            near("readout after", after.readout_var, readout, tolerances.0, &case);
+            near("readout before", before_readout, readout, tolerances.0, &case);
+            near("walk after", after.walk_var, walk, tolerances.1, &case);
+            near("walk before", before_walk, walk, tolerances.1, &case);
+            let largest = w.iter().fold(0.0_f64, |m, w| m.max(w.abs()));
+            for (&t, &w) in case.ticks.iter().zip(&w) {
+                near("weight", after.weights.at(t + case.nearest), w, 2.0 * share * largest, &case);
+            }
+        }
+    }
+}
+
+/// Birge ratio: samples that scatter by more than 3 standard deviations of `chi^2` above its expectation.
+#[test]
+fn scatter_beyond_noise_and_walk_widens() {
+    for level_walk in [0.0, 100.0] {
+        for (n, deviations, widens) in
+            [(16, 2.8, false), (16, 3.2, true), (4, 2.8, false), (4, 3.2, true), (7, 20.0, true)]
+        {
+            let ticks: Vec<u32> = (0..n).map(|i| 10_000 * i).collect();
+            let degrees = f64::from(n) - 2.0;
+            let (walked, terms) = (level_walk * 0.01 * (f64::from(n) + 2.0) / 15.0, (2.0 / degrees).sqrt());
+            let expected = degrees * (READOUT_VAR + walked);
+            // A zigzag that a line does not follow; of four samples no parabola either, of an even number.
+            let shape: Vec<f64> = (0..n).map(|i| if i % 2 == 0 { 1.0 } else { -1.0 }).collect();
+            let x: Vec<f64> = ticks.iter().map(|&t| f64::from(t + 10_000) * 1e-6).collect();
+            let (at, far) = (weights(&x, 0.0, 0.0), weights(&x, 1.0, 0.0));
+            let (level, slope) = (product(&at, &shape), product(&at, &shape) - product(&far, &shape));
+            let chi: f64 = x.iter().zip(&shape).map(|(x, y)| (y - level - slope * x).powi(2)).sum();
+            let height = (expected * (1.0 + deviations * terms) / chi).sqrt();
+            let fine: Vec<i32> = shape.iter().map(|y| ((y - shape[0]) * height * 256.0).round() as i32).collect();
+            let case = Case { nearest: 10_000, ticks, fine, fine_bits: 8 };
+            let line =
+                Before::fit(&mut case.dots(), &case.nearest(), READOUT_VAR as f32, None, &derived(8, level_walk, None));
+            let factor = if widens { 1.0 + deviations * terms } else { 1.0 };
+            let var = READOUT_VAR * product(&at, &at) * factor;
+            near("readout", line.variances(0.0).0, var, 5e-3 * var, &case);
+        }
+    }
+}
+
+/// A bend far above the noise is followed as the textbook's parabola.
 #[test]
 fn a_bend_is_that_of_the_textbook() {
     let mut dice = Dice(3);
