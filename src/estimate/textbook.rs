@@ -263,26 +263,27 @@ fn samples_in_two_lines_weigh_with_both_weights() {
     let curved = [(16, 16), (16, 13)].map(|(n, both)| (n, both, 9_000.0, 20.0));
     for spacing in [Spacing::Even, Spacing::Jittered, Spacing::Widening] {
         for (n, both, bend, level_walk) in straight.into_iter().chain(curved) {
-            let case = Case::new(&mut dice, n, spacing, 8, |s| 500.0 * s + bend * s * s);
+            // Each line uses `n` samples of the segment.
+            let all = Case::new(&mut dice, 2 * n - both, spacing, 8, |s| 500.0 * s + bend * s * s);
+            let case = Case { ticks: all.ticks[..n].to_vec(), fine: all.fine[..n].to_vec(), ..all.clone() };
             let x = case.x();
             let derived = derived(8, level_walk, None);
             let taken_off = if bend > 0.0 { 1.0 } else { 0.0 };
-            let apart = case.ticks[n - 1] + case.nearest + 9_000;
+            let apart = all.ticks[all.ticks.len() - 1] + all.nearest + 9_000;
             // Seen from the other instant: the farthest come first.
-            let from_there: Vec<u32> = case.ticks.iter().rev().map(|t| apart - case.nearest - t).collect();
-            let (d, window) = (0.05, if both == 0 { 100 } else { from_there[both - 1] });
-            let used = &from_there[..both.max(2)];
-            let there: Vec<f64> = used.iter().map(|&t| f64::from(t) * 1e-6).collect();
-            let rise = |i: usize| case.fine[n - 1 - i] - case.fine[n - 1];
-            let mut dots: Vec<Dot> =
-                used.iter().enumerate().map(|(i, &t)| Dot { x: (t - used[0]) as i32, y: rise(i) }).collect();
-            let nearest = Nearest { ticks: used[0], level_q16: 0 };
+            let from_there: Vec<u32> = all.ticks.iter().rev().take(n).map(|t| apart - all.nearest - t).collect();
+            let there: Vec<f64> = from_there.iter().map(|&t| f64::from(t) * 1e-6).collect();
+            let rises = all.fine.iter().rev().map(|y| y - all.fine[all.fine.len() - 1]);
+            let dots = from_there.iter().zip(rises).map(|(&t, y)| Dot { x: (t - from_there[0]) as i32, y });
+            let nearest = Nearest { ticks: from_there[0], level_q16: 0 };
+            let d = 0.05;
+            let mut dots: Vec<Dot> = dots.collect();
             let other = After::fit(&mut dots, &nearest, READOUT_VAR as f32, None, d as f32, &derived);
-            let taken = Taken { weights: &other.weights, apart, window };
+            let taken = Taken { weights: &other.weights, apart, window: from_there[n - 1] };
             let line = Before::fit(&mut case.dots(), &case.nearest(), READOUT_VAR as f32, Some(&taken), &derived);
             let mut others = std::vec![0.0; n];
-            for (i, w) in weights(&there, d, taken_off).iter().enumerate().take(both) {
-                others[n - 1 - i] = *w;
+            for (i, w) in weights(&there, d, taken_off).iter().enumerate().skip(n - both) {
+                others[2 * n - both - 1 - i] = *w;
             }
             for e in [0.0, 0.07] {
                 let w = weights(&x, e, taken_off);
