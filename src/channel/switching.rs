@@ -66,7 +66,7 @@ impl<Q: Integral> Channel<'_, Q> {
         }
         self.zeroing.catch_up(self.level.terms(), derived);
         if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
-            let sample_var = self.zeroing.shown(derived).sample_var;
+            let sample_var = self.zeroing.sample_var();
             let before = self.window.before(tick, run.opening.as_ref(), sample_var, derived);
             run.crossing = Some(Crossing { before, ..Crossing::default() });
             run.stage = Stage::Interrupted;
@@ -183,7 +183,7 @@ impl<Q: Integral> Channel<'_, Q> {
         let derived = self.setup.derived();
         let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
         run.see(self.window.latest());
-        let sample_var = self.zeroing.shown(derived).sample_var;
+        let sample_var = self.zeroing.sample_var();
         let half_s = math::scaled(math::seconds(crossing.dead, derived.tick_s), -1);
         let after = self.window.after(run.opened_tick, run.opened(derived).as_ref(), half_s, sample_var, derived)?;
         let opened_q16 = after.edge.anchor_q16.saturating_sub(run.opened_terms_q16);

@@ -182,6 +182,11 @@ impl Zeroing {
         self.level_known
     }
 
+    /// Variance of single samples, as the zeros have shown it, counts^2.
+    pub(crate) fn sample_var(&self) -> f32 {
+        self.noise.sample_var()
+    }
+
     /// What the zeros have shown of the noise.
     pub(crate) fn shown(&self, derived: &Derived) -> Shown {
         let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
