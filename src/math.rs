@@ -90,6 +90,7 @@ pub(crate) fn exp2(x: f32) -> f32 {
 }
 
 /// `x 2^bits` for `bits` up to 300 either way, a few steps with integers; 0 where `f32` would be subnormal.
+// Inlined everywhere it would fill a kilobyte of flash.
 #[inline(never)]
 pub(crate) fn scaled(x: f32, bits: i32) -> f32 {
     let exponent = exponent_bits(x);
