@@ -1,6 +1,6 @@
 //! Totals across resets and holds: what was measured, what was interpolated, and the variance they added.
 
-use crate::estimate::{After, Before, LEVEL_VARIANCE_MAX};
+use crate::estimate::{After, Before, LEVEL_VARIANCE_MAX, Sum};
 use crate::math;
 
 /// 2^-16 counts, rounded toward zero, saturating.
@@ -23,11 +23,11 @@ pub(crate) struct Ledger {
     /// The drift's share of it.
     pub(crate) dead_drift_q16: i64,
     /// Variance from the fits beside the interruptions and from the interpolation, counts^2.
-    pub(crate) dead_time_var: f32,
+    pub(crate) dead_time_var: Sum,
     /// How much of the pedestal is in the total: its error adds up from reset to reset.
-    pub(crate) pedestal_lever: f32,
+    pub(crate) pedestal_lever: Sum,
     /// Change of the run's walk variance, counts^2; may be negative.
-    pub(crate) walk_var: f32,
+    pub(crate) walk_var: Sum,
 }
 
 /// How well a dead time could be bridged.
@@ -81,11 +81,11 @@ impl Ledger {
         self.dead_drift_q16 = self.dead_drift_q16.saturating_add(drifted);
         let input = if changed > 0.0 { changed * dead_s * dead_s * (1.0 / 12.0) } else { 0.0 };
         let (before_var, before_walk) = before.variances(half);
-        self.dead_time_var = bounded(self.dead_time_var + before_var + after.readout_var + input);
-        self.pedestal_lever += after.hinted;
+        self.dead_time_var.add(before_var + after.readout_var + input, LEVEL_VARIANCE_MAX);
+        self.pedestal_lever.add(after.hinted, LEVEL_VARIANCE_MAX);
         // With the switch closed the level does not walk, but the run is charged for its whole duration.
         let walk = before_walk + after.walk_var - level_walk * dead_s;
-        self.walk_var = bounded(self.walk_var + walk);
+        self.walk_var.add(walk, LEVEL_VARIANCE_MAX);
         bridged
     }
 
@@ -98,14 +98,5 @@ impl Ledger {
     /// Carried and interpolated movement together, 2^-16 counts.
     pub(crate) fn total_q16(&self) -> i64 {
         self.carried_q16.saturating_add(self.interpolated_q16)
-    }
-}
-
-/// Within what is known at all; what is not a number is not known.
-fn bounded(variance: f32) -> f32 {
-    match variance < LEVEL_VARIANCE_MAX {
-        true if variance > -LEVEL_VARIANCE_MAX => variance,
-        true => -LEVEL_VARIANCE_MAX,
-        false => LEVEL_VARIANCE_MAX,
     }
 }

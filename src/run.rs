@@ -1,13 +1,13 @@
 //! One run: from leaving zero to the end of the next zero, through resets and holds.
 
 use crate::clock::Span;
-use crate::estimate::{After, Before, Bracket, Hint, Trend, Walk, movement_q16};
+use crate::estimate::{After, Before, Bracket, Hint, LEVEL_VARIANCE_MAX, Trend, Walk, movement_q16};
 use crate::ledger::{Bridged, Ledger, to_q16, whole_q16};
 use crate::math;
 use crate::notice::Reasons;
 use crate::setup::{Derived, QUANTISATION_VAR};
 use crate::verify::Settled;
-use crate::window::Opening;
+use crate::window::{Opening, Window};
 use crate::zeroing::{Shown, Stop};
 
 /// An interruption of a run that waits for the line after it.
@@ -160,8 +160,11 @@ impl Run {
 
     /// Books a segment up to its latest sample: the time that `passed`, and what leak and soakage, `terms_q16` now,
     /// took since it opened.
-    pub(crate) fn book(&mut self, latest: Option<(u32, i64)>, passed: Span, terms_q16: i64) {
-        self.see(latest);
+    pub(crate) fn book(&mut self, window: &Window, passed: Span, terms_q16: i64, derived: &Derived) {
+        self.see(window.latest());
+        if window.has_left_opening(derived) {
+            self.opening = None;
+        }
         self.driven.join(passed);
         self.restored_q16 = self.restored_q16.saturating_add(terms_q16.saturating_sub(self.opened_terms_q16));
     }
@@ -182,14 +185,14 @@ impl Run {
             let (counts, rest) = math::whole_and_rest(after.edge.anchor_q16);
             let level = rest + after.edge.level_at_instant(baseline.rate());
             baseline.restart(counts, level, after.readout_var);
-            self.ledger.walk_var += after.walk_var;
-            self.ledger.pedestal_lever += after.hinted;
+            self.ledger.walk_var.add(after.walk_var, LEVEL_VARIANCE_MAX);
+            self.ledger.pedestal_lever.add(after.hinted, LEVEL_VARIANCE_MAX);
             self.begin_on(baseline);
             if after.edge.slope.is_some() {
                 return Bridged::Interpolated;
             }
             // A single sample is baseline and end in one.
-            self.ledger.dead_time_var += derived.readout_var;
+            self.ledger.dead_time_var.add(derived.readout_var, LEVEL_VARIANCE_MAX);
             return Bridged::Guessed;
         };
         let dead_s = math::seconds(crossing.dead, derived.tick_s);
@@ -218,7 +221,7 @@ impl Run {
             movement_q16: movement_q16(self.last_q16, baseline).saturating_add(self.ledger.total_q16()),
             readout: (shown.sample_var * own * own + start_var - of_start).max(QUANTISATION_VAR)
                 + 2.0 * derived.linearity_var,
-            input_noise: math::not_negative(walk + self.ledger.walk_var),
+            input_noise: math::not_negative(walk + self.ledger.walk_var.value()),
             drift: drift + shown.rounding.1 * driven_s * driven_s,
             dead_time: self.dead_time_var(derived) - of_dead_time,
             leak_and_soakage: leaked + self.leaked_rounding(derived) + considered,
@@ -250,9 +253,9 @@ impl Run {
         let walk = derived.level_walk * driven_s;
         // Rounding without dither: of the level at both ends, and of the drift of the two zeros together.
         let rounding = 2.0 * shown.rounding.0 + 0.5 * shown.rounding.1 * driven_s * driven_s;
-        let input_noise = math::not_negative(walk + self.ledger.walk_var);
+        let input_noise = math::not_negative(walk + self.ledger.walk_var.value());
         let leaked = self.leaked_readout(derived);
-        let of_zeros = math::not_negative(bracket.variance(zero) + self.ledger.walk_var - input_noise - leaked);
+        let of_zeros = math::not_negative(bracket.variance(zero) + self.ledger.walk_var.value() - input_noise - leaked);
         let rest = of_zeros * shown.rate_widening + rounding;
         let readout = ((self.start_var + zero.level_variance()) * shown.widening + 2.0 * shown.rounding.0).min(rest);
         Total {
@@ -269,7 +272,9 @@ impl Run {
     fn dead_time_var(&self, derived: &Derived) -> f32 {
         let (_, pedestal_var) = derived.pedestal.unwrap_or_default();
         let bridges = 2.0 * derived.linearity_var * self.bridges as f32;
-        self.ledger.dead_time_var + pedestal_var * self.ledger.pedestal_lever * self.ledger.pedestal_lever + bridges
+        self.ledger.dead_time_var.value()
+            + pedestal_var * self.ledger.pedestal_lever.value() * self.ledger.pedestal_lever.value()
+            + bridges
     }
 
     /// Variance that readout noise has put into what leaked during the run, as a walk of the baseline.
@@ -289,7 +294,7 @@ impl Run {
             level_q16: settled.level_q16.saturating_add(to_q16(pedestal)).saturating_add(self.opened_terms_q16),
             own_var: settled.var + derived.ktc_var,
             shared_var: pedestal_var,
-            lever: self.ledger.pedestal_lever,
+            lever: self.ledger.pedestal_lever.value(),
         })
     }
 

@@ -41,6 +41,11 @@ impl Window {
         (self.seen > 0).then(|| (self.sample(0).0, self.latest_q16))
     }
 
+    /// Whether the samples with which the segment began have gone.
+    pub(crate) fn has_left_opening(&self, derived: &Derived) -> bool {
+        self.seen >= 2 * derived.edge_samples
+    }
+
     /// Whether the segment has filled a window.
     pub(crate) fn is_full(&self, derived: &Derived) -> bool {
         self.seen >= derived.edge_samples
@@ -134,7 +139,9 @@ impl Opening {
 fn gather(samples: impl Iterator<Item = (u32, i32)>) -> Vec<Dot, EDGE_SAMPLES_MAX> {
     let mut dots = Vec::new();
     for (ticks, y) in samples {
-        let _ = dots.push(Dot { x: i32::try_from(ticks).unwrap_or(i32::MAX), y });
+        // Farther ones have ticks that come round again.
+        let Ok(x) = i32::try_from(ticks) else { break };
+        let _ = dots.push(Dot { x, y });
     }
     dots
 }

@@ -20,6 +20,7 @@ use crate::setup::Setup;
 use crate::verify::Verification;
 use crate::window::Window;
 use crate::zeroing::{Stop, Zeroing, advance, square_distance, squares};
+use switching::settle;
 
 /// One integrator channel: the state beside a [`Setup`].
 ///
@@ -107,9 +108,9 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         let Stage::Stopped { at_stop, plain_var, considered, .. } = run.stage else {
             let mut baseline = self.zeroing.trend;
             let mut considered = self.zeroing.considered;
-            self.settle(&mut run, &mut baseline);
+            settle(&mut run, &mut baseline, &self.window, self.zeroing.sample_var(), derived);
             if matches!(run.stage, Stage::Integrating) {
-                run.book(self.window.latest(), self.zeroing.pending, self.level.terms().sum_q16());
+                run.book(&self.window, self.zeroing.pending, self.level.terms().sum_q16(), derived);
                 considered.advance(self.zeroing.pending.ticks, derived);
                 considered.follow(self.level.terms(), derived);
             }

@@ -2,6 +2,8 @@
 
 use super::{Channel, stop};
 use crate::clock::Span;
+use crate::estimate::Trend;
+use crate::health::Health;
 use crate::ledger::Bridged;
 use crate::math;
 use crate::notice::{Event, Reason, Reasons};
@@ -9,7 +11,9 @@ use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::run::{Crossing, Run, Stage};
 use crate::sample::Mode;
+use crate::setup::Derived;
 use crate::verify::Settled;
+use crate::window::Window;
 use crate::zeroing::{advance, squares};
 
 impl<Q: Integral> Channel<'_, Q> {
@@ -62,7 +66,7 @@ impl<Q: Integral> Channel<'_, Q> {
         let derived = self.setup.derived();
         self.settle_for_good(tick, notices);
         if let Some(run) = self.run.as_mut() {
-            run.book(self.window.latest(), self.zeroing.pending, self.level.terms().sum_q16());
+            run.book(&self.window, self.zeroing.pending, self.level.terms().sum_q16(), derived);
         }
         self.zeroing.catch_up(self.level.terms(), derived);
         if let Some(run) = self.run.as_mut().filter(|_| to != Mode::Zero) {
@@ -177,43 +181,47 @@ impl<Q: Integral> Channel<'_, Q> {
         self.health.last().map_or(0, |counts| self.setup.derived().linear_q16(counts))
     }
 
-    /// Closes an open crossing of `run` with the samples at hand; `None` if there is none, or no sample yet. The second
-    /// value tells whether the reset had arrived.
-    pub(super) fn settle(&self, run: &mut Run, baseline: &mut crate::estimate::Trend) -> Option<(Bridged, bool)> {
-        let derived = self.setup.derived();
-        let crossing = run.crossing.filter(|_| matches!(run.stage, Stage::Integrating))?;
-        run.see(self.window.latest());
-        let sample_var = self.zeroing.sample_var();
-        let half_s = math::scaled(math::seconds(crossing.dead, derived.tick_s), -1);
-        let after = self.window.after(run.opened_tick, run.opened(derived).as_ref(), half_s, sample_var, derived)?;
-        let opened_q16 = after.edge.anchor_q16.saturating_sub(run.opened_terms_q16);
-        let opened_at = (opened_q16 >> 16).saturating_add(math::nearest(after.edge.level_at_instant(baseline.rate())));
-        let judged = crossing.reset && !crossing.held_last;
-        let arrived = !judged || !crate::health::Health::outside(opened_at, derived.opened_window);
-        let bridged = run.settle(&after, baseline, derived);
-        if bridged == Bridged::Guessed {
-            run.reasons.insert(Reason::DeadTime);
-        }
-        if run.ledger.is_full() {
-            run.reasons.insert(Reason::OutOfRange);
-        }
-        Some((bridged, arrived))
-    }
-
-    /// The same, for good: with notices of what is wrong with it.
+    /// Closes the open crossing, if the level after it has been seen, with notices of what is wrong with it.
     #[inline(never)]
     pub(super) fn settle_for_good(&mut self, tick: u32, notices: &mut Notices) {
-        let Some(mut run) = self.run else { return };
-        let mut baseline = self.zeroing.trend;
+        let derived = self.setup.derived();
+        let sample_var = self.zeroing.sample_var();
+        let Some(run) = self.run.as_mut() else { return };
         let known = run.reasons;
-        let Some((bridged, arrived)) = self.settle(&mut run, &mut baseline) else { return };
-        if bridged == Bridged::Guessed && !known.contains(Reason::DeadTime) {
-            notices.push(tick, Event::Fault(Reason::DeadTime));
+        let Some(arrived) = settle(run, &mut self.zeroing.trend, &self.window, sample_var, derived) else { return };
+        for reason in [Reason::DeadTime, Reason::OutOfRange] {
+            if run.reasons.contains(reason) && !known.contains(reason) {
+                notices.push(tick, Event::Fault(reason));
+            }
         }
-        self.zeroing.trend = baseline;
-        self.run = Some(run);
         if !arrived {
             self.reset_failed(Reason::ResetNotArrived, tick, notices);
         }
     }
+}
+
+/// Closes an open crossing of `run` with the samples of the segment after it, each of variance `sample_var`. Gives
+/// whether a reset had arrived; `None` if there is no crossing, or no sample yet.
+pub(super) fn settle(
+    run: &mut Run,
+    baseline: &mut Trend,
+    window: &Window,
+    sample_var: f32,
+    derived: &Derived,
+) -> Option<bool> {
+    let crossing = run.crossing.as_ref().filter(|_| matches!(run.stage, Stage::Integrating))?;
+    let judged = crossing.reset && !crossing.held_last;
+    let half_s = math::scaled(math::seconds(crossing.dead, derived.tick_s), -1);
+    let after = window.after(run.opened_tick, run.opened(derived).as_ref(), half_s, sample_var, derived)?;
+    let opened_q16 = after.edge.anchor_q16.saturating_sub(run.opened_terms_q16);
+    let opened_at = (opened_q16 >> 16).saturating_add(math::nearest(after.edge.level_at_instant(baseline.rate())));
+    let arrived = !judged || !Health::outside(opened_at, derived.opened_window);
+    run.see(window.latest());
+    if run.settle(&after, baseline, derived) == Bridged::Guessed {
+        run.reasons.insert(Reason::DeadTime);
+    }
+    if run.ledger.is_full() {
+        run.reasons.insert(Reason::OutOfRange);
+    }
+    Some(arrived)
 }

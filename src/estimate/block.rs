@@ -150,12 +150,17 @@ impl Block {
     /// The mean level: whole counts and the rest.
     fn mean(&self, share: f32) -> (i64, f32) {
         let counts = self.base_q16 >> 16;
+        if self.count == 1 {
+            let rest = (self.levels & ((1 << FINE_BITS) - 1)) as i32;
+            return (counts.saturating_add(self.levels >> FINE_BITS), rest as f32 * FINE);
+        }
         let per_sample = FINE * share;
         let rest = math::float(self.levels) * per_sample;
-        if math::abs(rest) < 1024.0 {
+        if math::abs(rest) < 8.0 {
             return (counts, rest);
         }
-        // Far from the base `f32` would round the mean: whole counts are taken from the sum first.
+        // Far from the base `f32` would round the mean, and the level that is learned from it: whole counts are taken
+        // from the sum first.
         let whole = math::nearest(rest);
         let left = self.levels - (whole << FINE_BITS) * i64::from(self.count);
         (counts.saturating_add(whole), math::float(left) * per_sample)

@@ -18,6 +18,7 @@ mod octave;
 mod onset;
 mod running;
 mod shared;
+mod sum;
 #[cfg(test)]
 mod textbook;
 mod trend;
@@ -34,5 +35,6 @@ pub use noise_fit::{Figure, NoiseFigures};
 pub use octave::{Octave, Octaves};
 pub(crate) use onset::{Cusum, DEVIATION, cusum_threshold};
 pub(crate) use shared::{Taken, Weights};
+pub(crate) use sum::Sum;
 pub(crate) use trend::LEVEL_VARIANCE_MAX;
 pub use trend::{Innovation, Trend, Walk};

@@ -1,6 +1,7 @@
 //! Level and drift by recursive least squares.
 
 use super::bracket::Bracket;
+use super::sum::Sum;
 use crate::math;
 
 /// How far level and rate may have walked over a step: the process noise, as variances.
@@ -68,6 +69,12 @@ const RATE_MAX: f32 = 1e10;
 pub(crate) const LEVEL_VARIANCE_MAX: f32 = 1e30;
 const RATE_VARIANCE_MAX: f32 = 1e20;
 
+/// The least share of the rate's variance that a sample takes off, and of its own variance that is left to the level: a
+/// rate that has been constant for 2^18 samples is taken to be so no longer. `f32` could not add up what more samples
+/// than that tell each.
+const LEAST_RATE_SHARE: f32 = 1.0 / 262_144.0;
+const LEAST_LEVEL_SHARE: f32 = 1.0 / 16_384.0;
+
 /// A level in counts and its rate in counts per second, with their covariance.
 ///
 /// The level is an integer anchor plus a small `f32` residual, so that a 24-bit level loses nothing, nor a baseline
@@ -81,7 +88,8 @@ const RATE_VARIANCE_MAX: f32 = 1e20;
 pub struct Trend {
     anchor: i64,
     level: f32,
-    rate: f32,
+    /// A rate that is known well moves by less than its last bit in each sample.
+    rate: Sum,
     /// Variance of the level given the rate.
     level_given_rate: f32,
     /// Change of the level's estimate per change of the rate's, s.
@@ -93,7 +101,14 @@ impl Trend {
     /// Starts at a level known with `level_variance` (counts^2, above 0) and a rate known with `rate_variance`
     /// ((counts/s)^2; 0 holds the rate for good unless it walks).
     pub const fn new(counts: i64, level_variance: f32, rate: f32, rate_variance: f32) -> Self {
-        Self { anchor: counts, level: 0.0, rate, level_given_rate: level_variance, coupling: 0.0, rate_variance }
+        Self {
+            anchor: counts,
+            level: 0.0,
+            rate: Sum::new(rate),
+            level_given_rate: level_variance,
+            coupling: 0.0,
+            rate_variance,
+        }
     }
 
     /// Forgets the level, keeps the rate and its variance: after a reset, or when the input was connected.
@@ -120,7 +135,7 @@ impl Trend {
     }
 
     fn pass(&mut self, dt_s: f32, walk: Walk) {
-        self.level += self.rate * dt_s;
+        self.level += self.rate() * dt_s;
         self.recentre();
         let coupling = self.coupling + dt_s;
         if walk.rate <= 0.0 {
@@ -146,7 +161,7 @@ impl Trend {
     /// Moves level and rate by what is known to have happened; the covariance stays.
     pub fn shift(&mut self, level: f32, rate: f32) {
         self.level += level;
-        self.rate = math::within(self.rate + rate, RATE_MAX);
+        self.rate.add(rate, RATE_MAX);
         self.recentre();
     }
 
@@ -250,14 +265,15 @@ impl Trend {
             self.level += level_gain * residual;
             self.recentre();
         }
-        self.rate = math::within(self.rate + rate_gain * residual, RATE_MAX);
-        self.level_given_rate *= kept;
+        self.rate.add(rate_gain * residual, RATE_MAX);
+        self.level_given_rate = math::greater(self.level_given_rate * kept, variance * LEAST_LEVEL_SHARE);
         self.coupling *= kept;
-        if self.rate_variance > 0.0 {
-            // What rounding leaves of the rate, whatever the number of samples: one millionth.
-            let rounding = 1e-6 * self.rate;
+        let share = from_rate * precision;
+        if share > 0.5 {
             self.rate_variance *= given_rate * precision;
-            self.doubt_rate_beside(constant, rounding * rounding);
+        } else if share > LEAST_RATE_SHARE {
+            // Of a small share a factor near 1 would keep but a few bits.
+            self.rate_variance -= self.rate_variance * share;
         }
         (Innovation { residual, precision, level_gain, rate_gain }, taken)
     }
@@ -274,7 +290,7 @@ impl Trend {
 
     /// The rate, counts/s.
     pub const fn rate(&self) -> f32 {
-        self.rate
+        self.rate.value()
     }
 
     /// Variance of the level if the rate were known, counts^2.

@@ -31,7 +31,7 @@ pub(crate) enum WarmthLaw {
 pub(crate) struct Derived {
     /// Whether nothing leaks or soaks.
     pub(crate) keeps_level: bool,
-    /// Coarse ticks, in which steps are squared: 2^12 to 2^13 in the leak's time constant, or the counter's own; `None`
+    /// Coarse ticks, in which steps are squared: 2^17 to 2^18 in the leak's time constant, or the counter's own; `None`
     /// without a leak.
     pub(crate) coarse_shift: Option<u8>,
     /// Bits of a fraction of a count with which samples are kept: as many as 32 bits have to spare for the converter's

@@ -237,12 +237,12 @@ const fn soakage(circuit: &Circuit, tick_hz: f64) -> Result<Option<SoakageLaw>, 
     }
 }
 
-/// How far the counter's ticks are coarsened for squares: to between 2^12 and 2^13 in a time constant of the leak. Of
-/// shorter steps the noise that leaks is less than a thousandth of a sample's; and the longest fill a sum after 2^30.
+/// How far the counter's ticks are coarsened for squares: to between 2^17 and 2^18 in a time constant of the leak. Of
+/// shorter steps the noise that leaks is less than a thousandth of a sample's; and the longest fill a sum after 2^20.
 const fn coarse_shift(leak_per_tick: f64) -> u8 {
     let ticks = if leak_per_tick > 0.0 { (1.0 / leak_per_tick) as u64 } else { 0 };
     let bits = 64 - ticks.leading_zeros();
-    if bits > 13 { (bits - 13) as u8 } else { 0 }
+    if bits > 18 { (bits - 18) as u8 } else { 0 }
 }
 
 /// Spare bits above the converter's span and a sign.

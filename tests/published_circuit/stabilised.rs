@@ -53,7 +53,7 @@ fn input_is_read_right_although_the_output_carries_two_hundred_and_one_offsets()
         close("V", bench.shown_v(100), exact_v - DC_GAIN * INPUT_V, 5e-6);
         bench.play(Mode::Zero, steps(2.0), drive(offset_v, 0.0));
         let reading = bench.reading();
-        eprintln!("{offset_v} {reading:?}");
+        assert_eq!(reading.trust, Trust::Good, "{:?}", bench.events);
         for estimate in [Some(&reading.at_stop), reading.closed.as_ref()] {
             let integral = estimate.expect("closed").integral;
             let (value, u) = (integral.value.as_volt_seconds(), integral.u.as_volt_seconds());
