@@ -75,15 +75,15 @@ impl Health {
         };
         let guard = guard.clamp(0, 1 << 30) as i32;
         let (low, high) = (derived.usable.0 + guard, derived.usable.1 - guard);
-        // In a gap, or where every code is within reach of a rail, nothing is calm: of no length, no step is.
+        // In a gap, or where every code is within reach of a rail, nothing is calm: no reading came less than 0 times.
         let calm = shortest <= longest && low <= high;
         self.calm = Calm {
-            shortest: if calm { shortest } else { u32::MAX },
-            play: if calm { longest - shortest } else { 0 },
+            shortest,
+            play: longest.saturating_sub(shortest),
             low,
             width: high.wrapping_sub(low).cast_unsigned(),
             reach: Self::reach(shortest, derived).min(1 << 30) as u32,
-            repeats: derived.frozen_samples.wrapping_sub(1),
+            repeats: if calm { derived.frozen_samples.wrapping_sub(1) } else { 0 },
         };
     }
 

@@ -5,6 +5,8 @@
 mod reference;
 mod script;
 
+#[path = "circuit_figures/between_codes.rs"]
+mod between_codes;
 #[path = "circuit_figures/converting.rs"]
 mod converting;
 #[path = "circuit_figures/decay.rs"]

@@ -147,3 +147,38 @@ fn a_baseline_may_drift_past_32_bits() {
     assert!((value - truth).abs() < 3.0 * u && u < 1e-3 * truth.abs(), "{value:e} {truth:e} {u:e}");
     assert!(!reading.reasons.contains(Reason::Gap));
 }
+
+/// A step back by one tick is 2^32 - 1 ticks to a counter that wraps, and time that nobody saw to a channel: after a gap,
+/// and on a board where the worst input reaches a rail from every code within one sample.
+#[test]
+fn a_counter_that_steps_back_by_one_tick_is_stalled_where_nothing_is_calm() {
+    let circuit = brimline::Circuit { rail_low_v: -2.4, rail_high_v: 2.4, ..CIRCUIT };
+    let converter = Converter {
+        code_zero_v: -2.5,
+        lsb_v: 5.0 / 65536.0,
+        code_min: 0,
+        code_max: 65535,
+        tick_hz: 1000.0,
+        ..Converter::DEFAULT
+    };
+    for (worst_input, gap) in [(Some(2.9e-5), 0), (None, 2000)] {
+        let setup: Setup<Charge> =
+            Setup::new(circuit, converter, NOISE, brimline::Policy { worst_input, ..brimline::Policy::DEFAULT });
+        let mut channel = Channel::new(&setup);
+        let mut tick = 0_u32;
+        let mut feed = |mode, step| {
+            tick = tick.wrapping_add(step);
+            channel.feed(Sample { tick, counts: 32_768 + (tick % 3) as i32, mode, temperature: None });
+        };
+        for mode in [Mode::Zero, Mode::Integrate] {
+            (0..50).for_each(|_| feed(mode, 10));
+        }
+        if gap > 0 {
+            feed(Mode::Integrate, gap);
+        }
+        feed(Mode::Integrate, u32::MAX);
+        let reading = channel.reading().expect("a run");
+        assert!(reading.reasons.contains(Reason::ClockStalled), "{reading:?}");
+        assert_eq!(reading.elapsed_s, 0.5 + f64::from(gap) / 1000.0);
+    }
+}

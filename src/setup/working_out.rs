@@ -35,6 +35,7 @@ impl Derived {
         );
         let flicker = noise.input_flicker * per_input;
         check!(flicker <= 1e6, "input_flicker", "small enough to change the drift by at most 1e6 counts/s");
+        let reset_code = converter.code(circuit.reset_level_v);
         let mut rate_limit = circuit.drift_limit_v_per_s() / converter.lsb_v;
         let mut leak = None;
         let (mut leak_per_tick, mut leaking_limit) = (0.0, 0.0);
@@ -46,7 +47,10 @@ impl Derived {
             leak_per_tick = 1.0 / (time_constant_s * converter.tick_hz);
             // What leaks at the reset level, by the offsets of amplifier and converter, is drift as well.
             let leaking_v = circuit.offset_limit_v + 2.0 * converter.code_zero_u_v;
-            leaking_limit = leaking_v / time_constant_s / converter.lsb_v;
+            // So does the part of a code by which the reset level lies beside the nearest: levels above it are whole.
+            let beside = reset_code - floor(reset_code) as f64;
+            let beside = if beside < 0.5 { beside } else { 1.0 - beside };
+            leaking_limit = (leaking_v / converter.lsb_v + beside) / time_constant_s;
             rate_limit += leaking_limit;
         }
         let coarse_shift = coarse_shift(leak_per_tick);
@@ -89,7 +93,6 @@ impl Derived {
             Some(volts) => volts / converter.lsb_v,
             None => 0.01 * span,
         };
-        let reset_code = converter.code(circuit.reset_level_v);
         check!(
             reset_code >= usable.0 as f64 && reset_code <= usable.1 as f64,
             "reset_level_v",
