@@ -84,15 +84,15 @@ pub struct Reading<Q> {
     pub restored: Q,
     /// What the drift would have added to the value at stop, and was taken off.
     pub drift_removed: Q,
-    /// Samples of the zero after the run that were too far off and left out.
+    /// Samples of the zero after the run that were too far off and left out; stands at 65,535 if there were more.
     pub spikes: u16,
-    /// Resets within the run.
+    /// Resets within the run; stands at 2^32 - 1 if there were more.
     pub resets: u32,
     /// Counter value when the run started.
     pub start_tick: u32,
     /// Counter value of the run's last integrating sample so far.
     pub end_tick: u32,
-    /// From start to the last integrating sample, resets and holds included, s.
+    /// From start to the last integrating sample, resets and holds included, s. Exact to 2^53 ticks, 285 years at 1 MHz.
     pub elapsed_s: f64,
     /// Of that the time in holds, s.
     pub held_s: f64,

@@ -28,8 +28,9 @@ use switching::settle;
 /// each mode at least one, in `Integrate` a few. [`reading`](Self::reading) may be asked for at any time; a run's
 /// reading is final when the zero after it ends, so take it before the first sample of the next run.
 ///
-/// Between two samples at most 2^31 - 1 ticks may pass. A run's movement, what leaked in it included, may come to 2^46
-/// counts; past that the run has the reason `OutOfRange`.
+/// Between two samples at most 2^31 - 1 ticks may pass. A run's movement, what leaked in it included, and what it has
+/// carried over resets may come to 2^46 counts; past that the run has the reason `OutOfRange`. Times are counted to 2^64
+/// ticks. Where no wander of the drift is stated, a zero holds it for constant over 2^18 samples or blocks at most.
 // In this order, what every sample needs comes first: a Cortex-M0 reaches the first 124 bytes in one instruction.
 #[repr(C)]
 #[derive(Clone, Debug)]

@@ -10,7 +10,8 @@ pub(crate) const EDGE_SAMPLES_MAX: usize = 16;
 #[cfg_attr(feature = "defmt", derive(defmt::Format))]
 pub struct Policy {
     /// Time over which samples of a zero are averaged before the filter sees them, s: 0 (not at all) to 60. Whole mains
-    /// periods keep hum out; 0.1 s holds whole periods of 50 and 60 Hz.
+    /// periods keep hum out; 0.1 s holds whole periods of 50 and 60 Hz. A block ends after 65,535
+    /// samples at the latest.
     pub zero_block_s: f64,
     /// Mean time between false alarms of the watch for input during a zero, s: 1 to 1e12.
     pub false_alarm_s: f64,
