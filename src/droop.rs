@@ -2,7 +2,7 @@
 
 use crate::clock::Span;
 use crate::estimate::{Block, Trend};
-use crate::level::{Seen, Terms};
+use crate::level::Terms;
 use crate::math;
 use crate::setup::Derived;
 use crate::zeroing::{advance, squares};
@@ -56,14 +56,14 @@ impl Droop {
         self.level_known = false;
     }
 
-    /// A sample in a hold.
-    pub(crate) fn take(&mut self, seen: &Seen, derived: &Derived) {
-        self.pending.add(seen.ticks, derived.coarse_shift);
+    /// A sample in a hold: its level, 2^-16 counts, `ticks` after the one before, and leak and soakage now.
+    pub(crate) fn take(&mut self, level_q16: i64, ticks: u32, terms: Terms, derived: &Derived) {
+        self.pending.add(ticks, derived.coarse_shift);
         if self.block.is_empty() {
-            self.block.start(seen.level_q16 >> 16);
+            self.block.start(level_q16 >> 16);
         }
-        let above = self.block.above(seen.level_q16);
-        if !self.block.push(above, above, seen.ticks, derived.block_ticks) {
+        let above = self.block.above(level_q16);
+        if !self.block.push(above, above, ticks, derived.block_ticks) {
             return;
         }
         let Some(mean) = self.block.take() else { return };
@@ -74,11 +74,11 @@ impl Droop {
             self.trend.update(mean.counts, mean.rest, derived.serial_var(variance));
             self.known_ticks = self.known_ticks.saturating_add(span.ticks);
             self.held = self.held.saturating_add(span.ticks);
-            self.doubts = seen.terms.doubts_since(self.start, derived);
+            self.doubts = terms.doubts_since(self.start, derived);
         } else {
             self.trend.restart(mean.counts, mean.rest, variance);
             self.level_known = true;
-            (self.start, self.held) = (seen.terms, 0);
+            (self.start, self.held) = (terms, 0);
         }
     }
 

@@ -4,7 +4,6 @@ use super::Channel;
 use super::steady::is_out_of_range;
 use crate::clock::Elapsed;
 use crate::health::Health;
-use crate::level::Seen;
 use crate::notice::{Event, Reason};
 use crate::notices::Notices;
 use crate::quantity::Integral;
@@ -62,10 +61,7 @@ impl<Q: Integral> Channel<'_, Q> {
         let at_rail = Health::at_rail(sample.counts, derived);
         let told = matches!(sample.mode, Mode::Zero | Mode::Integrate);
         match sample.mode {
-            Mode::Zero => {
-                let taken = self.zero(sample, ticks);
-                self.tell_zero(taken, sample, notices);
-            }
+            Mode::Zero => self.zero_closely(sample, ticks, at_rail, notices),
             Mode::Integrate => self.integrate(sample, ticks, notices),
             Mode::Hold => self.hold(sample, ticks),
             Mode::Reset => self.reset(sample, ticks, notices),
@@ -77,6 +73,14 @@ impl<Q: Integral> Channel<'_, Q> {
         // At an end code readings rightly stand still.
         if self.health.frozen(derived) && !at_rail && sample.mode != Mode::Reset {
             self.fault(Reason::Frozen, sample.tick, notices);
+        }
+    }
+
+    #[inline(never)]
+    fn zero_closely(&mut self, sample: &Sample, ticks: u32, at_rail: bool, notices: &mut Notices) {
+        let taken = self.zero(sample, ticks, at_rail);
+        if !at_rail {
+            self.tell_zero(taken, sample, notices);
         }
     }
 
@@ -124,8 +128,7 @@ impl<Q: Integral> Channel<'_, Q> {
         if Health::at_rail(sample.counts, derived) {
             self.droop.forget_level();
         } else {
-            let seen = Seen { tick: sample.tick, ticks, level_q16, terms: self.level.terms() };
-            self.droop.take(&seen, derived);
+            self.droop.take(level_q16, ticks, self.level.terms(), derived);
         }
         self.interrupted(ticks, |crossing, ticks| {
             crossing.held = crossing.held.saturating_add(ticks);

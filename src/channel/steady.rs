@@ -2,8 +2,6 @@
 //! be said of them.
 
 use super::{Channel, stop};
-use crate::health::Health;
-use crate::level::{Seen, Terms};
 use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::sample::{Mode, Sample, Step};
@@ -74,47 +72,32 @@ impl<Q: Integral> Channel<'_, Q> {
         self.window.push(sample.tick, level_q16, derived);
     }
 
-    /// Takes a sample of a zero.
-    #[inline(never)]
-    pub(super) fn zero(&mut self, sample: &Sample, ticks: u32) -> Taken {
+    /// Takes a sample of a zero. A level that leaks or soaks forgets one that is left out.
+    #[inline(always)]
+    pub(super) fn zero(&mut self, sample: &Sample, ticks: u32, at_rail: bool) -> Taken {
         let derived = self.setup.derived();
-        let at_rail = Health::at_rail(sample.counts, derived);
-        let taken = if derived.keeps_level {
-            let level_q16 = derived.linear_q16(sample.counts);
-            let seen = Seen { tick: sample.tick, ticks, level_q16, terms: Terms::default() };
-            self.judge_zero(at_rail, &seen)
+        let (mut level_q16, mut before) = (derived.linear_q16(sample.counts), None);
+        if !derived.keeps_level {
+            before = Some(self.level);
+            level_q16 = self.level.take(sample, ticks, derived);
+        }
+        let taken = if at_rail {
+            self.zeroing.skip(ticks, derived);
+            Taken::Spike
         } else {
-            self.zero_that_leaks(at_rail, sample, ticks)
+            let around = || (stop(&self.run), self.level.terms());
+            self.zeroing.take(sample.tick, ticks, level_q16, around, derived)
         };
-        if at_rail { Taken::Used } else { taken }
-    }
-
-    /// The level forgets a sample that is left out.
-    #[inline(never)]
-    fn zero_that_leaks(&mut self, at_rail: bool, sample: &Sample, ticks: u32) -> Taken {
-        let before = self.level;
-        let level_q16 = self.level.take(sample, ticks, self.setup.derived());
-        let seen = Seen { tick: sample.tick, ticks, level_q16, terms: self.level.terms() };
-        let taken = self.judge_zero(at_rail, &seen);
-        if matches!(taken, Taken::Spike) {
+        if let (Taken::Spike, Some(before)) = (&taken, before) {
             self.level = before.without(ticks);
         }
         taken
     }
 
-    fn judge_zero(&mut self, at_rail: bool, seen: &Seen) -> Taken {
-        let derived = self.setup.derived();
-        if at_rail {
-            self.zeroing.skip(seen.ticks, derived);
-            return Taken::Spike;
-        }
-        self.zeroing.take(seen, stop(&self.run), derived)
-    }
-
     /// The same where nothing else can be said of the sample.
     #[inline(never)]
     pub(super) fn go_on_in_zero(&mut self, sample: &Sample, ticks: u32) -> Step {
-        match self.zero(sample, ticks) {
+        match self.zero(sample, ticks, false) {
             Taken::Used => Step::default(),
             taken => {
                 let mut notices = Notices::between(sample.tick, sample.tick);

@@ -37,17 +37,6 @@ impl Terms {
     }
 }
 
-/// A sample as the estimator sees it.
-#[derive(Clone, Copy, Debug)]
-pub(crate) struct Seen {
-    pub(crate) tick: u32,
-    /// Since the sample before.
-    pub(crate) ticks: u32,
-    /// The effective level, 2^-16 counts, and what leak and soakage are of it.
-    pub(crate) level_q16: i64,
-    pub(crate) terms: Terms,
-}
-
 /// The effective level `level + leaked + soaked`. With the switch open only input, drift and noise move it.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Level {

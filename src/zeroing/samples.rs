@@ -5,7 +5,7 @@ use super::{Checkpoint, RateChange, Stop, Taken, Zeroing, advance};
 use crate::clock::Span;
 use crate::estimate::{BlockMean, Bracket, DEVIATION, Innovation};
 use crate::ledger::{to_q16, whole_q16};
-use crate::level::{Seen, Terms};
+use crate::level::Terms;
 use crate::math;
 use crate::setup::{Derived, WarmthLaw};
 
@@ -29,22 +29,29 @@ impl Zeroing {
         self.block.skip(ticks);
     }
 
-    /// A sample in a zero.
-    pub(crate) fn take(&mut self, seen: &Seen, stop: Option<&Stop>, derived: &Derived) -> Taken {
-        let ticks = seen.ticks;
+    /// A sample in a zero: `level_q16` (2^-16 counts) at `tick`, `ticks` after the one before. `around` tells how the run
+    /// before stopped, and leak and soakage now; only the end of a block asks.
+    pub(crate) fn take<'r>(
+        &mut self,
+        tick: u32,
+        ticks: u32,
+        level_q16: i64,
+        around: impl FnOnce() -> (Option<&'r Stop>, Terms),
+        derived: &Derived,
+    ) -> Taken {
         if self.disturbed {
             self.skip(ticks, derived);
             return Taken::Used;
         }
         if self.block.is_empty() {
             // Deviations are small where the filter expects the level.
-            let base = if self.level_known { self.trend.anchor() } else { seen.level_q16 >> 16 };
+            let base = if self.level_known { self.trend.anchor() } else { level_q16 >> 16 };
             self.block.start(base);
         }
-        let above = self.block.above(seen.level_q16);
+        let above = self.block.above(level_q16);
         let ticks_ahead = self.pending_ticks().saturating_add(ticks);
         let off = self.gate.off(above, ticks_ahead);
-        match self.judge(seen.tick, off, ticks_ahead, derived) {
+        match self.judge(tick, off, ticks_ahead, derived) {
             Verdict::Noise => {}
             Verdict::Spike => {
                 self.skip(ticks, derived);
@@ -52,7 +59,7 @@ impl Zeroing {
             }
             Verdict::Onset(since) => {
                 let ticks_known = self.known_ticks.saturating_add(self.pending.ticks).saturating_add(u64::from(ticks));
-                let change = self.turn(seen.level_q16, self.noise.sample_var(), ticks_known, derived);
+                let change = self.turn(level_q16, self.noise.sample_var(), ticks_known, derived);
                 self.skip(ticks, derived);
                 self.roll_back();
                 let contradicts_run = self.known_innovations < EARLY_INNOVATIONS;
@@ -61,7 +68,8 @@ impl Zeroing {
         }
         self.pending.add(ticks, derived.coarse_shift);
         if self.block.push(above, off, ticks, derived.block_ticks) {
-            return self.finish_block(seen.tick, seen.terms, stop, derived);
+            let (stop, terms) = around();
+            return self.finish_block(tick, terms, stop, derived);
         }
         Taken::Used
     }
@@ -121,6 +129,7 @@ impl Zeroing {
         self.gate.aim(self.trend.residual(), self.trend.rate() * derived.tick_s, ticks);
     }
 
+    #[inline(never)]
     fn finish_block(&mut self, tick: u32, terms: Terms, stop: Option<&Stop>, derived: &Derived) -> Taken {
         let Some(mean) = self.block.take() else { return Taken::Used };
         if !self.level_known && self.noise.is_torn(&mean) {
