@@ -25,6 +25,7 @@ mod sample;
 mod setup;
 #[cfg(feature = "embedded-hal")]
 mod switches;
+mod total;
 pub mod unit;
 mod verify;
 mod window;

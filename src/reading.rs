@@ -3,8 +3,9 @@
 use crate::math;
 use crate::notice::{Reasons, Trust};
 use crate::quantity::{Integral, Measured};
-use crate::run::{Run, Total};
+use crate::run::Run;
 use crate::setup::Setup;
+use crate::total::Total;
 
 /// What the variance of an estimate is made of, as standard uncertainties in the reading's unit.
 ///

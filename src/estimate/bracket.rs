@@ -1,6 +1,7 @@
 //! How the zero after a run tightens the finished run.
 
-use super::trend::{Trend, Walk};
+use super::trend::Trend;
+use super::walk::Walk;
 use crate::ledger::{to_q16, whole_q16};
 use crate::math;
 use crate::setup::QUANTISATION_VAR;

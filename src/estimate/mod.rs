@@ -22,6 +22,7 @@ mod sum;
 #[cfg(test)]
 mod textbook;
 mod trend;
+mod walk;
 
 pub(crate) use after::{After, Hint};
 pub(crate) use before::Before;
@@ -37,4 +38,5 @@ pub(crate) use onset::{Cusum, DEVIATION, cusum_threshold};
 pub(crate) use shared::{Taken, Weights};
 pub(crate) use sum::Sum;
 pub(crate) use trend::LEVEL_VARIANCE_MAX;
-pub use trend::{Innovation, Trend, Walk};
+pub use trend::{Innovation, Trend};
+pub use walk::Walk;

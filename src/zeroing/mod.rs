@@ -5,12 +5,14 @@ mod gate;
 mod noise;
 mod rate_change;
 mod samples;
+mod shown;
 mod warmth;
 
 pub(crate) use considered::{Considered, square_distance, squares};
 use gate::Gate;
 use noise::NoiseSeen;
 pub(crate) use rate_change::RateChange;
+pub(crate) use shown::Shown;
 use warmth::Warmth;
 
 use crate::clock::Span;
@@ -18,7 +20,7 @@ use crate::estimate::{Block, Bracket, Cusum, Trend, Walk};
 use crate::level::Terms;
 use crate::math;
 use crate::quantity::Temperature;
-use crate::setup::{Derived, QUANTISATION_VAR, WarmthLaw};
+use crate::setup::{Derived, WarmthLaw};
 
 /// How the run before stopped, for its bracket.
 #[derive(Clone, Copy, Debug)]
@@ -98,25 +100,6 @@ pub(crate) struct Zeroing {
     known_innovations: u16,
 }
 
-/// What the zeros have shown of the noise, as far as it goes into a run's variance.
-#[derive(Clone, Copy, Debug)]
-pub(crate) struct Shown {
-    /// Variance of a single sample, counts^2.
-    pub(crate) sample_var: f32,
-    /// Factors on variances that rest on the zeros' level and on their drift; at least 1.
-    pub(crate) widening: f32,
-    pub(crate) rate_widening: f32,
-    /// Added to the variance of a level and of the drift for rounding that no noise dithers, counts^2 and (counts/s)^2.
-    pub(crate) rounding: (f32, f32),
-}
-
-impl Shown {
-    /// The same as if the zeros had borne out the set-up.
-    pub(crate) fn not_widened(self) -> Self {
-        Self { widening: 1.0, rate_widening: 1.0, ..self }
-    }
-}
-
 impl Zeroing {
     pub(crate) fn new(derived: &Derived) -> Self {
         Self {
@@ -180,43 +163,6 @@ impl Zeroing {
     /// Whether a run can start on this level.
     pub(crate) fn level_known(&self) -> bool {
         self.level_known
-    }
-
-    /// Variance of single samples, as the zeros have shown it, counts^2.
-    pub(crate) fn sample_var(&self) -> f32 {
-        self.noise.sample_var()
-    }
-
-    /// What the zeros have shown of the noise.
-    pub(crate) fn shown(&self, derived: &Derived) -> Shown {
-        let level = if derived.dithered { 0.0 } else { QUANTISATION_VAR };
-        let rate = derived.rate_rounding_var(self.known_ticks());
-        Shown {
-            sample_var: self.noise.sample_var(),
-            widening: self.noise.widening(),
-            rate_widening: self.noise.rate_widening(),
-            rounding: (level, rate),
-        }
-    }
-
-    /// Whether the zeros were enough to show noise figures that are wrong.
-    pub(crate) fn noise_is_tested(&self) -> bool {
-        self.noise.is_tested()
-    }
-
-    /// Noise of single samples, stated and observed, in hundredths of a count rms, if the two are clearly different.
-    pub(crate) fn readout_centicounts(&self, derived: &Derived) -> Option<(u16, u16)> {
-        self.noise.readout_centicounts(derived)
-    }
-
-    /// Scatter of the innovations in per cent of the expected, if it is clearly another.
-    pub(crate) fn noise_percent(&self) -> Option<u16> {
-        self.noise.percent()
-    }
-
-    /// Scatter of the zeros' drifts in per cent of the expected, if it is clearly more.
-    pub(crate) fn drift_percent(&self) -> Option<u16> {
-        self.noise.rate_percent()
     }
 
     /// The zero is over; leak and soakage are `terms`. Gives how the drift has changed, if it told enough of that.
