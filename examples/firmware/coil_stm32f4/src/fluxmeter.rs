@@ -60,7 +60,7 @@ impl Fluxmeter {
             if plan.mode() != mode {
                 board.switch(plan.mode())?;
             }
-            step.notices.iter().for_each(|notice| report::notice(&mut self.out, notice));
+            step.notices.iter().for_each(|notice| report::notice(&mut self.out, &notice));
             if channel.switch_has_failed() {
                 return Err(Fault::ResetSwitch);
             }

@@ -65,7 +65,7 @@ impl Monitor {
             if next != mode {
                 board.switch(next)?;
             }
-            step.notices.iter().for_each(|notice| report::notice(out, notice));
+            step.notices.iter().for_each(|notice| report::notice(out, &notice));
             if channel.switch_has_failed() {
                 return Err(Fault::ResetSwitch);
             }
