@@ -6,6 +6,8 @@ mod script;
 
 #[path = "figures/between_modes.rs"]
 mod between_modes;
+#[path = "figures/blocks.rs"]
+mod blocks;
 #[path = "figures/edges.rs"]
 mod edges;
 #[path = "figures/noise_seen.rs"]

@@ -43,7 +43,7 @@ pub struct Channel<'s, Q> {
     clock: Clock,
     health: Health,
     window: Window,
-    /// Board temperature as last measured, and at the latest zero sample.
+    /// Board temperature as last measured in this mode, and at the latest zero sample.
     temperature: Option<Temperature>,
     zero_temperature: Option<Temperature>,
     zeroing: Zeroing,

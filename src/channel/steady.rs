@@ -35,7 +35,7 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(always)]
     pub(super) fn keep(&mut self, sample: &Sample) {
         self.health.take(sample.counts);
-        if sample.temperature.is_some() && (sample.temperature != self.temperature || self.steady.is_none()) {
+        if sample.temperature.is_some() && sample.temperature != self.temperature {
             self.take_temperature(sample);
         }
     }

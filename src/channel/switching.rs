@@ -19,6 +19,8 @@ use crate::zeroing::{advance, squares};
 impl<Q: Integral> Channel<'_, Q> {
     /// The switches moved at `tick`, the instant of the sample before.
     pub(super) fn switch(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
+        // The first in a mode counts, whether or not it has changed.
+        self.temperature = None;
         let mut settled = None;
         match self.mode {
             Some(Mode::Integrate) => self.leave_integrate(to, tick, notices),

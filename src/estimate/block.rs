@@ -6,12 +6,16 @@ use crate::math;
 const FINE_BITS: u32 = 8;
 const FINE: f32 = 1.0 / (1 << FINE_BITS) as f32;
 
+/// Farthest level above a block's base, fine steps: 2^22 counts.
+const END: i32 = 1 << 30;
+
 /// A block being filled.
 ///
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
 /// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So what tells the
 /// scatter, deviations from where samples are expected and their instants, is kept within 16 and 15 bits: what grows
-/// past that is *coarsened*, the sums so far and all that comes after. The mean is exact.
+/// past that is *coarsened* from there on, and the sums begin anew: what they lost by it would be as much as the scatter
+/// of samples far from where they were expected. The mean is exact.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
     /// Where levels are counted from, whole counts in 2^-16 counts.
@@ -19,7 +23,8 @@ pub(crate) struct Block {
     /// Sums over the samples: fine steps above the base, and ticks since the block began.
     levels: i64,
     ticks: u64,
-    /// Sums of squares of deviations and of instants, and of products of the two.
+    /// Of the latest samples, so many as are in the same steps: sums of squares of deviations and of instants, and of
+    /// products of the two.
     squares: u64,
     instant_squares: u64,
     products: i64,
@@ -29,6 +34,7 @@ pub(crate) struct Block {
     /// Ticks since the block began.
     span: u32,
     count: u16,
+    alike: u16,
     /// Deviations are in `2^coarse` fine steps, instants in `2^coarse_time` ticks.
     coarse: u8,
     coarse_time: u8,
@@ -45,6 +51,8 @@ pub(crate) struct BlockMean {
     pub(crate) samples: u16,
     /// One over `samples`.
     pub(crate) share: f32,
+    /// Of how many samples, the latest, the scatter is told.
+    pub(crate) alike: u16,
     /// Sum of the squared deviations from a straight line, counts^2, and the square of the step that these were rounded to.
     pub(crate) scatter: f32,
     pub(crate) step_squared: f32,
@@ -67,12 +75,16 @@ impl Block {
     pub(crate) fn above(&self, level_q16: i64) -> i32 {
         // Levels are far from the ends of 64 bits, the more so differences of levels in one zero.
         let above = level_q16.wrapping_sub(self.base_q16).wrapping_add(1 << (15 - FINE_BITS)) >> (16 - FINE_BITS);
-        let end = 1 << 30;
         match i32::try_from(above) {
-            Ok(above) if (-end..=end).contains(&above) => above,
-            _ if above < 0 => -end,
-            _ => end,
+            Ok(above) if (-END..=END).contains(&above) => above,
+            _ if above < 0 => -END,
+            _ => END,
         }
+    }
+
+    /// Whether a level above the base is one, and not the end of what a block can take.
+    pub(crate) fn is_within(&self, above: i32) -> bool {
+        above.unsigned_abs() < END.unsigned_abs()
     }
 
     /// Time passes without a usable sample.
@@ -94,6 +106,7 @@ impl Block {
         self.instant_squares += u64::from(instant * instant);
         self.products += i64::from(deviation * instant.cast_signed());
         self.count = self.count.saturating_add(1);
+        self.alike += 1;
         self.span.saturating_add(ticks >> 1) >= length || self.count == u16::MAX
     }
 
@@ -113,17 +126,18 @@ impl Block {
     #[cold]
     fn coarsen(&mut self) {
         self.coarse += 1;
-        self.deviations >>= 1;
-        self.products >>= 1;
-        self.squares >>= 2;
+        self.begin_sums();
     }
 
     #[cold]
     fn coarsen_time(&mut self) {
         self.coarse_time += 1;
-        self.instants >>= 1;
-        self.products >>= 1;
-        self.instant_squares >>= 2;
+        self.begin_sums();
+    }
+
+    fn begin_sums(&mut self) {
+        (self.squares, self.instant_squares, self.products) = (0, 0, 0);
+        (self.deviations, self.instants, self.alike) = (0, 0, 0);
     }
 
     /// Empties the block; `None` if no sample is in it.
@@ -138,13 +152,23 @@ impl Block {
         let share = if count == 1 { 1.0 } else { 1.0 / f32::from(count) };
         let (counts, rest) = block.mean(share);
         let step_squared = math::two_to(2 * (i32::from(block.coarse) - FINE_BITS.cast_signed()));
-        let one =
-            BlockMean { counts, rest, age: 0, samples: count, share, scatter: 0.0, step_squared, span: block.span };
+        let one = BlockMean {
+            counts,
+            rest,
+            age: block.span.saturating_sub(u32::try_from(block.ticks).unwrap_or(u32::MAX)),
+            samples: count,
+            share,
+            alike: block.alike,
+            scatter: 0.0,
+            step_squared,
+            span: block.span,
+        };
         if count == 1 {
             return Some(one);
         }
         let age = block.span.saturating_sub((math::float_unsigned(block.ticks) * share) as u32);
-        Some(BlockMean { age, scatter: block.scatter() * (share * step_squared), ..one })
+        let of_alike = if block.alike == count { share } else { 1.0 / f32::from(block.alike) };
+        Some(BlockMean { age, scatter: block.scatter() * (of_alike * step_squared), ..one })
     }
 
     /// The mean level: whole counts and the rest.
@@ -169,7 +193,7 @@ impl Block {
     /// Sum of the squared deviations from a straight line, times the number of samples.
     fn scatter(&self) -> f32 {
         // Exact: each product is below 2^62.
-        let n = i64::from(self.count);
+        let n = i64::from(self.alike);
         let (deviations, instants) = (i64::from(self.deviations), i64::from(self.instants));
         let spread = n * self.instant_squares.cast_signed() - instants * instants;
         let product = math::float(n * self.products - deviations * instants);
@@ -219,8 +243,10 @@ mod tests {
 
     fn check(samples: &[(u32, i32)], tolerance: f64) {
         for base in [0, -1 << 40, 12_345_678_901] {
-            let (mean, age, scatter) = exactly(samples);
             let got = block(base, samples);
+            let (mean, age, _) = exactly(samples);
+            // The scatter is that of the samples since the steps were last made coarser.
+            let (_, _, scatter) = exactly(&samples[samples.len() - usize::from(got.alike)..]);
             let level = (got.counts - base) as f64 + f64::from(got.rest);
             assert!((level - mean).abs() < 1e-3, "{level}, not {mean}");
             assert!((f64::from(got.age) - age).abs() <= 1.0 + 1e-6 * f64::from(got.span), "{}, not {age}", got.age);
@@ -232,6 +258,16 @@ mod tests {
     fn small_deviations_are_summed_without_loss() {
         for (n, pace) in [(4, 40), (16, 100), (100, 250)] {
             check(&uneven(n, pace, 20, 100), 1e-4);
+        }
+    }
+
+    #[test]
+    fn most_samples_tell_the_scatter() {
+        for (samples, least) in
+            [(uneven(100, 1000, 20, 100), 100), (uneven(1000, 84_000, 3, 300), 200), (uneven(100, 1000, 1000, 500), 30)]
+        {
+            let told = block(0, &samples).alike;
+            assert!(told >= least, "{told} of {}", samples.len());
         }
     }
 

@@ -51,7 +51,12 @@ impl Zeroing {
         let above = self.block.above(level_q16);
         let ticks_ahead = self.pending_ticks().saturating_add(ticks);
         let off = self.gate.off(above, ticks_ahead);
-        match self.judge(tick, off, ticks_ahead, derived) {
+        // Past the block's range nobody knows how far.
+        let verdict = match self.block.is_within(above) {
+            true => self.judge(tick, off, ticks_ahead, derived),
+            false => self.gate.refuse(tick, off),
+        };
+        match verdict {
             Verdict::Noise => {}
             Verdict::Spike => {
                 self.skip(ticks, derived);

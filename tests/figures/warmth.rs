@@ -177,3 +177,23 @@ fn an_onset_takes_back_what_was_learned_of_the_warmth() {
     let (error, u) = (-counts(integral.value) - 12.0, counts(integral.u));
     assert!(error.abs() < 3.0 * u && u < 10.0, "off by {error}, u {u}");
 }
+
+/// A sensor that is read with each 40th sample and shows the same again: it counts in every mode anew.
+#[test]
+fn a_temperature_measured_seldom_counts_in_every_mode() {
+    let setup = Setup::new(CIRCUIT, CONVERTER, NOISE, POLICY);
+    let warming = |in_hold: i32| {
+        let mut script: Script<'_> = Script::new(&setup);
+        for (mode, celsius) in
+            [(Mode::Zero, 20), (Mode::Integrate, 20), (Mode::Hold, in_hold), (Mode::Integrate, in_hold)]
+        {
+            for k in 0..100 {
+                script.tick += STEP;
+                let temperature = (k % 40 == 39).then(|| Temperature::from_millidegrees_celsius(1000 * celsius));
+                script.channel.feed(Sample { tick: script.tick, counts: k % 3 - 1, mode, temperature });
+            }
+        }
+        script.reading().warming_mk
+    };
+    assert_eq!((warming(20), warming(25)), (Some(0), Some(5000)));
+}
