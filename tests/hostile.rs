@@ -74,12 +74,18 @@ fn extreme_codes_and_steps() {
 #[test]
 fn the_extremes_of_a_set_up() {
     let converter = Converter { code_min: -(1 << 29), code_max: 1 << 29, ..CONVERTER };
-    for (capacitance_f, limit, noise) in [(1e-15, 0.0, 0.0), (1e-15, 1e-12, 1e-9), (1.0, 1.0, 1.0), (1e-9, 1e-3, 1e-13)]
-    {
+    let boards = [(1e-15, 0.0, 0.0), (1e-15, 1e-12, 1e-9), (1.0, 1.0, 1.0), (1e-9, 1e-3, 1e-13)];
+    for ((capacitance_f, limit, noise), leaks) in boards.into_iter().flat_map(|board| [(board, false), (board, true)]) {
         let circuit = brimline::Circuit { capacitance_f, offset_limit_v: limit, bias_limit_a: 0.0, ..CIRCUIT };
         let figures =
             brimline::Noise { readout_counts: 0.0, input_density: noise, offset_wander: noise, input_flicker: noise };
         let policy = brimline::Policy { worst_input: None, ..POLICY };
+        let branch = brimline::SoakageBranch { share: 0.4, time_constant_s: 3.0 };
+        let soakage = [branch, branch, brimline::SoakageBranch::NONE, brimline::SoakageBranch::NONE];
+        let circuit = match leaks {
+            true => brimline::Circuit { leak_time_constant_s: Some(1e4), soakage, leak_u_rel: 0.1, ..circuit },
+            false => circuit,
+        };
         let Ok(setup) = Setup::try_new(circuit, converter, figures, policy) else { continue };
         for seed in 0..50 {
             wander(

@@ -14,8 +14,8 @@ const END: i32 = 1 << 30;
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
 /// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So what tells the
 /// scatter, deviations from where samples are expected and their instants, is kept within 16 and 15 bits: what grows
-/// past that is *coarsened* from there on, and the sums begin anew: what they lost by it would be as much as the scatter
-/// of samples far from where they were expected. The mean is exact.
+/// past that is *coarsened* from there on. For instants the sums so far are as well; for deviations they begin anew, since
+/// what they lost would be as much as the scatter of samples far from where they were expected. The mean is exact.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
     /// Where levels are counted from, whole counts in 2^-16 counts.
@@ -126,18 +126,16 @@ impl Block {
     #[cold]
     fn coarsen(&mut self) {
         self.coarse += 1;
-        self.begin_sums();
+        (self.squares, self.instant_squares, self.products) = (0, 0, 0);
+        (self.deviations, self.instants, self.alike) = (0, 0, 0);
     }
 
     #[cold]
     fn coarsen_time(&mut self) {
         self.coarse_time += 1;
-        self.begin_sums();
-    }
-
-    fn begin_sums(&mut self) {
-        (self.squares, self.instant_squares, self.products) = (0, 0, 0);
-        (self.deviations, self.instants, self.alike) = (0, 0, 0);
+        self.instants >>= 1;
+        self.products >>= 1;
+        self.instant_squares >>= 2;
     }
 
     /// Empties the block; `None` if no sample is in it.

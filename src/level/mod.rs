@@ -9,6 +9,7 @@ pub(crate) use leak::LeakLaw;
 use soakage::Soakage;
 pub(crate) use soakage::{BranchLaw, SoakageLaw};
 
+use crate::clock::LONGEST_STEP;
 use crate::math;
 use crate::sample::{Mode, Sample};
 use crate::setup::Derived;
@@ -60,7 +61,7 @@ impl Level {
         if derived.keeps_level {
             return linear_q16;
         }
-        let ticks = ticks.saturating_add(core::mem::take(&mut self.left_out));
+        let ticks = ticks.saturating_add(core::mem::take(&mut self.left_out)).min(LONGEST_STEP);
         let closed = sample.mode == Mode::Reset;
         let above = if closed { 0 } else { derived.above_reset(linear_q16) };
         // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.

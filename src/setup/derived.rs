@@ -35,7 +35,7 @@ pub(crate) struct Derived {
     /// without a leak.
     pub(crate) coarse_shift: Option<u8>,
     /// Bits of a fraction of a count with which samples are kept: as many as 32 bits have to spare for the converter's
-    /// span, at most 8.
+    /// width and what leaks and soaks, at most 8.
     pub(crate) fine_bits: u8,
     /// Samples in the fits beside a reset.
     pub(crate) edge_samples: u8,

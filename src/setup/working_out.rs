@@ -143,6 +143,18 @@ impl Derived {
         );
         check!(min_on_time_s * converter.tick_hz <= 4e9, "settling_s", "such that a reset lasts at most 4e9 ticks");
         let gap_limit_ticks = policy.gap_limit_s * converter.tick_hz;
+        // Longest step, in time constants of the leak: what leaks is told from the levels at its ends, and kept levels have
+        // 32 bits for what leaks and soaks while the samples of a line are taken.
+        let longest =
+            if leak_per_tick * gap_limit_ticks > LEAK_STEP { LEAK_STEP } else { leak_per_tick * gap_limit_ticks };
+        let [a, b, c, d]: &[super::SoakageBranch; SOAKAGE_BRANCHES] = &circuit.soakage;
+        let soaked = a.share + b.share + c.share + d.share;
+        let width = converter.code_max.abs_diff(converter.code_min) as f64;
+        let samples = policy.edge_samples as f64;
+        let fine_bits = fine_bits(width, soaked + samples * longest);
+        let room = (KEPT / (width * (1_u32 << fine_bits) as f64) - 1.0 - soaked) / samples;
+        let longest = if longest > room { room } else { longest };
+        let step_limit_ticks = if leak_per_tick > 0.0 { longest / leak_per_tick } else { gap_limit_ticks };
         let switch_tau_s = circuit.switch_resistance_ohm * circuit.capacitance_f;
         let pedestal = match circuit.pedestal_u_v {
             Some(u) => {
@@ -175,11 +187,7 @@ impl Derived {
             reset_attempts: policy.reset_attempts,
             pedestal,
             ktc_var: (BOLTZMANN * ROOM_K / circuit.capacitance_f / (converter.lsb_v * converter.lsb_v)) as f32,
-            step_limit_ticks: if leak_per_tick * gap_limit_ticks > LEAK_STEP {
-                (LEAK_STEP / leak_per_tick) as u32
-            } else {
-                gap_limit_ticks as u32
-            },
+            step_limit_ticks: step_limit_ticks as u32,
             gap_limit_ticks: gap_limit_ticks as u32,
             worst_rate_q16: per_tick_q16 as u64 + (worst_rate > 0.0) as u64,
             guard_counts: ceil(worst_rate * policy.latency_s + policy.guard_sigma * sigma),
@@ -190,7 +198,7 @@ impl Derived {
             frozen_samples: if noise.readout_counts >= 0.5 { policy.frozen_samples } else { 0 },
             bend_var,
             edge_samples: policy.edge_samples,
-            fine_bits: fine_bits(converter),
+            fine_bits,
             linearity: converter.linearity,
             reset_q16: (reset_code * 65536.0) as i64,
             leak,
@@ -248,12 +256,17 @@ const fn coarse_shift(leak_per_tick: f64) -> u8 {
     if bits > 18 { (bits - 18) as u8 } else { 0 }
 }
 
-/// Spare bits above the converter's span and a sign.
-const fn fine_bits(converter: &Converter) -> u8 {
-    let span = converter.code_max.abs_diff(converter.code_min);
-    // At most 2^30, so no less than one leading zero.
-    let spare = span.leading_zeros() - 1;
-    if spare < 8 { spare as u8 } else { 8 }
+/// How far levels that are kept in 32 bits may lie apart.
+const KEPT: f64 = 2_147_483_648.0;
+
+/// Bits of a fraction that 32 bits have to spare for a converter's width and for so many widths more that leak and soak;
+/// at least 3 where there is room for them and one more width, at most 8.
+const fn fine_bits(width: f64, more: f64) -> u8 {
+    let (mut bits, mut all) = (8, (1.0 + more) * 256.0);
+    while bits > 0 && width * all > KEPT && (bits > 3 || width * 2.0 * (1_u32 << bits) as f64 > KEPT) {
+        (bits, all) = (bits - 1, all / 2.0);
+    }
+    bits
 }
 
 const fn floor(x: f64) -> i32 {

@@ -22,8 +22,9 @@ pub(super) enum Verdict {
 pub(super) struct Gate {
     /// At the filter's instant, fine steps (2^-8 count) above its whole counts.
     ahead: i32,
-    /// Drift in `2^shift` ticks, 2^-16 fine steps.
+    /// Drift in `2^shift` ticks, 2^-16 fine steps, or 2^-4 where it is steep.
     drift: i32,
+    is_steep: bool,
     /// How far off the noise of samples alone may take them, fine steps; `OPEN`: nothing is expected yet.
     reach: u32,
     since: u32,
@@ -39,7 +40,7 @@ const FINE: f32 = 256.0;
 
 impl Default for Gate {
     fn default() -> Self {
-        Self { ahead: 0, drift: 0, reach: OPEN, since: 0, shift: 0, astray: 0 }
+        Self { ahead: 0, drift: 0, is_steep: false, reach: OPEN, since: 0, shift: 0, astray: 0 }
     }
 }
 
@@ -64,7 +65,10 @@ impl Gate {
     pub(super) fn aim(&mut self, residual: f32, rate: f32, ticks: u32) {
         self.shift = 12_u32.saturating_sub(ticks.leading_zeros()) as u8;
         self.ahead = (residual * FINE) as i32;
-        self.drift = (rate * math::two_to(24 + i32::from(self.shift))) as i32;
+        let drift = rate * math::two_to(24 + i32::from(self.shift));
+        // Past 2^7 counts in a shifted tick the fraction gives way.
+        self.is_steep = math::abs(drift) >= math::two_to(31);
+        self.drift = if self.is_steep { drift * math::two_to(-12) } else { drift } as i32;
     }
 
     /// How far a sample is off, fine steps, that is so many fine steps above the filter's whole counts and so many
@@ -74,7 +78,8 @@ impl Gate {
     }
 
     fn drifted(&self, ticks: u32) -> i32 {
-        let drifted = (i64::from(self.drift) * i64::from(ticks >> self.shift)) >> 16;
+        let drifted = i64::from(self.drift) * i64::from(ticks >> self.shift);
+        let drifted = if self.is_steep { drifted >> 4 } else { drifted >> 16 };
         i32::try_from(drifted).unwrap_or(if drifted < 0 { i32::MIN } else { i32::MAX })
     }
 

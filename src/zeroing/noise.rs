@@ -153,10 +153,6 @@ impl NoiseSeen {
         let alike = f32::from(mean.alike);
         let walked = derived.scatter_walk * mean.span as f32 * mean.share * (alike * alike - 4.0);
         let told = mean.alike - 2;
-        // What is left of a scatter that a walk should have made tells of that walk, which may be stated too large.
-        if walked > f32::from(told) * self.sample_var {
-            return;
-        }
         let freedom = self.freedom.saturating_add(told);
         let surprise = mean.scatter - walked - f32::from(told) * self.sample_var;
         let sample_var = self.sample_var + surprise / f32::from(freedom);

@@ -276,7 +276,7 @@ impl Zeroing {
         if let Some(checkpoint) = self.checkpoint.take() {
             self.trend = checkpoint.trend;
             self.bracket = checkpoint.bracket;
-            self.warmth = checkpoint.warmth;
+            self.warmth.roll_back(checkpoint.warmth);
             self.considered = checkpoint.considered;
             self.pending.join(checkpoint.age);
         }

@@ -106,6 +106,11 @@ impl Warmth {
         self.row.with_rate += risen * v;
     }
 
+    /// Forgets what was learned since; what was measured stays.
+    pub(super) fn roll_back(&mut self, checkpoint: Self) {
+        *self = Self { latest: self.latest, temperature: self.temperature, ..checkpoint };
+    }
+
     /// The rate belongs to the present heat from here on.
     pub(super) fn follow(&mut self) {
         self.area = 0;
