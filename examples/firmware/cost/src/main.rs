@@ -1,11 +1,27 @@
 //! What a channel costs on a microcontroller. On a target it measures and prints what it found; on the host it builds
-//! and runs the programs for each target, prints the tables, compares them with the committed figures and with the goals.
+//! and runs the programs for each target, prints the tables, and compares them with the committed figures, the goals
+//! and the limits on what hostile input may cost.
 #![cfg_attr(target_os = "none", no_std, no_main)]
 
+#[cfg(target_os = "none")]
+mod calls;
+#[cfg(target_os = "none")]
+mod fuzzed;
 #[cfg(target_os = "none")]
 mod measure;
 #[cfg(target_os = "none")]
 mod tally;
+
+#[cfg(any(target_os = "none", test))]
+mod boards;
+#[cfg(any(target_os = "none", test))]
+mod chance;
+#[cfg(any(target_os = "none", test))]
+mod dear;
+#[cfg(any(target_os = "none", test))]
+mod hostile;
+#[cfg(any(target_os = "none", test))]
+mod plant;
 
 #[cfg(not(target_os = "none"))]
 mod bounds;
@@ -17,6 +33,10 @@ mod flash;
 mod goals;
 #[cfg(not(target_os = "none"))]
 mod others;
+#[cfg(not(target_os = "none"))]
+mod ratios;
+#[cfg(all(not(target_os = "none"), test))]
+mod reach;
 #[cfg(not(target_os = "none"))]
 mod table;
 
@@ -40,9 +60,12 @@ fn run(record: bool) -> Result<(), Box<dyn std::error::Error>> {
     }
     println!("{table}");
     goals::print(&table)?;
+    let ratios = ratios::of(&table)?;
+    ratios::print(&ratios);
     let filters = others::filters()?;
     println!("\n{filters}");
     others::print_endurance()?;
+    ratios::hold(&ratios)?;
     bounds::hold("channel.md", &table, record)?;
     bounds::hold("filters.md", &filters, record)
 }

@@ -1,15 +1,14 @@
-//! Runs the bundled traces, counts every call and prints `name: value` lines for the host to tabulate.
+//! Runs the bundled traces and hostile scripts, counts every call and prints `name: value` lines for the host to
+//! tabulate.
 
-use core::hint::black_box;
-
-use brimline::{Channel, Charge, Integral, Mode, Reading, Sample, Setup, Step};
-use emulated::{Counter, depth, dig_is_seen, entry, paint, pointer, println, process};
+use brimline::{Channel, Charge, Integral, Mode, Setup};
+use emulated::{Counter, dig_is_seen, entry, println, process};
 use trace::{BLOCKS_OF_16, CHARGE, FLUX, Trace, UNBLOCKED};
 
+use crate::boards;
+use crate::calls::{Calls, Depths};
+use crate::fuzzed::Fuzzed;
 use crate::tally::Tally;
-
-type Feed<'s, Q> = fn(&mut Channel<'s, Q>, Sample) -> Step;
-type Read<'s, Q> = fn(&Channel<'s, Q>) -> Option<Reading<Q>>;
 
 /// All kinds of calls.
 struct Tallies {
@@ -77,13 +76,6 @@ enum Kind {
     Unblocked,
 }
 
-/// The deepest that `feed` and `reading` dug, bytes.
-#[derive(Default)]
-struct Depths {
-    feed: usize,
-    reading: usize,
-}
-
 #[entry]
 fn main() -> ! {
     let Some(counter) = Counter::start() else {
@@ -104,9 +96,18 @@ fn main() -> ! {
     }
     run(&counter, &BLOCKS_OF_16, Kind::BlocksOf16, &mut tallies, &mut depths);
     run(&counter, &UNBLOCKED, Kind::Unblocked, &mut tallies, &mut depths);
+    let mut fuzzed = Fuzzed::new(&counter, "");
+    boards::recorded(&mut fuzzed);
+    let mut dear = Fuzzed::new(&counter, ", on dear boards");
+    boards::dear(&mut dear);
+
     tallies.print();
+    fuzzed.print_counts();
+    dear.print_counts();
     println!("stack of feed, bytes: {}", depths.feed);
     println!("stack of reading, bytes: {}", depths.reading);
+    fuzzed.print_depths();
+    dear.print_depths();
     println!("RAM for a channel, bytes: {}", size_of::<Channel<'_, Charge>>());
     println!("flash for a set-up, bytes: {}", size_of::<Setup<Charge>>());
     process::exit(0)
@@ -122,21 +123,17 @@ fn kind<Q: Integral>(trace: &Trace<Q>) -> Kind {
 
 fn run<Q: Integral>(counter: &Counter, trace: &Trace<Q>, kind: Kind, tallies: &mut Tallies, depths: &mut Depths) {
     count(counter, trace, kind, tallies);
-    dig(trace, depths);
+    depths.dig(Channel::new(trace.setup()), trace.samples());
 }
 
-/// Counts every call of a trace, less a call of the same signature that does nothing.
+/// Counts every call of a trace.
 fn count<Q: Integral>(counter: &Counter, trace: &Trace<Q>, kind: Kind, tallies: &mut Tallies) {
-    let feed: Feed<'_, Q> = black_box(Channel::feed);
-    let read: Read<'_, Q> = black_box(Channel::reading);
-    let idle_feed: Feed<'_, Q> = black_box(|_, _| Step::default());
-    let idle_read: Read<'_, Q> = black_box(|_| None);
+    let calls = Calls::new(counter);
     let mut channel = Channel::new(trace.setup());
     let mut started = false;
     for sample in trace.samples() {
         let steady = channel.mode() == Some(sample.mode);
-        let idle = count_feed(counter, idle_feed, &mut channel, sample);
-        let net = count_feed(counter, feed, &mut channel, sample) - idle;
+        let net = calls.feed(&mut channel, sample);
         tallies.any.add(net);
         if steady {
             tallies.steady_of(kind, sample.mode).add(net);
@@ -147,35 +144,7 @@ fn count<Q: Integral>(counter: &Counter, trace: &Trace<Q>, kind: Kind, tallies: 
         started |= sample.mode == Mode::Integrate;
         if started {
             let tally = if sample.mode == Mode::Zero { &mut tallies.stopped } else { &mut tallies.running };
-            tally.add(count_reading(counter, read, &channel) - count_reading(counter, idle_read, &channel));
+            tally.add(calls.reading(&channel));
         }
-    }
-}
-
-/// Never inlined, so that a call and its idle twin are counted by the same instructions.
-#[inline(never)]
-fn count_feed<'s, Q>(counter: &Counter, feed: Feed<'s, Q>, channel: &mut Channel<'s, Q>, sample: Sample) -> u32 {
-    counter.gross(|| feed(channel, sample))
-}
-
-/// The same for a reading.
-#[inline(never)]
-fn count_reading<'s, Q>(counter: &Counter, read: Read<'s, Q>, channel: &Channel<'s, Q>) -> u32 {
-    counter.gross(|| read(channel))
-}
-
-/// Stack below the caller that `feed` and `reading` use over a trace.
-fn dig<Q: Integral>(trace: &Trace<Q>, depths: &mut Depths) {
-    let feed: Feed<'_, Q> = black_box(Channel::feed);
-    let read: Read<'_, Q> = black_box(Channel::reading);
-    let mut channel = Channel::new(trace.setup());
-    let top = pointer();
-    for sample in trace.samples() {
-        paint(top);
-        black_box(feed(&mut channel, sample));
-        depths.feed = depths.feed.max(depth(top));
-        paint(top);
-        black_box(read(&channel));
-        depths.reading = depths.reading.max(depth(top));
     }
 }

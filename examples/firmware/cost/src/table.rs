@@ -32,6 +32,11 @@ impl Table {
         Ok(())
     }
 
+    /// The names of the columns.
+    pub(crate) fn columns(&self) -> impl Iterator<Item = &str> {
+        self.columns.iter().map(String::as_str)
+    }
+
     /// The names of rows and columns of all cells, with their numbers.
     pub(crate) fn cells(&self) -> impl Iterator<Item = (&str, &str, Vec<u64>)> {
         self.rows.iter().flat_map(|(row, cells)| {

@@ -22,8 +22,13 @@ impl Tally {
     }
 
     pub(crate) fn print(&self) {
+        self.print_with("");
+    }
+
+    /// With something behind the name.
+    pub(crate) fn print_with(&self, suffix: &str) {
         if let Some(mean) = self.sum.checked_div(u64::from(self.calls)) {
-            println!("{}: {mean} / {}", self.name, self.worst);
+            println!("{}{suffix}: {mean} / {}", self.name, self.worst);
         }
     }
 }
