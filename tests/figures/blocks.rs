@@ -123,13 +123,15 @@ fn a_drift_of_many_counts_in_a_tick_is_followed() {
         tick_hz: 1000.0,
         ..Converter::DEFAULT
     };
-    let policy = Policy { frozen_samples: 0, ..Policy::DEFAULT };
-    let setup: Setup<Charge> = Setup::new(circuit, converter, QUIET, policy);
+    let noise = Noise { readout_counts: 3.0, ..Noise::NONE };
+    let setup: Setup<Charge> = Setup::new(circuit, converter, noise, Policy::DEFAULT);
     for per_tick in [-400, -130, 120, 127, 128, 130, 400] {
-        let mut channel = Channel::new(&setup);
-        for k in 0..1_500 {
-            let counts = per_tick * (10 * k - 7_500) + k % 3 - 1;
-            let step = channel.feed(Sample { tick: 10 * k as u32, counts, mode: Mode::Zero, temperature: None });
+        let (mut channel, mut rng) = (Channel::new(&setup), ChaCha8Rng::seed_from_u64(1));
+        for k in 0..1_000 {
+            let counts = f64::from(per_tick * (10 * k - 5_000)) + 3.0 * normal(&mut rng);
+            let sample =
+                Sample { tick: 10 * k as u32, counts: counts.round() as i32, mode: Mode::Zero, temperature: None };
+            let step = channel.feed(sample);
             assert!(step.notices.is_empty(), "{per_tick} counts a tick: {:?}", step.notices);
         }
     }
