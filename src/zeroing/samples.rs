@@ -144,6 +144,8 @@ impl Zeroing {
         let variance = derived.block_var(mean.share);
         if !self.level_known {
             self.find_level(&mean, variance, terms, stop, derived);
+            // There is always something to go back to.
+            self.keep(tick, derived);
             self.aim_next(&mean, derived);
             return Taken::Used;
         }
@@ -177,7 +179,7 @@ impl Zeroing {
             self.roll_back();
             return Taken::Onset { since, contradicts_run, change };
         }
-        if self.cusum.is_quiet() || self.checkpoint.is_none() {
+        if self.cusum.is_quiet() {
             self.keep(tick, derived);
         }
         self.aim_next(&mean, derived);

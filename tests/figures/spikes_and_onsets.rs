@@ -1,6 +1,6 @@
 //! What counts as a spike, what as an onset, and what an onset leaves of the zero.
 
-use brimline::{Channel, Charge, Event, Mode, Policy, Sample, Setup, Trust};
+use brimline::{Channel, Charge, Circuit, Converter, Event, Mode, Noise, Policy, Sample, Setup, Trust};
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, StandardNormal};
@@ -143,4 +143,32 @@ fn false_alarms_come_about_as_often_as_the_policy_says() {
     }
     let found = samples as f64 * 0.01 / ALARMS as f64;
     assert!((16.0..30.0).contains(&found), "{found} s");
+}
+
+/// Switched on with the input on: an onset in the very first blocks is not learned as a drift that no later zero forgets.
+#[test]
+fn an_onset_in_the_first_zero_of_all_is_forgotten() {
+    let circuit = Circuit { offset_limit_v: 1e-3, source_resistance_ohm: 1e7, bias_limit_a: 1e-9, ..CIRCUIT };
+    let converter =
+        Converter { lsb_v: 20.0 / f64::from(1 << 24), code_min: -(1 << 23), code_max: (1 << 23) - 1, ..CONVERTER };
+    let noise = Noise { readout_counts: 2.0, input_density: 1e-13, ..Noise::NONE };
+    let setup = Setup::new(circuit, converter, noise, Policy { worst_input: None, ..POLICY });
+    for slope in [100_000.0, 300_000.0] {
+        let mut script = Script::new(&setup);
+        let mut go = |mode, slope: f64| {
+            for k in 0..1000 {
+                script.level = if mode == Mode::Reset { 0.0 } else { script.level + slope * 1e-3 };
+                let counts = (script.level + f64::from(k * k % 7 - 3) * 0.5).round() as i32;
+                script.sample_of(mode, 1000, counts);
+            }
+            script.channel.drift()
+        };
+        let first = go(Mode::Zero, slope);
+        assert!(first.value.as_volts_per_second().abs() < 4.0 * first.u.as_volts_per_second(), "{slope}: {first:?}");
+        go(Mode::Reset, 0.0);
+        go(Mode::Zero, 0.0);
+        go(Mode::Integrate, 100.0);
+        let reading = script.reading();
+        assert_eq!(reading.trust, Trust::Good, "{slope}: {:?}", reading.reasons);
+    }
 }
