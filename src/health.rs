@@ -1,9 +1,10 @@
 //! Faults that a single sample or a pair of samples shows.
 
 use crate::clock::LONGEST_STEP;
+use crate::decide;
 use crate::setup::Derived;
 
-/// Watches for readings that stand still; everything else it decides from the sample before it.
+/// The latest reading, how often in a row it came, and what a sample may be without a closer look.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Health {
     /// The latest reading, and how often in a row it came; 0: never.
@@ -71,7 +72,7 @@ impl Health {
         let longest = ticks.saturating_add(ticks >> 4).min(derived.step_limit_ticks).min(LONGEST_STEP);
         let guard = match derived.worst_rate_q16 {
             0 => 0,
-            _ => derived.worst_movement(longest).saturating_add(i64::from(derived.guard_counts)).saturating_add(1),
+            _ => decide::reset::guard(derived.worst_movement(longest), derived).saturating_add(1),
         };
         let guard = guard.clamp(0, 1 << 30) as i32;
         let (low, high) = (derived.usable.0 + guard, derived.usable.1 - guard);

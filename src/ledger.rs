@@ -1,17 +1,7 @@
 //! Totals across resets and holds: what was measured, what was interpolated, and the variance they added.
 
 use crate::estimate::{After, Before, LEVEL_VARIANCE_MAX, Sum};
-use crate::math;
-
-/// 2^-16 counts, rounded toward zero, saturating.
-pub(crate) fn to_q16(counts: f32) -> i64 {
-    math::fixed(counts, 16)
-}
-
-/// Whole counts in 2^-16 counts, saturating.
-pub(crate) fn whole_q16(counts: i64) -> i64 {
-    counts.saturating_mul(1 << 16)
-}
+use crate::math::{self, to_q16};
 
 /// What interruptions have carried over, in 2^-16 counts of output movement.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]

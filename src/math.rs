@@ -18,8 +18,8 @@ pub(crate) fn sqrt_f64(x: f64) -> f64 {
 }
 
 /// One over the square root, to 1e-4: the bits of the significand in integers of 32 bits, three Newton steps. Where a
-/// square root only says how far off is far off, this costs a fraction of [`sqrt`]. A number that is not normal counts as
-/// the nearest one that is.
+/// square root only says how far off is far off, this costs a fraction of [`sqrt`]. A number that is not normal counts
+/// as the nearest one that is.
 pub(crate) fn about_inverse_sqrt(x: f32) -> f32 {
     let bits = x.to_bits().clamp(f32::MIN_POSITIVE.to_bits(), f32::MAX.to_bits());
     let exponent = (bits >> 23).cast_signed();
@@ -150,6 +150,16 @@ pub(crate) fn nearest(x: f32) -> i64 {
 /// A difference of levels in 2^-16 counts, as counts.
 pub(crate) fn counts(q16: i64) -> f32 {
     scaled(float(q16), -16)
+}
+
+/// 2^-16 counts, rounded toward zero, saturating.
+pub(crate) fn to_q16(counts: f32) -> i64 {
+    fixed(counts, 16)
+}
+
+/// Whole counts in 2^-16 counts, saturating.
+pub(crate) fn whole_q16(counts: i64) -> i64 {
+    counts.saturating_mul(1 << 16)
 }
 
 /// A level in 2^-16 counts as whole counts and the rest, which is not negative.

@@ -26,7 +26,8 @@ pub enum Event {
     /// A reset was due by the headroom guard; stated once until the next reset.
     ResetDue,
     /// A reset failed, and so did this many in a row with it. Another one is asked for until the policy's
-    /// `reset_attempts` are used up. Where a sample shows two that failed, the second is stated: the number counts both.
+    /// `reset_attempts` are used up. Where a sample shows two that failed, the second is stated: the number counts
+    /// both.
     ResetFailed {
         /// Failures in a row.
         in_a_row: u8,

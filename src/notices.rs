@@ -4,7 +4,8 @@ use core::fmt;
 
 use crate::notice::{Event, Notice, Reason};
 
-/// The notices of one step, each kind at most once: first what the switches' moving led to, then what the sample showed.
+/// The notices of one step, each kind at most once: first what the switches' moving led to, then what the sample
+/// showed.
 #[derive(Clone, Copy, Default)]
 pub struct Notices(Option<Told>);
 

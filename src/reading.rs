@@ -46,10 +46,8 @@ impl<Q: Integral> Estimate<Q> {
         let counts = from_q16(total.movement_q16);
         let scale = counts as f32 * counts as f32 * setup.derived().gain_var_rel;
         let variance = total.variance() + scale;
-        let u = |variance: f32| {
-            let magnitude = f64::from(math::sqrt(variance)) * per_count;
-            Q::from_si_value(if magnitude < 0.0 { -magnitude } else { magnitude })
-        };
+        let size = if per_count < 0.0 { -per_count } else { per_count };
+        let u = |variance: f32| Q::from_si_value(f64::from(math::sqrt(variance)) * size);
         Self {
             integral: Measured::new(Q::from_si_value(counts * per_count), u(variance)),
             budget: Budget {
@@ -93,7 +91,8 @@ pub struct Reading<Q> {
     pub start_tick: u32,
     /// Counter value of the run's last integrating sample so far.
     pub end_tick: u32,
-    /// From start to the last integrating sample, resets and holds included, s. Exact to 2^53 ticks, 285 years at 1 MHz.
+    /// From start to the last integrating sample, resets and holds included, s. Exact to 2^53 ticks, 285 years at 1
+    /// MHz.
     pub elapsed_s: f64,
     /// Of that the time in holds, s.
     pub held_s: f64,

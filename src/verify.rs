@@ -161,8 +161,9 @@ impl Verification {
         self.leaving.is_some()
     }
 
-    /// A linear level with the switch open, 2^-16 counts, `step` ticks after the one before: `true` if the level stays where the closed switch held it although drift, walk or
-    /// pedestal should have moved it. Only a level that has left is free.
+    /// A linear level with the switch open, 2^-16 counts, `step` ticks after the one before: `true` if the level stays
+    /// where the closed switch held it although drift, walk or pedestal should have moved it. Only a level that has
+    /// left is free.
     pub(crate) fn is_held(&mut self, linear_q16: i64, step: u32, mover: &Mover, derived: &Derived) -> bool {
         let Some(leaving) = self.leaving.as_mut() else { return false };
         leaving.ticks = leaving.ticks.saturating_add(u64::from(step));

@@ -83,7 +83,13 @@ fn the_extremes_of_a_set_up() {
         let branch = brimline::SoakageBranch { share: 0.4, time_constant_s: 3.0 };
         let soakage = [branch, branch, brimline::SoakageBranch::NONE, brimline::SoakageBranch::NONE];
         let circuit = match leaks {
-            true => brimline::Circuit { leak_time_constant_s: Some(1e4), soakage, leak_u_rel: 0.1, ..circuit },
+            true => brimline::Circuit {
+                leak_time_constant_s: Some(1e4),
+                soakage,
+                leak_u_rel: 0.1,
+                pedestal_u_v: Some(1e-4),
+                ..circuit
+            },
             false => circuit,
         };
         let Ok(setup) = Setup::try_new(circuit, converter, figures, policy) else { continue };

@@ -29,8 +29,9 @@ use switching::settle;
 /// reading is final when the zero after it ends, so take it before the first sample of the next run.
 ///
 /// Between two samples at most 2^31 - 1 ticks may pass. A run's movement, what leaked in it included, and what it has
-/// carried over resets may come to 2^46 counts; past that the run has the reason `OutOfRange`. Times are counted to 2^64
-/// ticks. Where no wander of the drift is stated, a zero holds it for constant over 2^18 samples or blocks at most.
+/// carried over resets may come to 2^46 counts; past that the run has the reason `OutOfRange`. Times are counted to
+/// 2^64 ticks. Where no wander of the drift is stated, a zero holds it for constant over 2^18 samples or blocks at
+/// most.
 // In this order, what every sample needs comes first: a Cortex-M0 reaches the first 124 bytes in one instruction.
 #[repr(C)]
 #[derive(Clone, Debug)]
@@ -43,8 +44,9 @@ pub struct Channel<'s, Q> {
     clock: Clock,
     health: Health,
     window: Window,
-    /// Board temperature as last measured in this mode, and at the latest zero sample.
+    /// Board temperature as last measured in this mode.
     temperature: Option<Temperature>,
+    /// The same at the latest zero sample.
     zero_temperature: Option<Temperature>,
     zeroing: Zeroing,
     level: Level,
@@ -91,10 +93,10 @@ impl<'s, Q: Integral> Channel<'s, Q> {
         }
         self.clock.pass(sample.tick);
         self.keep(&sample);
-        match sample.mode {
-            Mode::Integrate => self.extend(&sample, ticks),
-            _ => return self.go_on_in_zero(&sample, ticks),
+        if sample.mode == Mode::Zero {
+            return self.go_on_in_zero(&sample, ticks);
         }
+        self.extend(&sample, ticks);
         Step::default()
     }
 

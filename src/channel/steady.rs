@@ -31,7 +31,7 @@ impl<Q: Integral> Channel<'_, Q> {
         self.steady == Some(sample.mode) && self.health.is_calm(sample.counts, ticks)
     }
 
-    /// What is to be kept of a sample in any mode.
+    /// What is to be kept of a sample in any mode, whether or not it is looked at closely.
     #[inline(always)]
     pub(super) fn keep(&mut self, sample: &Sample) {
         self.health.take(sample.counts);

@@ -13,7 +13,12 @@ pub(crate) fn due(counts: i32, movement: i64, derived: &Derived) -> bool {
     }
     // Codes are within 2^29, but what is fed may be anything.
     let headroom = counts.saturating_sub(derived.usable.0).min(derived.usable.1.saturating_sub(counts));
-    let guard = movement.saturating_add(i64::from(derived.guard_counts));
+    let guard = guard(movement, derived);
     let at_reset_level = counts >= derived.reset_window.0 && counts <= derived.reset_window.1;
     i64::from(headroom) <= guard && !at_reset_level
+}
+
+/// Headroom that is too little: what the worst-case input moves the level by, latency and readout noise, counts.
+pub(crate) fn guard(movement: i64, derived: &Derived) -> i64 {
+    movement.saturating_add(i64::from(derived.guard_counts))
 }

@@ -14,8 +14,9 @@ const END: i32 = 1 << 30;
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
 /// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So what tells the
 /// scatter, deviations from where samples are expected and their instants, is kept within 16 and 15 bits: what grows
-/// past that is *coarsened* from there on. For instants the sums so far are as well; for deviations they begin anew, since
-/// what they lost would be as much as the scatter of samples far from where they were expected. The mean is exact.
+/// past that is *coarsened* from there on. For instants the sums so far are as well; for deviations they begin anew,
+/// since what they lost would be as much as the scatter of samples far from where they were expected. The mean is
+/// exact.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
     /// Where levels are counted from, whole counts in 2^-16 counts.
@@ -53,7 +54,8 @@ pub(crate) struct BlockMean {
     pub(crate) share: f32,
     /// Of how many samples, the latest, the scatter is told.
     pub(crate) alike: u16,
-    /// Sum of the squared deviations from a straight line, counts^2, and the square of the step that these were rounded to.
+    /// Sum of the squared deviations from a straight line, counts^2, and the square of the step that these were rounded
+    /// to.
     pub(crate) scatter: f32,
     pub(crate) step_squared: f32,
     /// Ticks that the block spans.
@@ -92,8 +94,8 @@ impl Block {
         self.span = self.span.saturating_add(ticks);
     }
 
-    /// Takes a level, fine steps [`above`](Self::above) the base and `off` fine steps from where it was expected, `ticks`
-    /// after the one before. `true` when the block is as close to `length` ticks as this spacing allows.
+    /// Takes a level, fine steps [`above`](Self::above) the base and `off` fine steps from where it was expected,
+    /// `ticks` after the one before. `true` when the block is as close to `length` ticks as this spacing allows.
     pub(crate) fn push(&mut self, above: i32, off: i32, ticks: u32, length: u32) -> bool {
         self.skip(ticks);
         let (deviation, instant) = self.within_bits(off);

@@ -2,8 +2,8 @@
 
 use super::trend::Trend;
 use super::walk::Walk;
-use crate::ledger::{to_q16, whole_q16};
 use crate::math;
+use crate::math::{to_q16, whole_q16};
 use crate::setup::QUANTISATION_VAR;
 
 /// The movement of the level over a finished run, as the closing zero comes to know it.
@@ -82,8 +82,8 @@ impl Bracket {
         self.own += math::not_negative(lost);
     }
 
-    /// A zero sample, as `zero` weighs it: before it takes it, with the variance `given_rate` of the residual if the rate
-    /// were known. Gives the share of the residual that the movement takes.
+    /// A zero sample, as `zero` weighs it: before it takes it, with the variance `given_rate` of the residual if the
+    /// rate were known. Gives the share of the residual that the movement takes.
     pub(super) fn update(&mut self, zero: &Trend, given_rate: f32, precision: f32, residual: f32) -> f32 {
         let with_level = self.per_level * zero.level_given_rate();
         let gain = (with_level + self.per_rate * zero.covariance()) * precision;

@@ -5,6 +5,7 @@ use super::bend::{Bend, GridNoise, unexplained};
 use super::grid::{Dot, Grid};
 use super::moments::Moments;
 use super::running::{Polynomial, Running};
+use super::trend::LEVEL_VARIANCE_MAX;
 use crate::math;
 use crate::setup::{Derived, EDGE_SAMPLES_MAX};
 
@@ -137,7 +138,7 @@ impl Drawn {
             farthest: dots.last().map_or(0, |dot| dot.x) as f32 + middle,
             weights,
             curved,
-            readout,
+            readout: readout.map(|form| math::within(form, LEVEL_VARIANCE_MAX)),
             walk_of_unit: math::scaled(step_walk, -unit_bits),
         })
     }

@@ -16,8 +16,8 @@ impl Sum {
         Self { value, rest: 0.0 }
     }
 
-    /// Adds a number; the sum ends at `most` either way, past which nothing is known, and so it does where the number is
-    /// none.
+    /// Adds a number; the sum ends at `most` either way, past which nothing is known, and so it does where the number
+    /// is none.
     pub(crate) fn add(&mut self, x: f32, most: f32) {
         let x = x + self.rest;
         let sum = math::within(self.value + x, most);

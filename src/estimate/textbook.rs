@@ -119,8 +119,8 @@ fn product(a: &[f64], b: &[f64]) -> f64 {
     a.iter().zip(b).map(|(a, b)| a * b).sum()
 }
 
-/// What the run keeps of the walk, less what it is charged with: of each step, the weight nearer to the instant, squared,
-/// less 1. `gain`: the weight at the instant.
+/// What the run keeps of the walk, less what it is charged with: of each step, the weight nearer to the instant,
+/// squared, less 1. `gain`: the weight at the instant.
 fn walked(x: &[f64], weights: &[f64], gain: f64) -> f64 {
     let (mut near, mut seen, mut sum) = (0.0, gain, 0.0);
     for (x, w) in x.iter().zip(weights) {

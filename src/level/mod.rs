@@ -51,8 +51,8 @@ pub(crate) struct Level {
 }
 
 impl Level {
-    /// Takes a sample, `ticks` after the one before, and gives the effective level, 2^-16 counts. While the reset switch
-    /// is closed nothing leaks, and the dielectric sees the reset level.
+    /// Takes a sample, `ticks` after the one before, and gives the effective level, 2^-16 counts. While the reset
+    /// switch is closed nothing leaks, and the dielectric sees the reset level.
     ///
     /// The first sample finds the dielectric at rest.
     #[inline(never)]

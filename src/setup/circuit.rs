@@ -33,8 +33,8 @@ pub struct Circuit {
     /// Time constant of a leak across the capacitor, s: a feedback resistor times the capacitance, or the insulation's;
     /// `None`: no leak to speak of. 16 to 1.7e13 ticks of the counter. What leaks is put back, so that a run may last
     /// many time constants; a step from sample to sample of more than 16 is a gap, and of more than about one behind a
-    /// converter of 24 bits and more. The limit: if the converter's offset has moved by `e` volts since the zero, the output
-    /// seems to move by `e / tau` V/s more, which counts as input.
+    /// converter of 24 bits and more. The limit: if the converter's offset has moved by `e` volts since the zero, the
+    /// output seems to move by `e / tau` V/s more, which counts as input.
     pub leak_time_constant_s: Option<f64>,
     /// Relative standard uncertainty of `leak_time_constant_s`: 0 to 1.
     pub leak_u_rel: f64,

@@ -143,8 +143,8 @@ impl Derived {
         );
         check!(min_on_time_s * converter.tick_hz <= 4e9, "settling_s", "such that a reset lasts at most 4e9 ticks");
         let gap_limit_ticks = policy.gap_limit_s * converter.tick_hz;
-        // Longest step, in time constants of the leak: what leaks is told from the levels at its ends, and kept levels have
-        // 32 bits for what leaks and soaks while the samples of a line are taken.
+        // Longest step, in time constants of the leak: what leaks is told from the levels at its ends, and kept levels
+        // have 32 bits for what leaks and soaks while the samples of a line are taken.
         let longest =
             if leak_per_tick * gap_limit_ticks > LEAK_STEP { LEAK_STEP } else { leak_per_tick * gap_limit_ticks };
         let [a, b, c, d]: &[super::SoakageBranch; SOAKAGE_BRANCHES] = &circuit.soakage;
@@ -259,8 +259,8 @@ const fn coarse_shift(leak_per_tick: f64) -> u8 {
 /// How far levels that are kept in 32 bits may lie apart.
 const KEPT: f64 = 2_147_483_648.0;
 
-/// Bits of a fraction that 32 bits have to spare for a converter's width and for so many widths more that leak and soak;
-/// at least 3 where there is room for them and one more width, at most 8.
+/// Bits of a fraction that 32 bits have to spare for a converter's width and for so many widths more that leak and
+/// soak; at least 3 where there is room for them and one more width, at most 8.
 const fn fine_bits(width: f64, more: f64) -> u8 {
     let (mut bits, mut all) = (8, (1.0 + more) * 256.0);
     while bits > 0 && width * all > KEPT && (bits > 3 || width * 2.0 * (1_u32 << bits) as f64 > KEPT) {

@@ -4,9 +4,9 @@ use super::gate::{self, Verdict};
 use super::{Checkpoint, RateChange, Stop, Taken, Zeroing, advance};
 use crate::clock::Span;
 use crate::estimate::{BlockMean, Bracket, DEVIATION, Innovation};
-use crate::ledger::{to_q16, whole_q16};
 use crate::level::Terms;
 use crate::math;
+use crate::math::{to_q16, whole_q16};
 use crate::setup::{Derived, WarmthLaw};
 
 /// An onset before so many innovations is as good as the beginning of the zero.
@@ -29,8 +29,8 @@ impl Zeroing {
         self.block.skip(ticks);
     }
 
-    /// A sample in a zero: `level_q16` (2^-16 counts) at `tick`, `ticks` after the one before. `around` tells how the run
-    /// before stopped, and leak and soakage now; only the end of a block asks.
+    /// A sample in a zero: `level_q16` (2^-16 counts) at `tick`, `ticks` after the one before. `around` tells how the
+    /// run before stopped, and leak and soakage now; only the end of a block asks.
     pub(crate) fn take<'r>(
         &mut self,
         tick: u32,
@@ -99,8 +99,8 @@ impl Zeroing {
         }
     }
 
-    /// Whether a sample, so many fine steps off and so many ticks after the trend's instant, is too far off to be noise;
-    /// while too little is known to tell, none is.
+    /// Whether a sample, so many fine steps off and so many ticks after the trend's instant, is too far off to be
+    /// noise; while too little is known to tell, none is.
     fn judge(&mut self, tick: u32, off: i32, ticks: u32, derived: &Derived) -> Verdict {
         // Most samples lie within what noise alone does: what else there may be is reckoned only for the others.
         let is_noise = self.gate.is_near(off) || off.unsigned_abs() <= gate::reach(self.variance_ahead(ticks, derived));
@@ -123,7 +123,8 @@ impl Zeroing {
         self.noise.sample_var_stated(derived) + trend.level_variance() + spread + walked + figures
     }
 
-    /// Tells the gate what to expect of the next block, and when enough is known to tell noise from more, what is noise.
+    /// Tells the gate what to expect of the next block, and when enough is known to tell noise from more, what is
+    /// noise.
     fn aim_next(&mut self, mean: &BlockMean, derived: &Derived) {
         let can_tell = derived.block_ticks == 0 || self.noise.has_scatter();
         // A single sample shows no scatter: then the reach stays what it is.
@@ -206,7 +207,8 @@ impl Zeroing {
         }
     }
 
-    /// An innovation for the watch over the input, 2^-12 standard deviations; the watch over the noise takes it as well.
+    /// An innovation for the watch over the input, 2^-12 standard deviations; the watch over the noise takes it as
+    /// well.
     fn deviation(&mut self, innovation: &Innovation, derived: &Derived) -> i32 {
         let per_deviation = self.noise.per_deviation(innovation.precision);
         let mut deviation = innovation.residual * per_deviation;

@@ -41,7 +41,8 @@ fn a_block_that_drifts_past_its_range_tells_no_wrong_drift() {
     assert!(reading.trust != Trust::Good || off.abs() < 8.0, "off by {off} u: {reading:?}");
 }
 
-/// A steep drift that no zero has told yet: the first blocks are coarsened, and must not tell a noise that is not there.
+/// A steep drift that no zero has told yet: the first blocks are coarsened, and must not tell a noise that is not
+/// there.
 #[test]
 fn a_coarsened_block_tells_the_noise_or_nothing() {
     let circuit = Circuit {
@@ -137,7 +138,8 @@ fn a_drift_of_many_counts_in_a_tick_is_followed() {
     }
 }
 
-/// 24 bits and a leak of 0.1 s: in a window of samples more leaks than the converter is wide. A healthy switch is healthy.
+/// 24 bits and a leak of 0.1 s: in a window of samples more leaks than the converter is wide. A healthy switch is
+/// healthy.
 #[test]
 fn what_leaks_beside_a_reset_fits_the_levels_that_are_kept() {
     let circuit = Circuit { leak_time_constant_s: Some(0.1), inverting: false, bias_limit_a: 0.0, ..Circuit::DEFAULT };

@@ -145,7 +145,8 @@ fn false_alarms_come_about_as_often_as_the_policy_says() {
     assert!((16.0..30.0).contains(&found), "{found} s");
 }
 
-/// Switched on with the input on: an onset in the very first blocks is not learned as a drift that no later zero forgets.
+/// Switched on with the input on: an onset in the very first blocks is not learned as a drift that no later zero
+/// forgets.
 #[test]
 fn an_onset_in_the_first_zero_of_all_is_forgotten() {
     let circuit = Circuit { offset_limit_v: 1e-3, source_resistance_ohm: 1e7, bias_limit_a: 1e-9, ..CIRCUIT };
