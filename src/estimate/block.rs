@@ -14,9 +14,7 @@ const END: i32 = 1 << 30;
 /// A mean over whole periods holds nothing of a hum. Integers only, until the block is full; and of 32 bits wherever
 /// they are multiplied, since a small microcontroller takes 40 instructions for a product of 64. So what tells the
 /// scatter, deviations from where samples are expected and their instants, is kept within 16 and 15 bits: what grows
-/// past that is *coarsened* from there on. For instants the sums so far are as well; for deviations they begin anew,
-/// since what they lost would be as much as the scatter of samples far from where they were expected. The mean is
-/// exact.
+/// past that is *coarsened*, the sums so far and all that comes after. The mean is exact.
 #[derive(Clone, Copy, Debug, Default)]
 pub(crate) struct Block {
     /// Where levels are counted from, whole counts in 2^-16 counts.
@@ -24,8 +22,7 @@ pub(crate) struct Block {
     /// Sums over the samples: fine steps above the base, and ticks since the block began.
     levels: i64,
     ticks: u64,
-    /// Of the latest samples, so many as are in the same steps: sums of squares of deviations and of instants, and of
-    /// products of the two.
+    /// Sums of squares of deviations and of instants, and of products of the two.
     squares: u64,
     instant_squares: u64,
     products: i64,
@@ -35,7 +32,6 @@ pub(crate) struct Block {
     /// Ticks since the block began.
     span: u32,
     count: u16,
-    alike: u16,
     /// Deviations are in `2^coarse` fine steps, instants in `2^coarse_time` ticks.
     coarse: u8,
     coarse_time: u8,
@@ -52,11 +48,10 @@ pub(crate) struct BlockMean {
     pub(crate) samples: u16,
     /// One over `samples`.
     pub(crate) share: f32,
-    /// Of how many samples, the latest, the scatter is told.
-    pub(crate) alike: u16,
-    /// Sum of the squared deviations from a straight line, counts^2, and the square of the step that these were rounded
-    /// to.
+    /// Sum of the squared deviations from a straight line, counts^2, by how much it may be wrong because the sums were
+    /// coarsened, and the square of the step that deviations were rounded to.
     pub(crate) scatter: f32,
+    pub(crate) blur: f32,
     pub(crate) step_squared: f32,
     /// Ticks that the block spans.
     pub(crate) span: u32,
@@ -108,7 +103,6 @@ impl Block {
         self.instant_squares += u64::from(instant * instant);
         self.products += i64::from(deviation * instant.cast_signed());
         self.count = self.count.saturating_add(1);
-        self.alike += 1;
         self.span.saturating_add(ticks >> 1) >= length || self.count == u16::MAX
     }
 
@@ -128,8 +122,9 @@ impl Block {
     #[cold]
     fn coarsen(&mut self) {
         self.coarse += 1;
-        (self.squares, self.instant_squares, self.products) = (0, 0, 0);
-        (self.deviations, self.instants, self.alike) = (0, 0, 0);
+        self.deviations >>= 1;
+        self.products >>= 1;
+        self.squares >>= 2;
     }
 
     #[cold]
@@ -158,8 +153,8 @@ impl Block {
             age: block.span.saturating_sub(u32::try_from(block.ticks).unwrap_or(u32::MAX)),
             samples: count,
             share,
-            alike: block.alike,
             scatter: 0.0,
+            blur: 0.0,
             step_squared,
             span: block.span,
         };
@@ -167,8 +162,10 @@ impl Block {
             return Some(one);
         }
         let age = block.span.saturating_sub((math::float_unsigned(block.ticks) * share) as u32);
-        let of_alike = if block.alike == count { share } else { 1.0 / f32::from(block.alike) };
-        Some(BlockMean { age, scatter: block.scatter() * (of_alike * step_squared), ..one })
+        let unit = share * step_squared;
+        // Each time that the sum of deviations was halved it may have lost a half, which counts twice the sum.
+        let blur = if block.coarse == 0 { 0.0 } else { 4.0 * block.deviations.unsigned_abs() as f32 * unit };
+        Some(BlockMean { age, scatter: block.scatter() * unit, blur, ..one })
     }
 
     /// The mean level: whole counts and the rest.
@@ -193,7 +190,7 @@ impl Block {
     /// Sum of the squared deviations from a straight line, times the number of samples.
     fn scatter(&self) -> f32 {
         // Exact: each product is below 2^62.
-        let n = i64::from(self.alike);
+        let n = i64::from(self.count);
         let (deviations, instants) = (i64::from(self.deviations), i64::from(self.instants));
         let spread = n * self.instant_squares.cast_signed() - instants * instants;
         let product = math::float(n * self.products - deviations * instants);
@@ -244,13 +241,12 @@ mod tests {
     fn check(samples: &[(u32, i32)], tolerance: f64) {
         for base in [0, -1 << 40, 12_345_678_901] {
             let got = block(base, samples);
-            let (mean, age, _) = exactly(samples);
-            // The scatter is that of the samples since the steps were last made coarser.
-            let (_, _, scatter) = exactly(&samples[samples.len() - usize::from(got.alike)..]);
+            let (mean, age, scatter) = exactly(samples);
             let level = (got.counts - base) as f64 + f64::from(got.rest);
             assert!((level - mean).abs() < 1e-3, "{level}, not {mean}");
             assert!((f64::from(got.age) - age).abs() <= 1.0 + 1e-6 * f64::from(got.span), "{}, not {age}", got.age);
-            assert!((f64::from(got.scatter) / scatter - 1.0).abs() < tolerance, "{}, not {scatter}", got.scatter);
+            let off = (f64::from(got.scatter) - scatter).abs() - f64::from(got.blur);
+            assert!(off < tolerance * scatter, "{}, not {scatter}, blur {}", got.scatter, got.blur);
         }
     }
 
@@ -262,13 +258,15 @@ mod tests {
     }
 
     #[test]
-    fn most_samples_tell_the_scatter() {
-        for (samples, least) in
-            [(uneven(100, 1000, 20, 100), 100), (uneven(1000, 84_000, 3, 300), 200), (uneven(100, 1000, 1000, 500), 30)]
-        {
-            let told = block(0, &samples).alike;
-            assert!(told >= least, "{told} of {}", samples.len());
-        }
+    fn only_sums_that_were_coarsened_are_blurred() {
+        let blur = |samples: &[(u32, i32)]| block(0, samples).blur;
+        assert!(blur(&uneven(100, 1000, 20, 100)) <= 0.0 && blur(&uneven(1000, 84_000, 3, 300)) <= 0.0);
+        // A steep drift, and one far sample.
+        assert!(blur(&uneven(100, 1000, 51_200, 25_000)) > 1.0);
+        let mut spiked = uneven(16, 100, 2, 100);
+        spiked[15].1 = 1 << 24;
+        let got = block(0, &spiked);
+        assert!(got.blur > 0.0 && got.blur < 1e-3 * got.scatter, "{got:?}");
     }
 
     #[test]

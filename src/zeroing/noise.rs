@@ -136,9 +136,9 @@ impl NoiseSeen {
     /// Whether a block scatters so much more than expected that a spike must be in it: its mean is of no use. Before
     /// any block has shown the scatter this may be hum as well: then only the first is left out.
     pub(super) fn is_torn(&mut self, mean: &BlockMean) -> bool {
-        let told = f32::from(mean.alike.saturating_sub(2));
+        let told = f32::from(mean.samples.saturating_sub(2));
         let expected = told * math::greater(self.sample_var, mean.step_squared);
-        let scattered = mean.alike >= 4 && mean.scatter > TORN_RATIO * expected;
+        let scattered = mean.samples >= 4 && mean.scatter - mean.blur > TORN_RATIO * expected;
         let first = !core::mem::replace(&mut self.seen, true);
         scattered && (first || self.has_scatter())
     }
@@ -146,13 +146,16 @@ impl NoiseSeen {
     /// Takes a block: what is left of it when a line and the walk are taken off is the noise of single samples.
     pub(super) fn take_block(&mut self, mean: &BlockMean, derived: &Derived) {
         // Steps as coarse as the noise do not show it: so steep a drift is known after a block or two.
-        if mean.alike < 4 || mean.step_squared > self.sample_var * (1.0 / 16.0) {
+        let told = mean.samples.saturating_sub(2);
+        if told < 2 || mean.step_squared > self.sample_var * (1.0 / 16.0) {
+            return;
+        }
+        if mean.blur > self.sample_var * f32::from(told) * (1.0 / 16.0) {
             return;
         }
         // About the line through n evenly spaced samples a walk leaves q h (n^2 - 4) / 15; the spacing h is span / n.
-        let alike = f32::from(mean.alike);
-        let walked = derived.scatter_walk * mean.span as f32 * mean.share * (alike * alike - 4.0);
-        let told = mean.alike - 2;
+        let spacings = f32::from(mean.samples) - 4.0 * mean.share;
+        let walked = derived.scatter_walk * mean.span as f32 * spacings;
         let freedom = self.freedom.saturating_add(told);
         let surprise = mean.scatter - walked - f32::from(told) * self.sample_var;
         let sample_var = self.sample_var + surprise / f32::from(freedom);
@@ -211,9 +214,9 @@ mod tests {
                 rest: 0.0,
                 age: 50,
                 samples: 16,
-                alike: 16,
                 share: 1.0 / 16.0,
                 scatter: 56.0,
+                blur: 0.0,
                 step_squared,
                 span: 100,
             };
