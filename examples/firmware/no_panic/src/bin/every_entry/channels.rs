@@ -22,7 +22,7 @@ pub(crate) fn call<Q: Integral>(setup: Setup<Q>) {
         black_box(step.request);
         black_box(step.notices.is_empty());
         for notice in step.notices.iter() {
-            black_box((notice.tick, notice.event, *notice == black_box(*notice)));
+            black_box((notice.tick, notice.event, notice == black_box(notice)));
         }
         if let Some(reading) = black_box(&channel).reading() {
             black_box(reading.latest());
