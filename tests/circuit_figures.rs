@@ -15,6 +15,8 @@ mod decay;
 mod drooping;
 #[path = "circuit_figures/leak_and_soakage.rs"]
 mod leak_and_soakage;
+#[path = "circuit_figures/left_out.rs"]
+mod left_out;
 #[path = "circuit_figures/line.rs"]
 mod line;
 #[path = "circuit_figures/opening.rs"]

@@ -61,8 +61,14 @@ impl Level {
         if derived.keeps_level {
             return linear_q16;
         }
-        let ticks = ticks.saturating_add(core::mem::take(&mut self.left_out)).min(LONGEST_STEP);
         let closed = sample.mode == Mode::Reset;
+        let mut ticks = ticks;
+        match (core::mem::take(&mut self.left_out), self.above) {
+            (0, _) => {}
+            // Samples were left out up to the instant at which the switch closed: until then the level stood.
+            (left_out, Some(level)) if closed => self.pass(level, level, left_out.min(LONGEST_STEP), true, derived),
+            (left_out, _) => ticks = ticks.saturating_add(left_out).min(LONGEST_STEP),
+        }
         let above = if closed { 0 } else { derived.above_reset(linear_q16) };
         // The switch closes and opens at the beginning of a step: after it the level is where the reset left it.
         let from = match self.above.replace(above) {
@@ -73,15 +79,20 @@ impl Level {
             Some(_) if closed => 0,
             Some(from) => from,
         };
-        if let Some(law) = derived.leak.as_ref().filter(|_| !closed) {
-            self.leak.take(from, above, ticks, law);
+        self.pass(from, above, ticks, !closed, derived);
+        linear_q16.saturating_add(self.terms.sum_q16())
+    }
+
+    /// The level goes from `from` to `to` in `ticks`.
+    fn pass(&mut self, from: i32, to: i32, ticks: u32, leaks: bool, derived: &Derived) {
+        if let Some(law) = derived.leak.as_ref().filter(|_| leaks) {
+            self.leak.take(from, to, ticks, law);
             self.terms.leaked_q16 = self.leak.q16(law);
         }
         if let Some(law) = derived.soakage.as_ref() {
-            self.soakage.take(from, above, ticks, law);
+            self.soakage.take(from, to, ticks, law);
             self.terms.soaked_q16 = self.soakage.q16(law);
         }
-        linear_q16.saturating_add(self.terms.sum_q16())
     }
 
     /// The level as it was, for a sample `ticks` after it that will be left out: what leaks and soaks follows from the

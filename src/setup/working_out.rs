@@ -172,7 +172,7 @@ impl Derived {
             level_walk: (density * density / 2.0) as f32,
             rate_walk: normal(wander * wander),
             scatter_walk: (density * density / 30.0 / converter.tick_hz) as f32,
-            flicker: (flicker * flicker) as f32,
+            flicker: normal(flicker * flicker),
             rate_limit: rate_limit as f32,
             rate_prior_var: (rate_limit * rate_limit / 3.0) as f32,
             warmth,
