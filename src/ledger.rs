@@ -3,6 +3,11 @@
 use crate::estimate::{After, Before, LEVEL_VARIANCE_MAX, Sum};
 use crate::math::{self, to_q16};
 
+/// Whether 2^-16 counts are more than the books of a run are sure to take without saturating: 2^46 counts.
+pub(crate) fn is_past_books(q16: i64) -> bool {
+    q16.unsigned_abs() > 1 << 62
+}
+
 /// What interruptions have carried over, in 2^-16 counts of output movement.
 #[derive(Clone, Copy, Debug, Default, PartialEq)]
 pub(crate) struct Ledger {
@@ -81,8 +86,7 @@ impl Ledger {
 
     /// Whether so much was carried that it may have come to the end of its range: 2^46 counts.
     pub(crate) fn is_full(&self) -> bool {
-        const END_Q16: u64 = 1 << 62;
-        self.carried_q16.unsigned_abs() > END_Q16 || self.interpolated_q16.unsigned_abs() > END_Q16
+        is_past_books(self.carried_q16) || is_past_books(self.interpolated_q16)
     }
 
     /// Carried and interpolated movement together, 2^-16 counts.

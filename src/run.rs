@@ -3,8 +3,7 @@
 use crate::clock::Span;
 use crate::estimate::{After, Before, Bracket, Hint, LEVEL_VARIANCE_MAX, Trend, Walk, movement_q16};
 use crate::ledger::{Bridged, Ledger};
-use crate::math;
-use crate::math::{to_q16, whole_q16};
+use crate::math::{self, to_q16, whole_q16};
 use crate::notice::Reasons;
 use crate::setup::{Derived, QUANTISATION_VAR};
 use crate::total::Total;

@@ -2,6 +2,7 @@
 
 use super::Channel;
 use crate::decide;
+use crate::ledger::is_past_books;
 use crate::notice::{Event, Reason};
 use crate::notices::Notices;
 use crate::quantity::Integral;
@@ -26,6 +27,13 @@ impl<Q: Integral> Channel<'_, Q> {
             self.mark_run(Reason::Gap, tick, notices);
         } else {
             self.lose_level();
+        }
+    }
+
+    /// Whether the latest level of a segment is more than the books of its run can take.
+    pub(super) fn check_range(&mut self, tick: u32, notices: &mut Notices) {
+        if self.window.latest().is_some_and(|(_, level_q16)| is_past_books(level_q16)) {
+            self.fault(Reason::OutOfRange, tick, notices);
         }
     }
 

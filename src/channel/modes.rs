@@ -1,7 +1,6 @@
 //! The closer look at a sample with which something may be the matter.
 
 use super::Channel;
-use super::steady::is_out_of_range;
 use crate::clock::Elapsed;
 use crate::health::Health;
 use crate::notice::{Event, Reason};
@@ -63,7 +62,7 @@ impl<Q: Integral> Channel<'_, Q> {
         match sample.mode {
             Mode::Zero => self.zero_closely(sample, ticks, at_rail, notices),
             Mode::Integrate => self.integrate(sample, ticks, notices),
-            Mode::Hold => self.hold(sample, ticks),
+            Mode::Hold => self.hold(sample, ticks, at_rail),
             Mode::Reset => self.reset(sample, ticks, notices),
         }
         if at_rail && told {
@@ -112,9 +111,7 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(never)]
     fn integrate(&mut self, sample: &Sample, ticks: u32, notices: &mut Notices) {
         self.extend(sample, ticks);
-        if self.window.latest().is_some_and(|(_, level_q16)| is_out_of_range(level_q16)) {
-            self.fault(Reason::OutOfRange, sample.tick, notices);
-        }
+        self.check_range(sample.tick, notices);
         let waits = self.run.as_ref().is_some_and(|run| run.crossing.is_some());
         if waits && self.window.is_full(self.setup.derived()) {
             self.settle_for_good(sample.tick, notices);
@@ -122,10 +119,10 @@ impl<Q: Integral> Channel<'_, Q> {
     }
 
     #[inline(never)]
-    fn hold(&mut self, sample: &Sample, ticks: u32) {
+    fn hold(&mut self, sample: &Sample, ticks: u32, at_rail: bool) {
         let derived = self.setup.derived();
         let level_q16 = self.level.take(sample, ticks, derived);
-        if Health::at_rail(sample.counts, derived) {
+        if at_rail {
             self.droop.forget_level();
         } else {
             self.droop.take(level_q16, ticks, self.level.terms(), derived);

@@ -2,18 +2,11 @@
 //! be said of them.
 
 use super::{Channel, stop};
+use crate::ledger::is_past_books;
 use crate::notices::Notices;
 use crate::quantity::Integral;
 use crate::sample::{Mode, Sample, Step};
 use crate::zeroing::Taken;
-
-/// Past this the books of a run may saturate: 2^46 counts.
-const LEVEL_END_Q16: u64 = 1 << 62;
-
-/// Whether a run with such a level in it has come to more than its books can take.
-pub(super) fn is_out_of_range(level_q16: i64) -> bool {
-    level_q16.unsigned_abs() > LEVEL_END_Q16
-}
 
 impl<Q: Integral> Channel<'_, Q> {
     /// The mode, if nothing is left to wait for in it.
@@ -57,17 +50,18 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(always)]
     pub(super) fn extend(&mut self, sample: &Sample, ticks: u32) {
         let derived = self.setup.derived();
-        let mut level_q16 = derived.linear_q16(sample.counts);
-        if derived.keeps_level {
+        let level_q16 = if derived.keeps_level {
             self.zeroing.pending.add_blind(u64::from(ticks));
+            derived.linear_q16(sample.counts)
         } else {
             self.zeroing.pending.add(ticks, derived.coarse_shift);
-            level_q16 = self.level.take(sample, ticks, derived);
-            if is_out_of_range(level_q16) {
+            let level_q16 = self.level.take(sample, ticks, derived);
+            if is_past_books(level_q16) {
                 // The next sample is looked at closely.
                 self.steady = None;
             }
-        }
+            level_q16
+        };
         self.zeroing.drive(u64::from(ticks));
         self.window.push(sample.tick, level_q16, derived);
     }
@@ -76,11 +70,12 @@ impl<Q: Integral> Channel<'_, Q> {
     #[inline(always)]
     pub(super) fn zero(&mut self, sample: &Sample, ticks: u32, at_rail: bool) -> Taken {
         let derived = self.setup.derived();
-        let (mut level_q16, mut before) = (derived.linear_q16(sample.counts), None);
-        if !derived.keeps_level {
-            before = Some(self.level);
-            level_q16 = self.level.take(sample, ticks, derived);
-        }
+        let (level_q16, before) = if derived.keeps_level {
+            (derived.linear_q16(sample.counts), None)
+        } else {
+            let before = self.level;
+            (self.level.take(sample, ticks, derived), Some(before))
+        };
         let taken = if at_rail {
             self.zeroing.skip(ticks, derived);
             Taken::Spike

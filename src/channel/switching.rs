@@ -1,6 +1,5 @@
 //! What a change of mode does to the run and to the zero.
 
-use super::steady::is_out_of_range;
 use super::{Channel, stop};
 use crate::clock::Span;
 use crate::estimate::Trend;
@@ -68,9 +67,7 @@ impl<Q: Integral> Channel<'_, Q> {
     fn leave_integrate(&mut self, to: Mode, tick: u32, notices: &mut Notices) {
         let derived = self.setup.derived();
         self.settle_for_good(tick, notices);
-        if self.window.latest().is_some_and(|(_, level_q16)| is_out_of_range(level_q16)) {
-            self.fault(Reason::OutOfRange, tick, notices);
-        }
+        self.check_range(tick, notices);
         if let Some(run) = self.run.as_mut() {
             run.book(&self.window, self.zeroing.pending, self.level.terms().sum_q16(), derived);
         }

@@ -2,8 +2,7 @@
 
 use super::trend::Trend;
 use super::walk::Walk;
-use crate::math;
-use crate::math::{to_q16, whole_q16};
+use crate::math::{self, to_q16, whole_q16};
 use crate::setup::QUANTISATION_VAR;
 
 /// The movement of the level over a finished run, as the closing zero comes to know it.

@@ -1,7 +1,6 @@
 //! The level and slope beside a switching instant, from the few samples next to it.
 
 use super::bend::{Bend, GridNoise, unexplained};
-
 use super::grid::{Dot, Grid};
 use super::moments::Moments;
 use super::running::{Polynomial, Running};

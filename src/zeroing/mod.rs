@@ -146,7 +146,7 @@ impl Zeroing {
         self.checkpoint = None;
         self.gate = Gate::default();
         self.noise.drop_sum();
-        self.resting = self.resting.saturating_add(core::mem::take(&mut self.pending).ticks);
+        self.set_pending_aside();
         self.warmth.release_level();
         self.considered.release_level();
         if let Some(bracket) = self.bracket.as_mut() {
@@ -182,7 +182,7 @@ impl Zeroing {
             self.catch_up(terms, derived);
         } else {
             // Of the level that the run before left nothing was seen: its baseline ends with the run.
-            self.resting = self.resting.saturating_add(core::mem::take(&mut self.pending).ticks);
+            self.set_pending_aside();
         }
         change
     }
@@ -213,6 +213,11 @@ impl Zeroing {
         advance(&mut self.trend, self.bracket.as_mut(), pending, derived);
         self.considered.advance(pending.ticks, derived);
         self.considered.follow(terms, derived);
+    }
+
+    /// Nothing followed the level meanwhile: only the rate has wandered.
+    fn set_pending_aside(&mut self) {
+        self.resting = self.resting.saturating_add(core::mem::take(&mut self.pending).ticks);
     }
 
     /// Takes the board's temperature.

@@ -5,8 +5,7 @@ use super::{Checkpoint, RateChange, Stop, Taken, Zeroing, advance};
 use crate::clock::Span;
 use crate::estimate::{BlockMean, Bracket, DEVIATION, Innovation};
 use crate::level::Terms;
-use crate::math;
-use crate::math::{to_q16, whole_q16};
+use crate::math::{self, to_q16, whole_q16};
 use crate::setup::{Derived, WarmthLaw};
 
 /// An onset before so many innovations is as good as the beginning of the zero.
