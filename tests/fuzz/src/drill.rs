@@ -8,7 +8,6 @@ use brimline::{
 
 use crate::board::{AnySetup, Parts, Plain, parts};
 use crate::draw::{Dice, Draw};
-use crate::excluded;
 use crate::show;
 use crate::sound::assert_sound;
 
@@ -64,7 +63,7 @@ fn spoil(draw: &mut Draw, parts: &mut Parts) {
             28 => n.readout_counts = x,
             29 => n.input_density = x,
             30 => n.offset_wander = x,
-            31 => n.input_flicker = excluded::flicker_open(x),
+            31 => n.input_flicker = x,
             32 => p.zero_block_s = x,
             33 => p.false_alarm_s = x,
             34 => p.edge_samples = draw.byte(),

@@ -4,20 +4,12 @@ use brimline::{Circuit, SoakageBranch};
 
 use crate::board::Parts;
 
-/// Bugs that are open, for the boards of stories. Each goes with its mend.
-///
-/// - Where integrated input noise scatters more within a block of a zero than the readout does, what chance leaves of
-///   the difference is taken for the readout's noise.
-/// - Time that a zero has left out just before a reset is to the dielectric a part of the reset: see [`soaks`].
+/// A bug that is open, for the boards of stories: where integrated input noise scatters more within a block of a zero
+/// than the readout does, what chance leaves of the difference is taken for the readout's noise. It goes with its mend.
 pub fn tame_open(parts: &mut Parts) {
     let Parts { circuit, converter, noise, policy } = parts;
     let most = noise.readout_counts.max(0.3) * converter.lsb_v / circuit.gain().abs() / policy.zero_block_s.sqrt();
     noise.input_density = noise.input_density.min(most);
-}
-
-/// The same for any numbers in a set-up: a flicker whose square is no `f32` makes an uncertainty of 0.
-pub fn flicker_open(density: f64) -> f64 {
-    if density < 1e-9 { density.min(0.0) } else { density }
 }
 
 /// Limits of the model, which the documentation states: what the samples cannot show is not asked for.
